@@ -1,0 +1,248 @@
+//! The whole box: owns all state, takes events with their time, gives effects as values.
+
+use embedded_graphics::pixelcolor::BinaryColor;
+use embedded_graphics::prelude::DrawTarget;
+
+use crate::advice::{Advice, advise};
+use crate::beacon::{self, Outputs};
+use crate::machine::Machine;
+use crate::panel::{Bench, Knob, Page, Panel, Wish};
+use crate::screen::{self, View};
+use crate::setup::Setup;
+use crate::tacho::{Config, Reading, Rejected, Tacho};
+use crate::time::{Duration, Edge, Instant};
+use crate::verdict::{Judge, Verdict};
+
+/// The picture is drawn anew at most this often; the fastest that a number can be read anyway.
+const REDRAW: Duration = Duration::from_millis(100);
+/// A setup is handed out for saving when it has stood unchanged for this long: knobs turn in bursts, flash wears.
+const SAVE_AFTER: Duration = Duration::from_secs(5);
+/// While the spindle may turn, the reading is looked at this often,
+const LOOK: Duration = Duration::from_millis(20);
+/// else this often; edges and knobs come as events of their own.
+const LOOK_AT_REST: Duration = Duration::from_millis(500);
+
+/// Something that happened.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub enum Event<'a> {
+    /// Edges of the sensor's line, oldest first, none older than those before.
+    Edges(&'a [Edge]),
+    /// A knob was turned by some detents, clockwise positive.
+    Turn(Knob, i8),
+    /// A knob went down.
+    Press(Knob),
+    /// A knob came up.
+    Release(Knob),
+}
+
+/// What is to be done.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Poll {
+    /// Ask again at this time at the latest, or on the next event.
+    pub next: Instant,
+    /// Lamps, buzzer and relay.
+    pub outputs: Outputs,
+    /// The picture has changed: call [`Instrument::draw`].
+    pub redraw: bool,
+    /// Keep this setup, and hand it to [`Instrument::new`] at the next start.
+    pub save: Option<Setup>,
+}
+
+/// The box.
+#[derive(Clone, Debug)]
+pub struct Instrument {
+    machine: Machine,
+    setup: Setup,
+    advice: Advice,
+    tacho: Tacho,
+    panel: Panel,
+    judge: Judge,
+    reading: Reading,
+    verdict: Verdict,
+    verdict_since: Instant,
+    /// Silent until the verdict changes.
+    muted: bool,
+    drawn: Option<(Instant, Shown)>,
+    unsaved_since: Option<Instant>,
+}
+
+/// Everything that the picture depends on; the advice follows from the setup.
+#[derive(Clone, Copy, Debug, PartialEq)]
+struct Shown {
+    digits: Option<u32>,
+    verdict: Verdict,
+    page: Page,
+    notice: bool,
+    setup: Setup,
+}
+
+impl Instrument {
+    /// Starts with a setup remembered from before, which then waits to be confirmed, or without one.
+    ///
+    /// A remembered holder that the machine does not list falls back to the first one.
+    pub fn new(now: Instant, machine: Machine, stored: Option<Setup>) -> Self {
+        let mut setup = stored.unwrap_or(Setup::CAUTIOUS);
+        if usize::from(setup.holder) >= machine.holders().len() {
+            setup.holder = 0;
+        }
+        let tacho = Tacho::new(Config {
+            pulses: machine.pulses(),
+            brake_rpm_per_s: machine.brake_rpm_per_s(),
+            slowest: machine.slowest(),
+        });
+        let advice = advise(&setup, &machine);
+        Instrument {
+            reading: Reading::NOTHING,
+            verdict: Verdict::Unconfirmed,
+            verdict_since: now,
+            panel: Panel::new(false),
+            judge: Judge::default(),
+            muted: false,
+            drawn: None,
+            unsaved_since: None,
+            machine,
+            setup,
+            advice,
+            tacho,
+        }
+    }
+
+    /// Takes an event. O(1) for knobs, O(1) for each edge.
+    pub fn handle(&mut self, now: Instant, event: Event<'_>) {
+        let before = self.setup;
+        let wish = match event {
+            Event::Edges(edges) => {
+                edges.iter().for_each(|&edge| self.tacho.push(edge));
+                return;
+            }
+            Event::Turn(knob, detents) => {
+                let (panel, bench) = self.bench();
+                panel.turn(now, knob, detents, bench);
+                None
+            }
+            Event::Press(knob) => {
+                self.panel.press(now, knob);
+                None
+            }
+            Event::Release(knob) => {
+                let (panel, bench) = self.bench();
+                panel.release(now, knob, bench)
+            }
+        };
+        self.after_panel(now, before, wish);
+    }
+
+    /// Lets time pass up to `now` and says what is to be done. Bounded work: one look at each step of the machine when the
+    /// setup has changed.
+    pub fn poll(&mut self, now: Instant) -> Poll {
+        let before = self.setup;
+        let (panel, bench) = self.bench();
+        let wish = panel.settle(now, bench);
+        self.after_panel(now, before, wish);
+
+        let machine = &self.machine;
+        self.reading = self.tacho.reading(now, |n| machine.explains(n));
+        let verdict = self
+            .judge
+            .verdict(now, &self.reading, &self.advice, self.panel.confirmed());
+        if verdict != self.verdict {
+            self.verdict = verdict;
+            self.verdict_since = now;
+            self.muted = false;
+        }
+
+        let (mut outputs, beacon_next) = beacon::outputs(self.verdict, self.verdict_since, now);
+        if self.muted && self.verdict != Verdict::Danger {
+            outputs.buzzer_hz = None;
+        }
+        let shown = Shown {
+            digits: screen::digits(&self.reading),
+            verdict: self.verdict,
+            page: self.panel.page(),
+            notice: self.panel.notice().is_some(),
+            setup: self.setup,
+        };
+        let redraw = match self.drawn {
+            None => true,
+            // A verdict, a page or a setting shows at once; digits that run wait for the eye.
+            Some((at, was)) => {
+                let only_digits = Shown {
+                    digits: shown.digits,
+                    ..was
+                } == shown;
+                was != shown && (!only_digits || now.since(at) >= REDRAW)
+            }
+        };
+        if redraw {
+            self.drawn = Some((now, shown));
+        }
+        let save = self
+            .unsaved_since
+            .is_some_and(|since| now.since(since) >= SAVE_AFTER)
+            .then_some(self.setup);
+        if save.is_some() {
+            self.unsaved_since = None;
+        }
+        let look = now
+            + if self.reading.is_running() {
+                LOOK
+            } else {
+                LOOK_AT_REST
+            };
+        let next = [
+            beacon_next,
+            self.panel.next_change(),
+            self.tacho.next_change().filter(|&at| at > now),
+            self.unsaved_since.map(|since| since + SAVE_AFTER),
+        ];
+        Poll {
+            next: next.into_iter().flatten().fold(look, Instant::min),
+            outputs,
+            redraw,
+            save,
+        }
+    }
+
+    /// Draws the picture as of the last [`Instrument::poll`] on a cleared 128 x 64 target.
+    pub fn draw<D: DrawTarget<Color = BinaryColor>>(&self, target: &mut D) -> Result<(), D::Error> {
+        screen::draw(&self.view(), target)
+    }
+
+    /// Everything that a page shows, as of the last poll.
+    pub fn view(&self) -> View<'_> {
+        View {
+            setup: &self.setup,
+            machine: &self.machine,
+            advice: &self.advice,
+            reading: &self.reading,
+            verdict: self.verdict,
+            page: self.panel.page(),
+            notice: self.panel.notice(),
+        }
+    }
+
+    /// What the sensor gave that was no pulse, by kind.
+    pub fn rejected(&self) -> Rejected {
+        self.tacho.rejected()
+    }
+
+    fn bench(&mut self) -> (&mut Panel, Bench<'_>) {
+        let bench = Bench {
+            setup: &mut self.setup,
+            machine: &self.machine,
+            advice: &self.advice,
+            running: self.reading.is_running(),
+        };
+        (&mut self.panel, bench)
+    }
+
+    fn after_panel(&mut self, now: Instant, before: Setup, wish: Option<Wish>) {
+        if self.setup != before {
+            self.advice = advise(&self.setup, &self.machine);
+            self.unsaved_since = Some(now);
+        }
+        if wish == Some(Wish::Mute) {
+            self.muted = true;
+        }
+    }
+}

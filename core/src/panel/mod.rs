@@ -1,0 +1,239 @@
+//! Two push-knobs: turns and presses to the setup and the page shown. A state machine; nothing is drawn here.
+//!
+//! ```text
+//!            turn left: material, turn right: diameter
+//!  Run page -- press either --> Choose page -- press either --> Run page
+//!            turn left: which field, turn right: its value
+//!            hold right (either page): the cap is taken away
+//!            hold left (either page): the buzzer is muted until the verdict changes
+//! ```
+//!
+//! After power-up the remembered setup is unconfirmed: the first press only confirms it. What the knobs did before,
+//! turns included, does not.
+
+mod choice;
+
+use heapless::String;
+
+use crate::advice::Advice;
+use crate::error::text;
+use crate::machine::Machine;
+use crate::setup::Setup;
+use crate::time::{Duration, Instant};
+
+pub use choice::Field;
+
+/// A knob held down this long is held, not pressed.
+pub const HOLD: Duration = Duration::from_millis(800);
+/// A change made while the spindle runs is shown for this long.
+pub const NOTICE: Duration = Duration::from_secs(3);
+
+/// One of the two knobs.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
+pub enum Knob {
+    /// Material; on the Choose page, which field.
+    Left,
+    /// Diameter; on the Choose page, the field's value.
+    Right,
+}
+
+/// What the screen shows.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
+pub enum Page {
+    /// Speed, target, step and verdict.
+    Run,
+    /// The rest of the setup, with the field that the right knob changes.
+    Choose(Field),
+}
+
+/// What a change of the setup shows for a while: `was 25, now 30 mm`.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Notice {
+    field: Field,
+    before: Setup,
+    until: Instant,
+    /// The text.
+    pub text: String<48>,
+}
+
+/// What the panel wants done besides changing the setup.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Wish {
+    /// Be silent until the verdict changes.
+    Mute,
+}
+
+#[derive(Clone, Copy, Debug, Default)]
+enum Button {
+    #[default]
+    Up,
+    /// Pressed since then, not yet long enough to be held.
+    Down(Instant),
+    /// Held; the release means nothing.
+    Held,
+}
+
+/// The panel's state.
+#[derive(Clone, Debug)]
+pub struct Panel {
+    page: Page,
+    field: Field,
+    confirmed: bool,
+    notice: Option<Notice>,
+    left: Button,
+    right: Button,
+}
+
+/// What the panel acts on.
+pub struct Bench<'a> {
+    /// The setup that it changes.
+    pub setup: &'a mut Setup,
+    /// The machine, for its holders and units.
+    pub machine: &'a Machine,
+    /// The present advice: a new cap starts from it.
+    pub advice: &'a Advice,
+    /// Whether the spindle runs: then changes are announced.
+    pub running: bool,
+}
+
+impl Panel {
+    /// `confirmed` is false where the setup is only remembered.
+    pub fn new(confirmed: bool) -> Self {
+        Panel {
+            page: Page::Run,
+            field: Field::Operation,
+            confirmed,
+            notice: None,
+            left: Button::Up,
+            right: Button::Up,
+        }
+    }
+
+    /// The page shown.
+    pub fn page(&self) -> Page {
+        self.page
+    }
+    /// Whether the operator has confirmed the setup.
+    pub fn confirmed(&self) -> bool {
+        self.confirmed
+    }
+    /// The notice shown, if any.
+    pub fn notice(&self) -> Option<&Notice> {
+        self.notice.as_ref()
+    }
+
+    /// A knob was turned by some detents, clockwise positive.
+    pub fn turn(&mut self, now: Instant, knob: Knob, detents: i8, bench: Bench<'_>) {
+        let field = match (self.page, knob) {
+            (Page::Run, Knob::Left) => Field::Material,
+            (Page::Run, Knob::Right) => Field::Diameter,
+            (Page::Choose(field), Knob::Left) => {
+                self.field = field.stepped(detents);
+                self.page = Page::Choose(self.field);
+                return;
+            }
+            (Page::Choose(field), Knob::Right) => field,
+        };
+        let before = *bench.setup;
+        field.turn(detents, bench.setup, bench.machine, bench.advice);
+        if bench.running && *bench.setup != before {
+            self.announce(now, field, before, bench.setup, bench.machine);
+        }
+    }
+
+    /// A knob went down.
+    pub fn press(&mut self, now: Instant, knob: Knob) {
+        *self.button(knob) = Button::Down(now);
+    }
+
+    /// A knob came up.
+    pub fn release(&mut self, now: Instant, knob: Knob, bench: Bench<'_>) -> Option<Wish> {
+        let wish = self.settle(now, bench);
+        if let Button::Down(_) = core::mem::take(self.button(knob)) {
+            self.pressed();
+        }
+        wish
+    }
+
+    /// Lets time pass: holds begin, notices end.
+    pub fn settle(&mut self, now: Instant, bench: Bench<'_>) -> Option<Wish> {
+        if self.notice.as_ref().is_some_and(|n| now >= n.until) {
+            self.notice = None;
+        }
+        let mut wish = None;
+        for knob in [Knob::Left, Knob::Right] {
+            if let Button::Down(since) = *self.button(knob)
+                && now.since(since) >= HOLD
+            {
+                *self.button(knob) = Button::Held;
+                match knob {
+                    _ if !self.confirmed => self.confirmed = true,
+                    Knob::Left => wish = Some(Wish::Mute),
+                    Knob::Right => {
+                        let before = *bench.setup;
+                        bench.setup.cap = None;
+                        if bench.running && *bench.setup != before {
+                            self.announce(now, Field::Cap, before, bench.setup, bench.machine);
+                        }
+                    }
+                }
+            }
+        }
+        wish
+    }
+
+    /// When time alone changes something next.
+    pub fn next_change(&self) -> Option<Instant> {
+        let hold = |button: Button| match button {
+            Button::Down(since) => Some(since + HOLD),
+            Button::Up | Button::Held => None,
+        };
+        let notice = self.notice.as_ref().map(|n| n.until);
+        [hold(self.left), hold(self.right), notice]
+            .into_iter()
+            .flatten()
+            .min()
+    }
+
+    fn button(&mut self, knob: Knob) -> &mut Button {
+        match knob {
+            Knob::Left => &mut self.left,
+            Knob::Right => &mut self.right,
+        }
+    }
+
+    fn pressed(&mut self) {
+        if !self.confirmed {
+            self.confirmed = true;
+            return;
+        }
+        self.page = match self.page {
+            Page::Run => Page::Choose(self.field),
+            Page::Choose(_) => Page::Run,
+        };
+    }
+
+    /// Turns that follow one another are one change: it was what it was before the first of them.
+    fn announce(
+        &mut self,
+        now: Instant,
+        field: Field,
+        before: Setup,
+        after: &Setup,
+        machine: &Machine,
+    ) {
+        let before = match &self.notice {
+            Some(notice) if notice.field == field => notice.before,
+            _ => before,
+        };
+        let text = text(field.change(&before, after, machine));
+        self.notice = Some(Notice {
+            field,
+            before,
+            until: now + NOTICE,
+            text,
+        });
+    }
+}

@@ -1,0 +1,3 @@
+//! Pure functions, one law a file.
+
+pub mod cutting_speed;

@@ -1,0 +1,108 @@
+//! Pages drawn from a [`View`], for any 1-bit target of 128 x 64 pixels.
+
+mod choose;
+mod run;
+
+use core::fmt;
+
+use embedded_graphics::mono_font::ascii::{FONT_4X6, FONT_5X8};
+use embedded_graphics::mono_font::{MonoFont, MonoTextStyle};
+use embedded_graphics::pixelcolor::BinaryColor;
+use embedded_graphics::prelude::*;
+use embedded_graphics::text::{Alignment, Baseline, Text, TextStyleBuilder};
+use heapless::String;
+
+use crate::advice::Advice;
+use crate::error::text;
+use crate::machine::Machine;
+use crate::panel::{Notice, Page};
+use crate::setup::Setup;
+use crate::tacho::{Reading, Signal};
+use crate::verdict::Verdict;
+
+/// Width of the screen in pixels.
+pub const WIDTH: u32 = 128;
+/// Height of the screen in pixels.
+pub const HEIGHT: u32 = 64;
+
+/// Everything that a page shows.
+#[derive(Clone, Copy, Debug)]
+pub struct View<'a> {
+    /// What is chosen.
+    pub setup: &'a Setup,
+    /// On which machine.
+    pub machine: &'a Machine,
+    /// What is advised for it.
+    pub advice: &'a Advice,
+    /// How fast the spindle turns.
+    pub reading: &'a Reading,
+    /// Whether that is right.
+    pub verdict: Verdict,
+    /// Which page.
+    pub page: Page,
+    /// What a knob has just changed.
+    pub notice: Option<&'a Notice>,
+}
+
+/// Draws the view's page on a cleared target. Nothing is drawn outside of 128 x 64.
+pub fn draw<D: DrawTarget<Color = BinaryColor>>(
+    view: &View<'_>,
+    target: &mut D,
+) -> Result<(), D::Error> {
+    match view.page {
+        Page::Run => run::draw(view, target),
+        Page::Choose(field) => choose::draw(view, field, target),
+    }
+}
+
+/// The speed in whole rev/min as the digits show it, or `None` where there is none that can be believed.
+pub fn digits(reading: &Reading) -> Option<u32> {
+    match reading.signal {
+        // Rounded; an Rpm is finite and not negative.
+        Signal::Turning => reading.speed.map(|n| libm::roundf(n.get()) as u32),
+        Signal::Still | Signal::Lost | Signal::Doubtful => None,
+    }
+}
+
+/// The row of characters that a font fits across the screen, or the smaller font where it does not.
+fn fitting(line: &str, pixels: u32) -> &'static MonoFont<'static> {
+    if line.len() as u32 * FONT_5X8.character_size.width <= pixels {
+        &FONT_5X8
+    } else {
+        &FONT_4X6
+    }
+}
+
+/// Writes one line with its upper edge at `y`, in the larger font that fits; what still does not fit is cut and ends in `~`.
+fn line<D: DrawTarget<Color = BinaryColor>>(
+    words: impl fmt::Display,
+    y: i32,
+    target: &mut D,
+) -> Result<(), D::Error> {
+    let line: String<33> = text(words);
+    write(
+        &line,
+        fitting(&line, WIDTH),
+        Point::new(0, y),
+        Alignment::Left,
+        BinaryColor::On,
+        target,
+    )
+}
+
+fn write<D: DrawTarget<Color = BinaryColor>>(
+    words: &str,
+    font: &MonoFont<'_>,
+    at: Point,
+    alignment: Alignment,
+    color: BinaryColor,
+    target: &mut D,
+) -> Result<(), D::Error> {
+    let style = TextStyleBuilder::new()
+        .alignment(alignment)
+        .baseline(Baseline::Top)
+        .build();
+    Text::with_text_style(words, at, MonoTextStyle::new(font, color), style)
+        .draw(target)
+        .map(|_| ())
+}

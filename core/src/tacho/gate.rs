@@ -1,0 +1,167 @@
+//! What is a pulse: pieces of one passage joined, slivers dropped.
+//!
+//! While a magnet passes, the line is low. At the switching point it may chatter, so one passage can arrive in pieces:
+//! pieces whose gap is short against the passage are one pulse, its first fall is its time. A low that is far narrower
+//! than the passages seen lately, and stands alone, is a sliver (drive noise) and dropped.
+//!
+//! A pulse is reported at the rise that proves it wide enough; later pieces of the same passage only widen it.
+
+use crate::time::{Duration, Edge, EdgeKind, Instant};
+
+/// A gap below this share of the passage joins. A toothed wheel may be low for up to five sixths of its pitch.
+const JOIN_SHARE: u64 = 6;
+/// A low narrower than this share of the recent passages is a sliver. Magnets of one collar differ less than that,
+/// and so do two passages that follow one another in a run-up.
+const SLIVER_SHARE: u64 = 4;
+/// The input's electrical limit: 20,000 pulses a second. Never derived from the machine's top speed: a runaway must be seen.
+pub(super) const SHORTEST_PERIOD: Duration = Duration::from_micros(50);
+
+/// One passage of a magnet.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(super) struct Pulse {
+    /// Its first fall.
+    pub(super) at: Instant,
+    /// From its first fall to its last rise as known when it was reported.
+    pub(super) width: Duration,
+}
+
+/// What was not counted as a pulse, by kind.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
+pub struct Rejected {
+    /// Pieces of a passage that were joined to it.
+    pub joined: u32,
+    /// Isolated lows too narrow for a passage.
+    pub slivers: u32,
+    /// Pulses closer to the one before than the input's electrical limit.
+    pub too_close: u32,
+    /// Edges that repeat the line's state or go back in time.
+    pub disordered: u32,
+    /// Pulses between two expected ones.
+    pub extra: u32,
+    /// Expected pulses that did not come.
+    pub missing: u32,
+}
+
+/// A passage that may still grow.
+#[derive(Clone, Copy, Debug)]
+struct Passage {
+    first: Instant,
+    last_rise: Instant,
+    reported: bool,
+}
+
+impl Passage {
+    fn width(&self) -> Duration {
+        self.last_rise.since(self.first)
+    }
+}
+
+#[derive(Clone, Debug, Default)]
+pub(super) struct Gate {
+    last_edge: Option<Instant>,
+    /// When the line fell, while it is low.
+    low_since: Option<Instant>,
+    passage: Option<Passage>,
+    /// First fall of the last reported pulse.
+    reported_at: Option<Instant>,
+    /// Width of the recent passages; zero where nothing is known.
+    usual: u64,
+    pub(super) rejected: Rejected,
+}
+
+impl Gate {
+    /// Forgets the usual width: after a standstill the next passages may have any.
+    pub(super) fn forget_width(&mut self) {
+        self.usual = 0;
+    }
+
+    /// Takes one edge; O(1).
+    pub(super) fn push(&mut self, edge: Edge) -> Option<Pulse> {
+        if self.last_edge.is_some_and(|last| edge.at < last) {
+            self.rejected.disordered += 1;
+            return None;
+        }
+        self.last_edge = Some(edge.at);
+        match (edge.kind, self.low_since.take()) {
+            (EdgeKind::Fall, None) => {
+                self.low_since = Some(edge.at);
+                None
+            }
+            (EdgeKind::Rise, Some(fell)) => self.low(fell, edge.at),
+            // The edge between these two was lost: the longer low, or the longer high, is the safer guess.
+            (EdgeKind::Fall, Some(fell)) => {
+                self.rejected.disordered += 1;
+                self.low_since = Some(fell);
+                None
+            }
+            (EdgeKind::Rise, None) => {
+                self.rejected.disordered += 1;
+                None
+            }
+        }
+    }
+
+    /// One stretch of low, from `fell` to `rose`.
+    fn low(&mut self, fell: Instant, rose: Instant) -> Option<Pulse> {
+        let piece = rose.since(fell).nanos();
+        let joins = |p: &Passage| {
+            let gap = fell.since(p.last_rise).nanos();
+            gap.saturating_mul(JOIN_SHARE) < piece.max(p.width().nanos())
+        };
+        let mut passage = match self.passage.take() {
+            Some(p) if joins(&p) => {
+                self.rejected.joined += 1;
+                Passage {
+                    last_rise: rose,
+                    ..p
+                }
+            }
+            before => {
+                if let Some(p) = before {
+                    self.close(p, fell);
+                }
+                Passage {
+                    first: fell,
+                    last_rise: rose,
+                    reported: false,
+                }
+            }
+        };
+        let width = passage.width();
+        let wide_enough = width.nanos().saturating_mul(SLIVER_SHARE) >= self.usual;
+        let report = !passage.reported && wide_enough;
+        let too_close = report
+            && self
+                .reported_at
+                .is_some_and(|last| passage.first.since(last) < SHORTEST_PERIOD);
+        if too_close {
+            self.rejected.too_close += 1;
+        }
+        passage.reported |= report;
+        self.passage = Some(passage);
+        (report && !too_close).then(|| {
+            self.reported_at = Some(passage.first);
+            Pulse {
+                at: passage.first,
+                width,
+            }
+        })
+    }
+
+    /// A passage is over because the next low, which begins at `next`, is not part of it.
+    fn close(&mut self, passage: Passage, next: Instant) {
+        let width = passage.width().nanos();
+        let gap = next.since(passage.last_rise).nanos();
+        if !passage.reported {
+            self.rejected.slivers += 1;
+            // Should the usual width be wrong, it is unlearned within a few passages.
+            self.usual -= self.usual / 4;
+        } else if width / 8 > gap {
+            // The magnet was parked at the sensor: that width says nothing about the next.
+            self.usual = 0;
+        } else {
+            self.usual = width;
+        }
+    }
+}

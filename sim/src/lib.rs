@@ -1,0 +1,3 @@
+//! A lathe on the desk.
+
+#![forbid(unsafe_code)]

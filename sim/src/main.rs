@@ -1,0 +1,3 @@
+//! The `rimrate` command.
+
+fn main() {}
