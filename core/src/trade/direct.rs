@@ -108,6 +108,13 @@ pub(super) const DRILLING: &[Row] = &[
         NAVY,
     ),
     drill(
+        Material::TemperedSteel,
+        ft(40.0, 50.0),
+        9.5,
+        "275-325 HB; 0.78 of the bottom: corners of plain high-speed steel soften fast",
+        SFPM,
+    ),
+    drill(
         Material::HardSteel,
         ft(25.0, 35.0),
         6.5,
@@ -302,6 +309,14 @@ pub(super) const MILLING: &[Row] = &[
         27.4,
         "low carbon steel; as for turning. The Data Book's 160 ft/min for heavy face milling is for stiffer machines",
         CARVILL_187,
+    ),
+    mill(
+        Material::FreeMachiningSteel,
+        Tool::Hss,
+        ft(130.0, 140.0),
+        39.0,
+        "100-200 HB; just below the bottom, the leaded grades' figure",
+        SFPM,
     ),
     mill(
         Material::MediumCarbonSteel,

@@ -162,7 +162,7 @@ fn of_operation(operation: Operation) -> Option<(Operation, Factor)> {
         ),
         Operation::Drilling => (
             Operation::RoughTurning,
-            "drilling: published as 0.78 to 0.91 of turning in soft steels, a little below them",
+            "drilling: published as 0.77 to 1.0 of turning, a little below that",
             0.75,
             Source::read(
                 "handbook table of HSS speeds for turning, milling, drilling and reaming carbon and alloy steels, vm68.com/stuff/sfpm.html",
@@ -200,7 +200,7 @@ fn of_operation(operation: Operation) -> Option<(Operation, Factor)> {
         ),
         Operation::Milling => (
             Operation::RoughTurning,
-            "milling: published as 0.9 to 1.4 of turning, here as turning: cutters cost more than edges",
+            "milling: published as 0.8 to 1.4 of turning, here as turning: cutters cost more than edges",
             1.0,
             Source::read(
                 "The Ferrous Metals Data Book, ch. 9, tables 9-2, 9-3, 9-8, 9-9; handbook table, vm68.com/stuff/sfpm.html",
