@@ -146,7 +146,7 @@ fn speed(material: Material, tool: Tool, operation: Operation) -> f64 {
     f64::from(advised(material, tool, operation).ours.m_min())
 }
 
-/// The rule of issue and domain: never above the top, never below 0.6 of the bottom.
+/// The rule: never above the top, never below 0.6 of the bottom.
 fn agrees(value: f64, (low, high): (f64, f64)) -> bool {
     value <= high * (1.0 + EPS) && value >= 0.6 * low * (1.0 - EPS)
 }
@@ -311,7 +311,7 @@ fn upper_limits_hold() {
 
 #[test]
 fn cobalt_stays_below_the_tungsten_cobalt_columns() {
-    // USAF T.O. 1-1A-9, table 2-8: not our tool, but hotter-hard than it, so its tops bind.
+    // USAF T.O. 1-1A-9, table 2-8: not our tool, but one that stands more heat, so its tops bind.
     let rows = published();
     let mut seen = 0;
     for (id, row) in rows.iter().filter(|(_, r)| r.tool() == "tungsten-cobalt") {
