@@ -306,7 +306,9 @@ fn number_of(s: &str) -> Result<f32, UnitError> {
     let left = left.trim();
     // The hyphen of `1-1/2` joins; with a space before it, it would be a minus sign, which is no way to write a length.
     let (whole, above) = match left.rsplit_once([' ', '-']) {
-        Some((whole, _)) if left.contains('-') && whole.ends_with(' ') => return Err(UnitError::NotANumber),
+        Some((whole, _)) if left.contains('-') && whole.ends_with(' ') => {
+            return Err(UnitError::NotANumber);
+        }
         Some((whole, above)) if !whole.trim().is_empty() => (decimal(whole.trim())?, above),
         _ => (0.0, left),
     };

@@ -17,12 +17,28 @@ pub struct Whole {
 impl Whole {
     /// Begins to write what will be `path`.
     pub fn begin(path: &Path) -> Result<Self, Fail> {
-        let name = path.file_name().ok_or_else(|| Fail::file(path, "names no file"))?;
+        let name = path
+            .file_name()
+            .ok_or_else(|| Fail::file(path, "names no file"))?;
         let mut beside = name.to_os_string();
         beside.push(format!(".{}.part", std::process::id()));
         let beside = path.with_file_name(beside);
-        let file = File::create(&beside).map_err(|e| Fail::file(path, format_args!("cannot be written: {e}")))?;
-        Ok(Whole { path: path.to_path_buf(), beside, file: Some(BufWriter::new(file)) })
+        let file = File::create(&beside)
+            .map_err(|e| Fail::file(path, format_args!("cannot be written: {e}")))?;
+        Ok(Whole {
+            path: path.to_path_buf(),
+            beside,
+            file: Some(BufWriter::new(file)),
+        })
+    }
+
+    /// A file that is never written, to take the place of one that is finished.
+    pub fn nothing(path: &Path) -> Self {
+        Whole {
+            path: path.to_path_buf(),
+            beside: PathBuf::new(),
+            file: None,
+        }
     }
 
     /// Puts the file in its place.
@@ -38,7 +54,9 @@ impl Whole {
 
 impl Write for Whole {
     fn write(&mut self, bytes: &[u8]) -> std::io::Result<usize> {
-        self.file.as_mut().map_or(Ok(bytes.len()), |file| file.write(bytes))
+        self.file
+            .as_mut()
+            .map_or(Ok(bytes.len()), |file| file.write(bytes))
     }
     fn flush(&mut self) -> std::io::Result<()> {
         self.file.as_mut().map_or(Ok(()), BufWriter::flush)
