@@ -7,7 +7,7 @@ use rimrate_core::time::{Duration, Edge, Instant};
 
 use crate::lathe::{Cut, DriveSpec, Engagement, Feed, Lathe, LatheSpec, MotorSwitch};
 use crate::rig::{Rig, Touch};
-use crate::scenario::{Action, CutSpec, MotorTo};
+use crate::scenario::{Action, CutSpec, FaultName, MotorTo};
 use crate::sensor::{Sensor, SensorSpec};
 
 /// Edges reach the box in batches of this length, as the firmware takes them.
@@ -29,6 +29,9 @@ pub struct Bench<R> {
     /// The label of the step or the range that the levers stand at.
     gear: String,
     pulses: u64,
+    cut: Option<CutSpec>,
+    pedal: f64,
+    faults: Vec<FaultName>,
 }
 
 impl<R: Rig> Bench<R> {
@@ -54,6 +57,9 @@ impl<R: Rig> Bench<R> {
             edges: Vec::new(),
             gear: String::new(),
             pulses: 0,
+            cut: None,
+            pedal: 0.0,
+            faults: Vec::new(),
             machine,
         };
         match bench.machine.drive().clone() {
@@ -90,6 +96,18 @@ impl<R: Rig> Bench<R> {
     /// Falls of the sensor's line so far.
     pub fn pulses(&self) -> u64 {
         self.pulses
+    }
+    /// The cut in progress.
+    pub fn cut(&self) -> Option<CutSpec> {
+        self.cut
+    }
+    /// The foot on the brake, 0 to 1.
+    pub fn pedal(&self) -> f64 {
+        self.pedal
+    }
+    /// What is wrong with the sensor at present.
+    pub fn faults(&self) -> &[FaultName] {
+        &self.faults
     }
 
     /// Lets everything run up to `until`, in slices; `on_edges` sees the edges of each slice.
@@ -137,16 +155,35 @@ impl<R: Rig> Bench<R> {
             }
             Action::Lever(label) => self.lever(label),
             Action::Dial(rpm) => self.dial(*rpm),
-            Action::Cut(cut) => self
-                .lathe
-                .cut(Some(engaged(cut, f64::from(setup.diameter.mm())))),
-            Action::Uncut => self.lathe.cut(None),
-            Action::Brake(pedal) => self.lathe.brake(*pedal),
+            Action::Cut(cut) => {
+                self.cut = Some(*cut);
+                let diameter = f64::from(setup.diameter.mm());
+                self.lathe.cut(Some(engaged(cut, diameter)));
+            }
+            Action::Uncut => {
+                self.cut = None;
+                self.lathe.cut(None);
+            }
+            Action::Brake(pedal) => {
+                self.pedal = *pedal;
+                self.lathe.brake(*pedal);
+            }
             Action::Plug => self.lathe.plug(),
-            Action::Fault(fault) => self.sensor.set((*fault).into(), true),
-            Action::Mend(fault) => self.sensor.set((*fault).into(), false),
+            Action::Fault(fault) => {
+                self.mended(*fault);
+                self.faults.push(*fault);
+                self.sensor.set((*fault).into(), true);
+            }
+            Action::Mend(fault) => {
+                self.mended(*fault);
+                self.sensor.set((*fault).into(), false);
+            }
             Action::PowerCycle => self.rig.power_cycle(),
         }
+    }
+
+    fn mended(&mut self, fault: FaultName) {
+        self.faults.retain(|&f| f != fault);
     }
 
     fn push(&mut self, knob: Knob, time: Duration) {

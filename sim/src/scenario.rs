@@ -31,6 +31,8 @@ struct Written {
     #[serde(default)]
     sensor: WrittenSensor,
     #[serde(default)]
+    say: Vec<WrittenNote>,
+    #[serde(default)]
     at: Vec<WrittenAction>,
     #[serde(default)]
     expect: Vec<WrittenExpectation>,
@@ -58,6 +60,14 @@ struct WrittenSensor {
     spike_rate: Option<f64>,
     shake_hz: Option<f64>,
     shake_low: Option<f64>,
+}
+
+/// What happens from here on, in words for whoever watches.
+#[derive(Clone, Debug, Deserialize)]
+#[serde(deny_unknown_fields)]
+struct WrittenNote {
+    t: f64,
+    text: String,
 }
 
 #[derive(Clone, Debug, Deserialize)]
@@ -267,6 +277,8 @@ pub struct Scenario {
     pub setup: Setup,
     /// The sensor on the spindle.
     pub sensor: SensorSpec,
+    /// What it is all about from a time on, in words, in order of time.
+    pub notes: Vec<(f64, String)>,
     /// What happens, in order of time.
     pub actions: Vec<(f64, Action)>,
     /// What must be seen, in order of time.
@@ -305,6 +317,19 @@ impl Scenario {
             .sensor
             .check(&machine)
             .map_err(|(f, v, a)| fail(f, &v, a))?;
+
+        let mut notes = Vec::new();
+        for (i, WrittenNote { t, text }) in written.say.into_iter().enumerate() {
+            if !(0.0..=written.seconds).contains(&t) {
+                return Err(fail(
+                    &format!("say[{i}].t"),
+                    &t,
+                    "0 to the scenario's seconds",
+                ));
+            }
+            notes.push((t, text));
+        }
+        notes.sort_by(|a, b| a.0.total_cmp(&b.0));
 
         let mut actions = Vec::new();
         for (i, WrittenAction { t, r#do }) in written.at.into_iter().enumerate() {
@@ -347,6 +372,7 @@ impl Scenario {
             seed: written.seed,
             setup,
             sensor,
+            notes,
             actions,
             expectations,
         })
