@@ -62,6 +62,12 @@ pub(super) fn refuse(
         (_, Material::UnknownSteel) if tool.is_carbide() => {
             "unknown steel is cut with high-speed steel only: its speed would be guessed, and carbide chips where high-speed steel warns by wearing; find out what it is"
         }
+        (Operation::DieThreading, _) if tool.is_carbide() => {
+            "dies are made of high-speed or carbon steel: choose hss"
+        }
+        (Operation::HoleSawing, _) if tool.is_carbide() => {
+            "no published speed was found for hole saws with carbide teeth, which chip when fed by hand: take the maker's, or choose hss"
+        }
         (Operation::Tapping, _) if tool.is_carbide() => {
             "carbide taps break when a manual machine stops and reverses: choose hss"
         }
@@ -113,7 +119,11 @@ pub(super) fn nearer(cell: Cell) -> Result<(Cell, Factor), Refusal> {
     // has a turning speed of its own.
     let by_hand = matches!(
         cell.operation,
-        Operation::Drilling | Operation::Reaming | Operation::Tapping | Operation::Threading
+        Operation::Drilling
+            | Operation::Reaming
+            | Operation::Countersinking
+            | Operation::Tapping
+            | Operation::Threading
     );
     let has_turning_row = Cell {
         operation: Operation::RoughTurning,
@@ -205,6 +215,30 @@ fn of_operation(operation: Operation) -> Option<(Operation, Factor)> {
             Source::read(
                 "The Ferrous Metals Data Book, ch. 9, tables 9-2, 9-3, 9-8, 9-9; handbook table, vm68.com/stuff/sfpm.html",
             ),
+        ),
+        Operation::Countersinking => (
+            Operation::Drilling,
+            "countersinking, from drilling: a third to a half, long edges chatter",
+            0.4,
+            Source::common_practice(),
+        ),
+        Operation::HoleSawing => (
+            Operation::Drilling,
+            "hole saw, from drilling: thin teeth, and chips stay in the kerf",
+            0.6,
+            Source::common_practice(),
+        ),
+        Operation::FlyCutting => (
+            Operation::Milling,
+            "fly cutting, from milling: one point strikes once in every turn",
+            0.8,
+            Source::common_practice(),
+        ),
+        Operation::DieThreading => (
+            Operation::Tapping,
+            "die, as a tap: there must be time to stop and reverse",
+            1.0,
+            Source::common_practice(),
         ),
     };
     Some((from, Factor { what, by, source }))

@@ -336,7 +336,10 @@ impl Material {
                 Some("Dust: mask and extraction, above all with glass or cloth filling.")
             }
             Material::Thermoplastic => Some(
-                "Melts and gives off fumes when rubbed; long strings wind up: stop to clear them.",
+                "Melts and gives off fumes when rubbed, those of PVC and PTFE are poisonous: air it. Long strings wind up: stop to clear them.",
+            ),
+            Material::Copper | Material::Bronze | Material::ToughBronze => Some(
+                "If it may be beryllium copper: its dust and fumes destroy lungs. No dry grinding, filing or sanding, wet chips, mask and extraction.",
             ),
             Material::ZincAlloy => {
                 Some("Fine chips and dust burn, wet ones give off hydrogen: sweep them up.")

@@ -8,10 +8,13 @@
 //! top of the range, and not below 0.6 of its bottom.
 
 mod direct;
+pub mod edge;
 mod factor;
+pub mod feed;
 mod material;
 mod operation;
 mod source;
+pub mod stock;
 mod tool;
 mod turning;
 

@@ -33,11 +33,19 @@ pub enum Operation {
     Knurling,
     /// With a cutter in the spindle.
     Milling,
+    /// A cone at the mouth of a hole.
+    Countersinking,
+    /// With a hole saw.
+    HoleSawing,
+    /// With one point swung on a wide circle.
+    FlyCutting,
+    /// An outside thread with a die.
+    DieThreading,
 }
 
 impl Operation {
     /// All of them, in the order a knob turns through.
-    pub const ALL: [Operation; 11] = [
+    pub const ALL: [Operation; 15] = [
         Operation::RoughTurning,
         Operation::FinishTurning,
         Operation::Facing,
@@ -49,6 +57,10 @@ impl Operation {
         Operation::Parting,
         Operation::Knurling,
         Operation::Milling,
+        Operation::Countersinking,
+        Operation::HoleSawing,
+        Operation::FlyCutting,
+        Operation::DieThreading,
     ];
 
     /// The word that names it in files and commands.
@@ -65,6 +77,10 @@ impl Operation {
             Operation::Parting => "parting",
             Operation::Knurling => "knurling",
             Operation::Milling => "milling",
+            Operation::Countersinking => "countersinking",
+            Operation::HoleSawing => "hole-sawing",
+            Operation::FlyCutting => "fly-cutting",
+            Operation::DieThreading => "die-threading",
         }
     }
     /// In full.
@@ -81,6 +97,10 @@ impl Operation {
             Operation::Parting => "parting off",
             Operation::Knurling => "knurling",
             Operation::Milling => "milling",
+            Operation::Countersinking => "countersinking",
+            Operation::HoleSawing => "cutting with a hole saw",
+            Operation::FlyCutting => "fly cutting",
+            Operation::DieThreading => "threading with a die",
         }
     }
     /// For the small screen: at most 10 characters, ASCII.
@@ -97,11 +117,39 @@ impl Operation {
             Operation::Parting => "Parting",
             Operation::Knurling => "Knurling",
             Operation::Milling => "Milling",
+            Operation::Countersinking => "C-sinking",
+            Operation::HoleSawing => "Hole saw",
+            Operation::FlyCutting => "Fly cutter",
+            Operation::DieThreading => "Die",
         }
     }
     /// The operation of that name.
     pub fn from_id(id: &str) -> Option<Self> {
         Self::ALL.into_iter().find(|o| o.id() == id)
+    }
+    /// Turned on the outside of work that a holder swings: the diameter is the work's.
+    pub const fn is_outside_turning(self) -> bool {
+        matches!(
+            self,
+            Operation::RoughTurning
+                | Operation::FinishTurning
+                | Operation::Facing
+                | Operation::Threading
+                | Operation::Parting
+                | Operation::Knurling
+                | Operation::DieThreading
+        )
+    }
+    /// Several teeth, or one, turn with the cutter and the work is fed past them.
+    pub const fn is_milling(self) -> bool {
+        matches!(self, Operation::Milling | Operation::FlyCutting)
+    }
+    /// A thread is cut, so the lead is the feed.
+    pub const fn is_threading(self) -> bool {
+        matches!(
+            self,
+            Operation::Threading | Operation::Tapping | Operation::DieThreading
+        )
     }
     /// What the diameter belongs to, so that the screen can name it: at most 6 characters.
     ///
@@ -120,6 +168,10 @@ impl Operation {
             Operation::Reaming => "reamer",
             Operation::Tapping => "tap",
             Operation::Milling => "cutter",
+            Operation::Countersinking => "c-sink",
+            Operation::HoleSawing => "saw",
+            Operation::FlyCutting => "circle",
+            Operation::DieThreading => "thread",
         }
     }
 }

@@ -127,3 +127,26 @@ pub(crate) const ARMY: Source = Source::from_memory(
 pub(crate) const MACHINERYS: Source = Source::from_memory(
     "Machinery's Handbook, tables of HSS turning speeds by material and hardness",
 );
+/// Drill feeds at two diameters.
+pub(crate) const KALPAKJIAN_DRILLS: Source = Source::read(
+    "Kalpakjian & Schmid, Manufacturing Engineering and Technology, table 23.11, p. 649, feeds at 1.5 and 12.5 mm",
+);
+/// Taylor exponents.
+pub(crate) const KALPAKJIAN_21: Source = Source::from_memory(
+    "Kalpakjian & Schmid, Manufacturing Engineering and Technology, ch. 21, ranges of the exponent n",
+);
+/// Face milling of low carbon steels.
+pub(crate) const DATA_BOOK_9_8: Source =
+    Source::read("The Ferrous Metals Data Book, ch. 9, table 9-8");
+/// Moduli and densities.
+pub(crate) const GERE: Source = Source::read("Gere, Mechanics of Materials, tables H-1 and H-2");
+/// The same tables, rows not seen again.
+pub(crate) const GERE_MEMORY: Source =
+    Source::from_memory("Gere, Mechanics of Materials, tables H-1 and H-2");
+/// Modulus of steel; its density from memory.
+pub(crate) const CALLISTER: Source =
+    Source::read("Callister, Materials Science and Engineering, table B.2, p. 804");
+/// Specific cutting forces by material group.
+pub(crate) const VDI_GROUPS: Source = Source::read(
+    "specific cutting force and its exponent by the material groups of VDI 3323, as tabulated in a cutting-tool maker's turning catalogue of 2017",
+);
