@@ -225,9 +225,14 @@ impl Panel {
         machine: &Machine,
     ) {
         let before = match &self.notice {
-            Some(notice) if notice.field == field => notice.before,
+            Some(notice) if notice.field == field && now < notice.until => notice.before,
             _ => before,
         };
+        if before == *after {
+            // Turned back to what it was: there is no change to tell.
+            self.notice = None;
+            return;
+        }
         let text = text(field.change(&before, after, machine));
         self.notice = Some(Notice {
             field,
