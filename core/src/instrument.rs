@@ -192,7 +192,7 @@ impl Instrument {
         let next = [
             beacon_next,
             self.panel.next_change(),
-            self.tacho.next_change().filter(|&at| at > now),
+            self.tacho.next_change(now).filter(|&at| at > now),
             self.unsaved_since.map(|since| since + SAVE_AFTER),
         ];
         Poll {

@@ -8,13 +8,20 @@
 
 use crate::time::{Duration, Edge, EdgeKind, Instant};
 
-/// A gap below this share of the passage joins. A toothed wheel may be low for up to five sixths of its pitch.
-const JOIN_SHARE: u64 = 6;
+/// A gap below this share of the passage joins. A toothed wheel may be low for up to nine tenths of its pitch.
+const JOIN_SHARE: u64 = 10;
 /// A low narrower than this share of the recent passages is a sliver. Magnets of one collar differ less than that,
 /// and so do two passages that follow one another in a run-up.
 const SLIVER_SHARE: u64 = 4;
-/// The input's electrical limit: 20,000 pulses a second. Never derived from the machine's top speed: a runaway must be seen.
-pub(super) const SHORTEST_PERIOD: Duration = Duration::from_micros(50);
+/// Slivers may be the passages of a spindle that has become much faster: not if they are thinner than this part of their
+/// spacing (4.5 degrees for one magnet),
+const THINNEST: u64 = 80;
+/// and only after this many in a row.
+const NARROW_IS_USUAL: u8 = 6;
+/// A longer low is no passage but a magnet that was parked at the sensor: it says nothing about the next one.
+const PARKED: Duration = Duration::from_secs(1);
+/// The input's electrical limit, 20,000 pulses a second, with a tenth for jitter. Never derived from the machine's top speed: a runaway must be seen.
+pub(super) const SHORTEST_PERIOD: Duration = Duration::from_micros(45);
 
 /// One passage of a magnet.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -67,6 +74,10 @@ pub(super) struct Gate {
     reported_at: Option<Instant>,
     /// Width of the recent passages; zero where nothing is known.
     usual: u64,
+    /// First fall of the last passage or sliver that is over.
+    closed_at: Option<Instant>,
+    /// Slivers in a row that a faster spindle could have made.
+    narrow: u8,
     pub(super) rejected: Rejected,
 }
 
@@ -74,6 +85,15 @@ impl Gate {
     /// Forgets the usual width: after a standstill the next passages may have any.
     pub(super) fn forget_width(&mut self) {
         self.usual = 0;
+    }
+
+    /// When a pulse began that may be under way at `now` but is not proven yet.
+    pub(super) fn under_way(&self, now: Instant) -> Option<Instant> {
+        let begun = self.passage.filter(|p| {
+            let pause = self.low_since.unwrap_or(now).since(p.last_rise).nanos();
+            !p.reported && pause.saturating_mul(JOIN_SHARE) < self.usual
+        });
+        begun.map(|p| p.first).or(self.low_since)
     }
 
     /// Takes one edge; O(1).
@@ -119,7 +139,7 @@ impl Gate {
             }
             before => {
                 if let Some(p) = before {
-                    self.close(p, fell);
+                    self.close(p);
                 }
                 Passage {
                     first: fell,
@@ -149,19 +169,22 @@ impl Gate {
         })
     }
 
-    /// A passage is over because the next low, which begins at `next`, is not part of it.
-    fn close(&mut self, passage: Passage, next: Instant) {
-        let width = passage.width().nanos();
-        let gap = next.since(passage.last_rise).nanos();
-        if !passage.reported {
-            self.rejected.slivers += 1;
-            // Should the usual width be wrong, it is unlearned within a few passages.
-            self.usual -= self.usual / 4;
-        } else if width / 8 > gap {
-            // The magnet was parked at the sensor: that width says nothing about the next.
+    /// A passage or a sliver is over: the next low is not part of it.
+    fn close(&mut self, passage: Passage) {
+        let width = passage.width();
+        let before = self.closed_at.replace(passage.first);
+        if passage.reported {
+            self.narrow = 0;
+            self.usual = if width > PARKED { 0 } else { width.nanos() };
+            return;
+        }
+        self.rejected.slivers += 1;
+        let spacing = before.map_or(Duration::MAX, |before| passage.first.since(before));
+        let could_turn = width.nanos().saturating_mul(THINNEST) >= spacing.nanos();
+        self.narrow = if could_turn { self.narrow + 1 } else { 0 };
+        if self.narrow >= NARROW_IS_USUAL {
             self.usual = 0;
-        } else {
-            self.usual = width;
+            self.narrow = 0;
         }
     }
 }

@@ -4,6 +4,7 @@
 //! said. Time comes in with the edges and with [`Tacho::reading`]; a reading uses no later edge.
 
 mod gate;
+mod placement;
 mod signal;
 mod track;
 
@@ -18,7 +19,7 @@ pub use gate::Rejected;
 pub use signal::Signal;
 
 use gate::{Gate, Pulse};
-use track::Track;
+use track::{Span, Track};
 
 /// A speed is doubted only after it has been steady for this long.
 const DOUBT_AFTER: Duration = Duration::from_secs(1);
@@ -41,7 +42,7 @@ pub struct Config {
 pub struct Reading {
     /// What may be said.
     pub signal: Signal,
-    /// The calm speed, for digits: zero when still, `None` when lost or doubtful.
+    /// The calm speed, for digits: zero when still, `None` when lost, not to be shown when doubtful.
     pub speed: Option<Rpm>,
     /// The fast speed, for verdict and beacon: as `speed`, but when doubtful the highest speed that the pulses allow.
     pub quick: Option<Rpm>,
@@ -69,7 +70,7 @@ pub struct Tacho {
     track: Track,
     state: State,
     /// The last pulses, oldest first: a start must agree with itself.
-    latest: Deque<Pulse, 4>,
+    latest: Deque<Pulse, START_PULSES>,
     /// How many pulses in a row were too wide for a spindle that turns.
     too_wide: u8,
     /// Low share of the pulse spacing as seen while turning; it tells turning from a parked magnet that shakes.
@@ -91,19 +92,67 @@ const LOW_SHARE_FEW: f32 = 0.35;
 const LOW_SHARE_MANY: f32 = 0.85;
 /// From here on it is a toothed wheel.
 const MANY_PULSES: u16 = 8;
-/// With experience: how far, as a factor, the low share may be above what was seen while turning.
-const LOW_SHARE_AGREES: f32 = 2.5;
-/// Range of the ratio of neighbouring low shares in a start; magnets of one collar differ somewhat.
-const LOW_SHARES_ALIKE: core::ops::Range<f32> = 0.6..1.6;
+/// With experience: how far, as a factor, the low share may be from what was seen while turning.
+const LOW_SHARE_AGREES: f32 = 1.8;
 /// A spindle that stops may end with two wide passages; after this many in a row it is a parked magnet that shakes.
 const TOO_WIDE_IS_STILL: u8 = 3;
 /// Until the placement is known, the largest gap may be this much wider than an even one: six magnets, each 3 degrees off.
 const UNKNOWN_GAP: f32 = 1.1;
-/// Range of the ratio of neighbouring intervals that agree. A run-up from rest at constant torque shortens its third
-/// interval to 0.77 of its second; a coast lengthens it the other way; six magnets each 3 degrees off give 0.82 to 1.22.
-const INTERVALS_AGREE: core::ops::Range<f32> = 0.7..1.4;
-/// How far the speed may be from the last one to end a loss after two intervals.
+/// How well pulses must agree to be a start. The fewer there are, the better.
+struct Start {
+    /// Intervals between them.
+    intervals: usize,
+    /// How far, as a factor, neighbouring intervals may differ.
+    interval: f32,
+    /// How far, as a factor, neighbouring low shares may differ.
+    share: f32,
+    /// Whether the low share must be known from turning, and met.
+    experienced: bool,
+}
+
+/// Any of these is a start. A run-up from rest at constant torque shortens its third interval to 0.77 of its second, its
+/// seventh to 0.93 of its sixth; six magnets each 3 degrees off make neighbouring intervals differ by up to a fifth.
+/// A magnet that shakes at random meets each of them less than once in an hour (see the tests).
+const STARTS: [Start; 4] = [
+    Start {
+        intervals: 3,
+        interval: 1.03,
+        share: 1.08,
+        experienced: false,
+    },
+    Start {
+        intervals: 3,
+        interval: 1.06,
+        share: 1.12,
+        experienced: true,
+    },
+    Start {
+        intervals: 5,
+        interval: 1.40,
+        share: 1.60,
+        experienced: true,
+    },
+    Start {
+        intervals: 7,
+        interval: 1.38,
+        share: 1.50,
+        experienced: false,
+    },
+];
+/// The longest start has this many pulses.
+const START_PULSES: usize = 8;
+/// From lost, two intervals as before are enough.
+const RETURN: Start = Start {
+    intervals: 2,
+    interval: 1.40,
+    share: 1.60,
+    experienced: false,
+};
+/// How far the speed may be from the last one to end a loss.
 const SPEEDS_AGREE: f32 = 0.10;
+/// A pulse this much later than expected, and the jitter of a cheap switch on top, is only just overdue.
+const OVERDUE: f32 = 1.005;
+const JITTER: Duration = Duration::from_micros(5);
 
 impl Tacho {
     /// Starts without knowing anything of the spindle.
@@ -152,6 +201,11 @@ impl Tacho {
                     .push(pulse.at, plausible, &mut self.gate.rejected);
             }
             State::Turning => self.stand_still(),
+            State::Still if plausible && self.track.goes_on(pulse.at) => {
+                self.state = State::Turning;
+                self.track
+                    .push(pulse.at, plausible, &mut self.gate.rejected);
+            }
             State::Still | State::Lost(_) => {
                 if let Some(count) = self.starts() {
                     let skip = self.latest.len().saturating_sub(count);
@@ -178,36 +232,37 @@ impl Tacho {
                 let (calm, quick) = (believe(self.track.calm()), believe(self.track.quick()));
                 let unexplained = self.track.steady_for(DOUBT_AFTER)
                     && calm.is_some_and(|n| n > self.config.slowest && !explains(n));
-                if unexplained || self.track.often_missing() {
-                    let quick = quick.map(|n| {
-                        if unexplained {
-                            self.with_a_magnet_gone(n, &explains)
-                        } else {
-                            n
-                        }
-                    });
-                    Reading {
-                        signal: Signal::Doubtful,
-                        speed: None,
-                        quick,
-                    }
+                let signal = if unexplained || self.track.often_missing() {
+                    Signal::Doubtful
                 } else {
-                    Reading {
-                        signal: Signal::Turning,
-                        speed: calm,
-                        quick,
-                    }
+                    Signal::Turning
+                };
+                let quick = if unexplained {
+                    quick.map(|n| self.with_a_magnet_gone(n, &explains))
+                } else if signal == Signal::Doubtful {
+                    // Where magnets are gone, silence proves less.
+                    let bound = bound * (1 + self.track.longest_missing()) as f32;
+                    self.track
+                        .quick()
+                        .map(|n| Rpm::saturating(60.0 * n.min(bound)))
+                } else {
+                    quick
+                };
+                Reading {
+                    signal,
+                    speed: calm,
+                    quick,
                 }
             }
         }
     }
 
     /// When the signal changes next if no edge comes.
-    pub fn next_change(&self) -> Option<Instant> {
+    pub fn next_change(&self, now: Instant) -> Option<Instant> {
         if self.state != State::Turning {
             return None;
         }
-        self.lost_at().or_else(|| self.still_at())
+        self.lost_at(now).or_else(|| self.still_at(now))
     }
 
     /// If one of several magnets is gone the spindle turns faster than the pulses say: assume so where that is explained.
@@ -222,17 +277,17 @@ impl Tacho {
         if self.state != State::Turning {
             return;
         }
-        if let Some(at) = self.lost_at() {
+        if let Some(at) = self.lost_at(now) {
             if now >= at {
                 self.state = State::Lost(self.track.quick().unwrap_or(0.0));
                 self.latest.clear();
             }
-        } else if self.still_at().is_some_and(|at| now >= at) {
+        } else if self.still_at(now).is_some_and(|at| now >= at) {
             self.stand_still();
         }
     }
 
-    /// The last pulses stay: a rhythm just below the slowest speed goes on with the next one.
+    /// The last pulses stay: where the slowest speed was only just missed, the next one goes on with them.
     fn stand_still(&mut self) {
         self.state = State::Still;
         self.gate.forget_width();
@@ -249,63 +304,90 @@ impl Tacho {
             .map_or(without_experience, |s| s * LOW_SHARE_AGREES)
     }
 
-    fn still_at(&self) -> Option<Instant> {
-        let longest =
-            60.0 * self.track.largest_gap(1.0) / self.config.slowest.get() * signal::STILL_MARGIN;
-        self.track
-            .last()
-            .map(|last| last + Duration::from_secs_f32(longest))
+    /// The last pulse, or the fall of one that may be under way.
+    fn last_sign(&self, now: Instant) -> Option<Instant> {
+        self.track.last().max(self.gate.under_way(now))
     }
 
-    fn lost_at(&self) -> Option<Instant> {
-        let (turn, before) = self.track.last_turns()?;
+    fn still_at(&self, now: Instant) -> Option<Instant> {
+        let slowest = self.config.slowest.rev_per_s();
+        let longest = self.track.placement.largest(1.0) / slowest * signal::STILL_MARGIN;
+        Some(self.last_sign(now)? + Duration::from_secs_f32(longest))
+    }
+
+    fn lost_at(&self, now: Instant) -> Option<Instant> {
+        let n = u32::from(self.config.pulses.get());
         let brake = self.config.brake_rpm_per_s / 60.0;
-        let end = signal::slowest_end(turn, before, brake);
-        let spacing = turn / f32::from(self.config.pulses.get());
-        signal::lost_at(
-            self.track.last()?,
-            end,
-            self.track.largest_gap(UNKNOWN_GAP),
-            spacing,
-            brake,
-        )
+        // Each stretch gives a lower bound on the speed at the last pulse: the best one counts.
+        let end_after = |magnets: u32, stretch: Option<Span>| {
+            let before = self.track.span(magnets + n, magnets);
+            let third = self.track.span(magnets + 2 * n, magnets + n);
+            stretch.map(|stretch| signal::slowest_end(stretch, before, third, brake))
+        };
+        let turn = self.track.turn()?;
+        let of_turn = end_after(n, Some(turn));
+        let of_interval = match self.track.placement.known() {
+            true => end_after(1, self.track.span(1, 0)),
+            false => None,
+        };
+        let last = self.track.last()?;
+        let mut end = of_turn?.max(of_interval.unwrap_or(f32::MIN));
+        let under_way = self.gate.under_way(now).filter(|&fell| fell > last);
+        if let Some(fell) = under_way {
+            // The spindle may have come to stand with a magnet at the sensor: that passage ends no more, but it counts.
+            let stretch = self.track.next_span(fell, UNKNOWN_GAP);
+            end = signal::slowest_end(stretch, Some(turn), self.track.span(2 * n, n), brake);
+        }
+        let gap = self.track.placement.largest(UNKNOWN_GAP);
+        let spacing = 1.0 / (turn.speed() * n as f32);
+        signal::lost_at(under_way.unwrap_or(last), end, gap, spacing, brake)
     }
 
-    /// The fastest that the silence since the last pulse allows, rev/s.
+    /// The fastest that the silence since the last pulse allows, rev/s. A pulse that may be under way ends one silence and
+    /// begins another: the longer one counts. A pulse that is only just overdue proves little: see [`OVERDUE`].
     fn silence_bound(&self, now: Instant) -> f32 {
-        let silence = self
-            .track
-            .last()
-            .map_or(Duration::ZERO, |last| now.since(last))
-            .secs_f32();
-        if silence > 0.0 {
-            self.track.largest_gap(1.0) / silence
+        let Some(last) = self.track.last() else {
+            return 0.0;
+        };
+        let silence = match self.gate.under_way(now).filter(|&fell| fell > last) {
+            Some(fell) => fell.since(last).max(now.since(fell)),
+            None => now.since(last),
+        };
+        let proven = silence.nanos().saturating_sub(JITTER.nanos());
+        if proven > 0 {
+            self.track.placement.largest(1.0) * OVERDUE / Duration::from_nanos(proven).secs_f32()
         } else {
             f32::INFINITY
         }
     }
 
-    /// How many of the last pulses are a start: from still three agreeing intervals, from lost two that agree with the
-    /// last speed.
+    /// How many of the last pulses are a start.
     fn starts(&self) -> Option<usize> {
-        if self.agree(4) {
-            return Some(4);
+        if let Some(start) = STARTS.iter().find(|start| self.agree(start)) {
+            return Some(start.intervals + 1);
         }
         let State::Lost(speed) = self.state else {
             return None;
         };
+        let count = RETURN.intervals + 1;
         let as_before = self
-            .starting_speed(3)
+            .starting_speed(count)
             .is_some_and(|n| (n / speed - 1.0).abs() < SPEEDS_AGREE);
-        (as_before && self.agree(3)).then_some(3)
+        (as_before && self.agree(&RETURN)).then_some(count)
     }
 
-    /// Whether the last `count` pulses agree in interval and in low share.
-    fn agree(&self, count: usize) -> bool {
-        let Some(skip) = self.latest.len().checked_sub(count) else {
+    /// Whether the last pulses are such a start.
+    fn agree(&self, start: &Start) -> bool {
+        let Some(skip) = self.latest.len().checked_sub(start.intervals + 1) else {
             return false;
         };
+        let narrowest = match (start.experienced, self.low_share) {
+            (true, None) => return false,
+            (true, Some(share)) => share / LOW_SHARE_AGREES,
+            (false, _) => 0.0,
+        };
         let widest = self.widest_share();
+        let alike = |a: f32, b: f32, factor: f32| a < factor * b && b < factor * a;
         let mut pulses = self.latest.iter().skip(skip);
         let Some(mut before) = pulses.next() else {
             return false;
@@ -315,9 +397,9 @@ impl Tacho {
             let interval = pulse.at.since(before.at).secs_f32();
             let share = before.width.secs_f32() / interval;
             let as_last = last.is_none_or(|(i, s)| {
-                INTERVALS_AGREE.contains(&(interval / i)) && LOW_SHARES_ALIKE.contains(&(share / s))
+                alike(interval, i, start.interval) && alike(share, s, start.share)
             });
-            if share > widest || !as_last {
+            if !(narrowest..=widest).contains(&share) || !as_last {
                 return false;
             }
             last = Some((interval, share));
@@ -341,6 +423,13 @@ impl Tacho {
             return;
         };
         let share = pulse.width.secs_f32() * speed * f32::from(self.config.pulses.get());
-        self.low_share = Some(self.low_share.map_or(share, |s| s + (share - s) / 16.0));
+        // One odd pulse must not spoil what the next start will be judged by.
+        self.low_share = Some(match self.low_share {
+            Some(known) => {
+                let believed = share.clamp(known / LOW_SHARE_AGREES, known * LOW_SHARE_AGREES);
+                known + (believed - known) / 16.0
+            }
+            None => share,
+        });
     }
 }

@@ -5,6 +5,7 @@
 //! longer than (w - sqrt(w^2 - 2 a g)) / a cannot be a stop, so the signal is lost. Below that speed a dead sensor and a
 //! stop look the same, and nobody can know.
 
+use super::track::Span;
 use crate::time::{Duration, Instant};
 
 /// A lost signal is said after this long at the earliest,
@@ -13,8 +14,10 @@ const LOST_AFTER: Duration = Duration::from_millis(500);
 const LOST_AFTER_PULSES: f32 = 4.0;
 /// How closely two turns at the same speed agree: ripple of belt and gears is 0.1 to 0.5 % (common practice, no source).
 const RIPPLE: f32 = 0.003;
-/// Turns that differ by more are not one speed.
+/// A spindle whose last turn is faster than expected by more is still speeding up.
 const SPEEDING_UP: f32 = 0.01;
+/// Ripple comes on top of the hardest braking.
+const HARDER: f32 = 1.05;
 /// A rhythm slower than the slowest speed by this much is still: jitter must not make the slowest speed flicker.
 pub(super) const STILL_MARGIN: f32 = 1.005;
 
@@ -44,27 +47,35 @@ impl Signal {
     }
 }
 
-/// The slowest that the spindle can have turned at its last pulse, rev/s.
+/// The slowest that the spindle can have turned at the end of a stretch, rev/s, with at most `brake` of deceleration.
 ///
-/// `turn` is the time of the last revolution, `before` that of the revolution before it, where there was one.
-/// Of all ways to make that revolution in that time with at most `brake` of deceleration, the one that ends slowest keeps
-/// the old speed for as long as it can and then brakes at the limit; without knowledge of an old speed it brakes all along.
-pub(super) fn slowest_end(turn: f32, before: Option<f32>, brake: f32) -> f32 {
-    let mean = 1.0 / turn;
-    let braked_all_along = mean - brake * turn / 2.0;
-    let Some(before) = before else {
+/// Of all ways to make the stretch in its time, the one that ends slowest keeps the speed at its start for as long as it can
+/// and then brakes at the limit; without knowledge of that speed it brakes all along. `before` is the revolution before the
+/// stretch and `third` the one before that.
+pub(super) fn slowest_end(
+    stretch: Span,
+    before: Option<Span>,
+    third: Option<Span>,
+    brake: f32,
+) -> f32 {
+    let brake = brake * HARDER;
+    let braked_all_along = stretch.speed() - brake * stretch.time / 2.0;
+    let (Some(before), Some(third)) = (before, third) else {
         return braked_all_along;
     };
-    let old = (1.0 + RIPPLE) / before;
-    if mean > old * (1.0 + SPEEDING_UP) {
-        // It was still speeding up: the old speed says nothing about this revolution.
+    let (before, third) = (before.speed(), third.speed());
+    // While it speeds up, the end of a revolution is faster than its mean by half of the gain.
+    let gain = (before - third).max(0.0);
+    let start = (before + gain / 2.0) * (1.0 + RIPPLE);
+    if stretch.speed() > start * (1.0 + SPEEDING_UP) || gain > SPEEDING_UP * before {
         return braked_all_along;
     }
-    let braking = libm::sqrtf(2.0 * (old * turn - 1.0).max(0.0) / brake);
-    if braking > turn {
+    let short = (start * stretch.time - stretch.angle).max(0.0);
+    let braking = libm::sqrtf(2.0 * short / brake);
+    if braking > stretch.time {
         braked_all_along
     } else {
-        (old - brake * braking).max(braked_all_along)
+        (start - brake * braking).max(braked_all_along)
     }
 }
 
@@ -79,6 +90,7 @@ pub(super) fn lost_at(
     spacing: f32,
     brake: f32,
 ) -> Option<Instant> {
+    let brake = brake * HARDER;
     let left = end * end - 2.0 * brake * gap;
     if end <= 0.0 || left <= 0.0 {
         return None;

@@ -1,27 +1,30 @@
 //! Which magnet each pulse belongs to: an index for every pulse, with missing and extra pulses accounted for.
 //!
-//! Speed is then the slope of the index against time. Spans over whole revolutions start and end at the same magnet, so
-//! the magnets' placement errors cancel in them exactly.
+//! Speed is then the angle between two pulses over the time between them. Over whole revolutions the angle is exact, for a
+//! span starts and ends at the same magnet; over parts of one it is as exact as the placement learned so far.
 
 use heapless::Deque;
 
 use super::gate::{Pulse, Rejected};
+use super::placement::Placement;
 use crate::time::{Duration, Instant};
 
-/// Pulses remembered. One more than the most pulses in a revolution, so that a whole turn always fits.
+/// Pulses remembered: more than the most pulses in a revolution, so that a whole turn always fits. Placement is learned
+/// from two turns; wheels of more than 127 teeth are taken as evenly cut.
 const MARKS: usize = 256;
 /// The calm view looks back over this long, or over this many revolutions, whichever is longer.
 const CALM: Duration = Duration::from_millis(500);
 const CALM_TURNS: u32 = 3;
 /// A turn that differs from the window by more begins a new window: the speed is changing.
 const STEADY_SHARE: f32 = 0.015;
+/// Placement is learned only while turns agree this closely.
+const LEARN_SHARE: f32 = 0.004;
 /// A pulse earlier than this share of the expected spacing is suspected to be an extra one.
 const EARLY: f32 = 0.75;
 /// A pulse later than this share may mean that pulses are missing.
 const LATE: f32 = 1.5;
 /// A whole number of spacings must be met this closely, in spacings, to say that pulses are missing.
 const MISSING_WITHIN: f32 = 0.25;
-
 /// Indices are counted anew from here, long before they overflow.
 const RENUMBER: u32 = 1 << 31;
 
@@ -35,10 +38,24 @@ struct Mark {
 /// A pulse that came whole spacings late.
 #[derive(Clone, Copy, Debug)]
 struct Late {
-    /// The spacing before it, s.
-    spacing: f32,
+    /// The spacing that was expected, s.
+    expected: f32,
     /// How many pulses would be missing.
     missing: u32,
+}
+
+/// A stretch of motion: an angle in revolutions and the time that it took in seconds.
+#[derive(Clone, Copy, Debug)]
+pub(super) struct Span {
+    pub(super) angle: f32,
+    pub(super) time: f32,
+}
+
+impl Span {
+    /// Mean speed, rev/s.
+    pub(super) fn speed(self) -> f32 {
+        self.angle / self.time
+    }
 }
 
 /// The count of magnets since the spindle was last seen to start.
@@ -56,12 +73,9 @@ pub(super) struct Track {
     late: Option<Late>,
     /// The last pulses that were dropped as extra stood in the middle.
     extra_in_a_row: u8,
-    /// Largest gap between neighbouring magnets as seen over a steady turn, revolutions; zero until one was seen.
-    gap: f32,
-    /// The same for the turn under way, and how many magnets of it have passed.
-    gap_so_far: (f32, u32),
     /// One bit a magnet, newest lowest, set where its pulse was missing.
     missed: u32,
+    pub(super) placement: Placement,
 }
 
 impl Track {
@@ -74,13 +88,12 @@ impl Track {
             suspect: None,
             late: None,
             extra_in_a_row: 0,
-            gap: 0.0,
-            gap_so_far: (0.0, 0),
             missed: 0,
+            placement: Placement::new(pulses),
         }
     }
 
-    /// Starts anew from pulses that agree, oldest first.
+    /// Starts anew from pulses that agree, oldest first. Which magnet is which is not known any more.
     pub(super) fn start<'a>(&mut self, pulses: impl Iterator<Item = &'a Pulse>) {
         self.marks.clear();
         self.window = 0;
@@ -88,6 +101,7 @@ impl Track {
         self.late = None;
         self.extra_in_a_row = 0;
         self.missed = 0;
+        self.placement.forget();
         for (index, pulse) in (0..).zip(pulses) {
             self.remember(Mark {
                 at: pulse.at,
@@ -111,114 +125,101 @@ impl Track {
 
     /// The mark `back` magnets before the newest one, if that magnet's pulse is remembered. O(missing pulses).
     fn back(&self, back: u32) -> Option<Mark> {
-        let newest = self.marks.back()?;
-        let wanted = newest.index.checked_sub(back)?;
+        let wanted = self.marks.back()?.index.checked_sub(back)?;
         // Without a missing pulse the place is exact; each missing one moves it towards the newest.
         let mut place = (self.marks.len() - 1).saturating_sub(back as usize);
         loop {
-            let mark = self.marks.get(place)?;
-            if mark.index == wanted {
-                return Some(*mark);
+            let mark = *self.marks.get(place)?;
+            if mark.index >= wanted {
+                // Places before this one hold older magnets only.
+                return (mark.index == wanted).then_some(mark).or_else(|| {
+                    let before = *self.marks.get(place.checked_sub(1)?)?;
+                    (before.index == wanted).then_some(before)
+                });
             }
-            if mark.index > wanted && place == 0
-                || mark.index < wanted && self.marks.get(place + 1)?.index > wanted
-            {
-                return None;
-            }
-            place = if mark.index > wanted {
-                place - 1
-            } else {
-                place + 1
-            };
+            place += 1;
         }
     }
 
-    /// Mean speed between two marks, rev/s.
-    fn slope(&self, from: Mark, to: Mark) -> Option<f32> {
-        let span = to.at.since(from.at).secs_f32();
-        let turns = to.index.checked_sub(from.index)? as f32 / self.pulses as f32;
-        (span > 0.0 && turns > 0.0).then(|| turns / span)
+    fn between(&self, from: Mark, to: Mark) -> Option<Span> {
+        let time = to.at.since(from.at).secs_f32();
+        let angle = self.placement.angle(from.index, to.index);
+        (time > 0.0 && angle > 0.0).then_some(Span { angle, time })
     }
 
-    /// The largest gap between neighbouring magnets, in revolutions: as seen over a steady turn, before that an even
-    /// spacing times `unknown`.
-    pub(super) fn largest_gap(&self, unknown: f32) -> f32 {
-        if self.gap > 0.0 {
-            self.gap
+    /// The stretch between the pulses `from` and `to` magnets before the newest one.
+    pub(super) fn span(&self, from: u32, to: u32) -> Option<Span> {
+        self.between(self.back(from)?, self.back(to)?)
+    }
+
+    /// The stretch from the newest pulse to one that may be coming at `at`; where placement is unknown it may be shorter than
+    /// an even one by the factor `unknown`.
+    pub(super) fn next_span(&self, at: Instant, unknown: f32) -> Span {
+        let index = self.marks.back().map_or(0, |m| m.index);
+        let even = self.placement.angle(index, index + 1);
+        let angle = if self.placement.known() {
+            even
         } else {
-            unknown / self.pulses as f32
-        }
-    }
-
-    /// Learns the largest gap from turn after steady turn.
-    fn learn_gap(&mut self, interval: f32) {
-        let Some(turn) = self
-            .back(self.pulses)
-            .zip(self.marks.back())
-            .map(|(a, b)| b.at.since(a.at).secs_f32())
-        else {
-            return;
+            even / unknown
         };
-        let (largest, magnets) = self.gap_so_far;
-        let largest = largest.max(interval / turn);
-        if magnets + 1 < self.pulses {
-            self.gap_so_far = (largest, magnets + 1);
-        } else {
-            self.gap = largest.max(1.0 / self.pulses as f32);
-            self.gap_so_far = (0.0, 0);
+        let time = self
+            .last()
+            .map_or(Duration::ZERO, |last| at.since(last))
+            .secs_f32();
+        Span {
+            angle,
+            time: time.max(f32::MIN_POSITIVE),
         }
     }
 
-    /// Times of the last revolution and of the one before it, s. Where less than one turn is known, the last interval
-    /// stands for it.
-    pub(super) fn last_turns(&self) -> Option<(f32, Option<f32>)> {
+    /// The last interval between two pulses, however many magnets it spans.
+    pub(super) fn last_interval(&self) -> Option<Span> {
         let newest = *self.marks.back()?;
-        let last = self
-            .back(self.pulses)
-            .and_then(|from| self.slope(from, newest))
-            .or_else(|| self.quick())?;
-        let before = self
-            .back(2 * self.pulses)
-            .zip(self.back(self.pulses))
-            .and_then(|(a, b)| self.slope(a, b));
-        Some((1.0 / last, before.map(|n| 1.0 / n)))
+        let before = *self.marks.get(self.marks.len().checked_sub(2)?)?;
+        self.between(before, newest)
     }
 
-    /// Mean speed of the last whole turn, or of all that is known where that is less; rev/s.
-    pub(super) fn quick(&self) -> Option<f32> {
+    /// The last whole turn, or all that is known where that is less.
+    pub(super) fn turn(&self) -> Option<Span> {
         let newest = *self.marks.back()?;
+        let reach = newest.index.saturating_sub(self.pulses);
         let from = self
             .back(self.pulses)
-            .or_else(|| self.oldest_within(newest, self.pulses))?;
-        self.slope(from, newest)
+            .or_else(|| self.marks.iter().find(|m| m.index >= reach).copied())?;
+        self.between(from, newest)
     }
 
-    /// Mean speed over whole turns of the present window; rev/s. At most [`CALM_TURNS`] turns or [`CALM`], whichever is longer.
+    /// The fast view, rev/s: a quarter of a turn where placement is known, a whole one before.
+    pub(super) fn quick(&self) -> Option<f32> {
+        let part = if self.placement.known() {
+            self.span(self.pulses.div_ceil(4), 0)
+        } else {
+            None
+        };
+        part.or_else(|| self.turn()).map(Span::speed)
+    }
+
+    /// The calm view, rev/s: whole turns of the present window, at most [`CALM_TURNS`] or [`CALM`], whichever is longer.
     pub(super) fn calm(&self) -> Option<f32> {
         let newest = *self.marks.back()?;
+        let turn = self.turn()?.speed();
         let known = newest.index.saturating_sub(self.window) / self.pulses;
-        let one_turn = 1.0 / self.quick()?;
-        let wanted = CALM_TURNS.max((CALM.secs_f32() / one_turn) as u32);
-        let mut turns = known.min(wanted).min((MARKS as u32 - 1) / self.pulses);
-        while turns > 0 {
-            if let Some(from) = self.back(turns * self.pulses) {
-                return self.slope(from, newest);
-            }
-            turns -= 1;
-        }
-        self.quick()
+        // A float-to-integer cast saturates.
+        let wanted = CALM_TURNS.max((CALM.secs_f32() * turn) as u32);
+        let most = known.min(wanted).min((MARKS as u32 - 1) / self.pulses);
+        (1..=most)
+            .rev()
+            .find_map(|turns| self.span(turns * self.pulses, 0))
+            .map_or(Some(turn), |span| Some(span.speed()))
     }
 
     /// Whether one speed has explained the pulses for this long and for [`CALM_TURNS`] turns.
     pub(super) fn steady_for(&self, time: Duration) -> bool {
-        let Some(newest) = self.marks.back() else {
-            return false;
-        };
-        let Some(turn) = self.quick().map(|n| 1.0 / n) else {
+        let Some((newest, turn)) = self.marks.back().zip(self.turn()) else {
             return false;
         };
         let turns = newest.index.saturating_sub(self.window) / self.pulses;
-        turns >= CALM_TURNS && turns as f32 * turn >= time.secs_f32()
+        turns >= CALM_TURNS && turns as f32 / turn.speed() >= time.secs_f32()
     }
 
     /// More than a quarter of the last 32 magnets gave no pulse.
@@ -226,19 +227,30 @@ impl Track {
         self.missed.count_ones() > 8
     }
 
-    fn oldest_within(&self, newest: Mark, span: u32) -> Option<Mark> {
-        self.marks
-            .iter()
-            .find(|m| m.index + span >= newest.index && m.index < newest.index)
-            .copied()
+    /// The longest row of magnets without a pulse among the last 32.
+    pub(super) fn longest_missing(&self) -> u32 {
+        let mut rest = self.missed;
+        let mut longest = 0;
+        while rest != 0 {
+            rest &= rest << 1;
+            longest += 1;
+        }
+        longest
     }
 
-    /// Spacing of the last two marks in seconds, a single magnet's worth.
-    fn spacing(&self) -> Option<f32> {
-        let newest = *self.marks.back()?;
-        let before = *self.marks.get(self.marks.len().checked_sub(2)?)?;
-        let steps = newest.index.checked_sub(before.index)?.max(1);
-        Some(newest.at.since(before.at).secs_f32() / steps as f32)
+    /// When the next pulse is expected after the newest one, s.
+    pub(super) fn expected(&self) -> Option<f32> {
+        let newest = self.marks.back()?;
+        Some(self.placement.angle(newest.index, newest.index + 1) / self.last_interval()?.speed())
+    }
+
+    /// Whether a pulse at this time keeps the rhythm of those before.
+    pub(super) fn goes_on(&self, at: Instant) -> bool {
+        let steps = self
+            .last()
+            .zip(self.expected())
+            .map(|(last, expected)| at.since(last).secs_f32() / expected);
+        self.marks.len() > 2 && steps.is_some_and(|steps| (EARLY..1.0 / EARLY).contains(&steps))
     }
 
     /// Takes the next pulse; O(1).
@@ -246,41 +258,41 @@ impl Track {
     /// An early pulse with an implausible width never makes the spindle faster: a magnet parked at its switching point
     /// shakes.
     pub(super) fn push(&mut self, at: Instant, plausible: bool, rejected: &mut Rejected) {
-        let (Some(newest), Some(spacing)) = (self.marks.back().copied(), self.spacing()) else {
+        let (Some(newest), Some(expected)) = (self.last(), self.expected()) else {
             return self.accept(at, 1, rejected);
         };
-        let interval = at.since(newest.at).secs_f32();
-        let steps = interval / spacing;
-        let late = core::mem::take(&mut self.late);
+        let interval = at.since(newest).secs_f32();
+        let steps = interval / expected;
+        let late = self.late.take();
         match self.suspect.take() {
             None if steps < EARLY && !plausible => rejected.extra += 1,
             None if steps < EARLY => match late {
                 // The rhythm from before the long gap goes on: the gap was missing pulses, not a slower spindle.
-                Some(late) if alike(interval, late.spacing) => {
+                Some(late) if alike(interval, late.expected) => {
                     self.advance_newest(late.missing, rejected);
                     self.accept(at, 1, rejected);
                 }
                 _ => self.suspect = Some(at),
             },
-            None => self.accept_late(at, steps, interval, rejected),
+            None => self.accept_late(at, steps, expected, rejected),
             Some(suspect) => {
                 let halves_alike = alike(
-                    suspect.since(newest.at).secs_f32(),
+                    suspect.since(newest).secs_f32(),
                     at.since(suspect).secs_f32(),
                 );
-                if halves_alike && (steps < EARLY || self.extra_in_a_row > 0) {
+                if halves_alike && plausible && (steps < EARLY || self.extra_in_a_row > 0) {
                     // Two early intervals that agree, within one spacing or time and again: the spindle is faster.
                     self.extra_in_a_row = 0;
                     self.accept(suspect, 1, rejected);
                     self.accept(at, 1, rejected);
+                    return;
+                }
+                rejected.extra += 1;
+                if steps < EARLY {
+                    self.suspect = Some(at);
                 } else {
-                    rejected.extra += 1;
-                    if steps < EARLY {
-                        self.suspect = Some(at);
-                    } else {
-                        self.extra_in_a_row = u8::from(halves_alike);
-                        self.accept_late(at, steps, interval, rejected);
-                    }
+                    self.extra_in_a_row = u8::from(halves_alike);
+                    self.accept_late(at, steps, expected, rejected);
                 }
             }
         }
@@ -288,27 +300,22 @@ impl Track {
 
     /// Takes a pulse that is not early. Where not even the hardest braking explains the gap, pulses are missing;
     /// where braking might, the next pulse tells.
-    fn accept_late(&mut self, at: Instant, steps: f32, interval: f32, rejected: &mut Rejected) {
+    fn accept_late(&mut self, at: Instant, steps: f32, expected: f32, rejected: &mut Rejected) {
         let whole = libm::roundf(steps);
-        let missing = if steps > LATE && (steps - whole).abs() < MISSING_WITHIN {
-            whole as u32 - 1
-        } else {
-            0
-        };
-        if missing == 0 {
+        if steps < LATE || (steps - whole).abs() > MISSING_WITHIN {
             return self.accept(at, 1, rejected);
         }
-        let speed = 1.0 / (interval / steps * self.pulses as f32);
+        let missing = whole as u32 - 1;
+        let interval = expected * steps;
+        // Braking may have begun with the interval before.
+        let speed = 1.0 / (expected * self.pulses as f32) - self.brake * expected / 2.0;
         let braked = (self.brake * interval).min(speed);
-        let turned = interval * (speed - braked / 2.0);
-        if turned * self.pulses as f32 > 1.0 + MISSING_WITHIN {
+        let least = interval * (speed - braked / 2.0) * self.pulses as f32;
+        if least > 1.0 + MISSING_WITHIN {
             self.accept(at, 1 + missing, rejected);
         } else {
-            self.late = Some(Late {
-                spacing: interval / steps,
-                missing,
-            });
             self.accept(at, 1, rejected);
+            self.late = Some(Late { expected, missing });
         }
     }
 
@@ -322,34 +329,36 @@ impl Track {
 
     fn miss(&mut self, missing: u32, rejected: &mut Rejected) {
         rejected.missing = rejected.missing.saturating_add(missing);
-        self.missed = self.missed.checked_shl(missing).unwrap_or(0)
-            | 1_u32.checked_shl(missing).map_or(u32::MAX, |b| b - 1);
+        let ones = 1_u32.checked_shl(missing).map_or(u32::MAX, |bit| bit - 1);
+        self.missed = self.missed.checked_shl(missing).unwrap_or(0) | ones;
     }
 
     /// Takes a pulse as the `steps`-th magnet after the newest one.
     fn accept(&mut self, at: Instant, steps: u32, rejected: &mut Rejected) {
         let before = self.calm();
-        let newest = self.marks.back().map(|m| m.at);
         self.miss(steps - 1, rejected);
         self.missed <<= 1;
         let index = self.marks.back().map_or(0, |m| m.index + steps);
         self.remember(Mark { at, index });
+        let turn = self.span(self.pulses, 0);
+        let change = before
+            .zip(turn)
+            .map_or(0.0, |(before, turn)| (turn.speed() / before - 1.0).abs());
+        if change > STEADY_SHARE {
+            // A turn that the window's speed does not explain begins a new window.
+            self.window = index.saturating_sub(self.pulses);
+        }
+        let turns = turn.zip(self.span(2 * self.pulses, self.pulses));
+        match (turns, self.last_interval()) {
+            (Some((turn, before)), Some(interval))
+                if (turn.time / before.time - 1.0).abs() < LEARN_SHARE && steps == 1 =>
+            {
+                self.placement.learn(index, interval.time / turn.time);
+            }
+            _ => self.placement.interrupt(),
+        }
         if index >= RENUMBER {
             self.renumber();
-        }
-        // A turn that the window's speed does not explain begins a new window.
-        if let (Some(before), Some(turn)) = (before, self.quick())
-            && (turn / before - 1.0).abs() > STEADY_SHARE
-        {
-            self.window = self
-                .marks
-                .back()
-                .map_or(0, |m| m.index.saturating_sub(self.pulses));
-            self.gap_so_far = (0.0, 0);
-        } else if let (1, Some(newest)) = (steps, newest) {
-            self.learn_gap(at.since(newest).secs_f32());
-        } else {
-            self.gap_so_far = (0.0, 0);
         }
     }
 

@@ -1,0 +1,459 @@
+//! The tacho against captures whose true speed is known at every instant: steady speeds, faults, stops and starts.
+//!
+//! The rules are those of `rimrate_core::tacho`; the captures come from the simulator's analytic speed profiles.
+
+use proptest::prelude::*;
+use rimrate_core::machine;
+use rimrate_core::tacho::{Config, Reading, Signal, Tacho};
+use rimrate_core::time::{Duration, Edge, EdgeKind, Instant};
+use rimrate_core::units::Rpm;
+use rimrate_sim::lathe::{Ripple, Wave};
+use rimrate_sim::sensor::profile::{Piece, Profile};
+use rimrate_sim::sensor::{Fault, Sensor, SensorSpec};
+
+const BRAKE: f64 = 3000.0;
+
+/// A spindle, its sensor, and what happens to both.
+struct Capture {
+    sensor: SensorSpec,
+    seed: u64,
+    start: f64,
+    ripple: f64,
+    pieces: Vec<(Piece, Vec<(Fault, bool)>)>,
+}
+
+impl Capture {
+    fn new(pulses: u32) -> Self {
+        let sensor = SensorSpec { jitter_ns: 1000.0, ..SensorSpec::ideal(pulses) };
+        Capture { sensor, seed: 1, start: 0.3, ripple: 0.0, pieces: Vec::new() }
+    }
+    fn placed(mut self, degrees: &[f64]) -> Self {
+        self.sensor.placement = degrees.to_vec();
+        self
+    }
+    fn seeded(mut self, seed: u64, start: f64) -> Self {
+        self.seed = seed;
+        self.start = start;
+        self
+    }
+    fn rippled(mut self, share: f64) -> Self {
+        self.ripple = share;
+        self
+    }
+    fn then(self, piece: Piece) -> Self {
+        self.with(piece, &[])
+    }
+    /// A piece at whose start faults begin or end.
+    fn with(mut self, piece: Piece, faults: &[(Fault, bool)]) -> Self {
+        self.pieces.push((piece, faults.to_vec()));
+        self
+    }
+
+    fn edges(&self) -> (Vec<Edge>, Instant) {
+        let mut sensor = Sensor::new(self.sensor.clone(), self.seed);
+        let mut profile = Profile::new(self.start);
+        profile.ripple = Ripple {
+            turn: Wave { share: self.ripple, per_turn: 1.0, phase: 0.4 },
+            belt: Wave { share: self.ripple, per_turn: 0.37, phase: 1.1 },
+        };
+        let mut edges = Vec::new();
+        for (piece, faults) in &self.pieces {
+            for &(fault, on) in faults {
+                sensor.set(fault, on);
+            }
+            profile.run(piece, &mut sensor, &mut |edge| edges.push(edge));
+        }
+        (edges, profile.now)
+    }
+
+    /// True speed without ripple, rpm.
+    fn truth(&self, at: f64) -> f64 {
+        let mut start = 0.0;
+        for (piece, _) in &self.pieces {
+            if at <= start + piece.secs {
+                let share = if piece.secs > 0.0 { (at - start) / piece.secs } else { 1.0 };
+                return piece.from_rpm + (piece.to_rpm - piece.from_rpm) * share;
+            }
+            start += piece.secs;
+        }
+        0.0
+    }
+
+    fn config(&self) -> Config {
+        Config {
+            pulses: machine::pulses(self.sensor.magnets as u16).unwrap(),
+            brake_rpm_per_s: BRAKE as f32,
+            slowest: Rpm::new(10.0).unwrap(),
+        }
+    }
+
+    /// A row every 10 ms: time in s, reading, silence since the last fall of the line in s.
+    fn rows(&self) -> Vec<(f64, Reading, f64)> {
+        let (edges, end) = self.edges();
+        let mut tacho = Tacho::new(self.config());
+        let mut edges = edges.into_iter().peekable();
+        let mut rows = Vec::new();
+        let mut last_fall = None;
+        let mut at = Instant::ZERO;
+        while at <= end {
+            while let Some(edge) = edges.next_if(|e| e.at <= at) {
+                if edge.kind == EdgeKind::Fall {
+                    last_fall = Some(edge.at);
+                }
+                tacho.push(edge);
+            }
+            let silence = last_fall.map_or(f64::INFINITY, |fall: Instant| at.since(fall).nanos() as f64 / 1e9);
+            rows.push((at.nanos() as f64 / 1e9, tacho.reading(at, |_| true), silence));
+            at += Duration::from_millis(10);
+        }
+        rows
+    }
+}
+
+fn rpm(reading: &Reading) -> f64 {
+    reading.speed.map_or(f64::NAN, |n| f64::from(n.get()))
+}
+
+/// Largest relative error of the rows after `from`, all of which must be turning.
+fn worst_after(capture: &Capture, from: f64) -> f64 {
+    let mut worst = 0.0_f64;
+    for (at, reading, _) in capture.rows().into_iter().filter(|(at, ..)| *at >= from) {
+        assert_eq!(reading.signal, Signal::Turning, "at {at} s: {reading:?}");
+        let truth = capture.truth(at);
+        worst = worst.max((rpm(&reading) / truth - 1.0).abs());
+    }
+    worst
+}
+
+const PLACED_2: &[f64] = &[1.0, -1.0];
+const PLACED_6: &[f64] = &[0.0, 3.0, -2.0, 1.5, -3.0, 2.0];
+
+#[test]
+fn a_steady_speed_reads_within_a_thousandth() {
+    for (pulses, placement) in [(1, &[][..]), (2, PLACED_2), (4, &[0.5, -0.5]), (6, PLACED_6), (60, &[])] {
+        for speed in [20.0, 45.0, 112.0, 333.0, 800.0, 1777.0, 3000.0, 6000.0] {
+            let settling = f64::max(1.0, 5.0 * 60.0 / speed);
+            let capture =
+                Capture::new(pulses).placed(placement).then(Piece::steady(speed, settling + 3.0 * 60.0 / speed + 2.0));
+            let worst = worst_after(&capture, settling);
+            assert!(worst < 1e-3, "{pulses} pulses, {speed} rpm: {worst:.2e}");
+        }
+    }
+}
+
+#[test]
+fn ten_rpm_reads_with_four_pulses() {
+    let capture = Capture::new(4).placed(&[1.0, -1.0, 0.0, 0.5]).then(Piece::steady(10.0, 60.0));
+    let worst = worst_after(&capture, 20.0);
+    assert!(worst < 1e-3, "{worst:.2e}");
+}
+
+#[test]
+fn ripple_leaves_the_reading_near_its_size() {
+    for pulses in [1, 2, 6, 60] {
+        let capture = Capture::new(pulses).rippled(0.003).then(Piece::steady(640.0, 20.0));
+        let worst = worst_after(&capture, 1.0);
+        assert!(worst < 0.005, "{pulses} pulses: {worst:.2e}");
+    }
+}
+
+#[test]
+fn a_reading_never_exceeds_what_silence_allows() {
+    for (pulses, placement) in [(1, &[][..]), (2, PLACED_2), (6, PLACED_6)] {
+        for seed in 0..20_u64 {
+            let speed = 60.0 + 97.0 * seed as f64;
+            let capture = Capture::new(pulses)
+                .placed(placement)
+                .seeded(seed, seed as f64 * 0.07)
+                .then(Piece::ramp(0.0, speed, 700.0))
+                .then(Piece::steady(speed, 1.0))
+                .then(Piece::ramp(speed, 0.0, 300.0))
+                .then(Piece::steady(0.0, 8.0));
+            for (at, reading, silence) in capture.rows() {
+                let bound = 60.0 / f64::from(pulses) / silence;
+                // The largest gap between magnets may be wider than the mean by their placement errors.
+                let gap = if pulses == 1 { 1.0 } else { 1.12 };
+                if let Some(speed) = reading.speed {
+                    assert!(f64::from(speed.get()) <= bound * gap * 1.006, "{pulses} pulses at {at} s: {reading:?}, bound {bound}");
+                }
+            }
+        }
+    }
+}
+
+/// From the formula: above this speed a stop takes longer than the gap between magnets, rpm.
+fn can_be_known_above(pulses: u32) -> f64 {
+    60.0 * (2.0 * BRAKE / 60.0 / f64::from(pulses)).sqrt()
+}
+
+#[test]
+fn a_dead_sensor_is_lost_in_time_and_stays_lost() {
+    for (pulses, placement) in [(1, &[][..]), (2, PLACED_2), (6, PLACED_6), (60, &[])] {
+        for factor in [1.2, 1.5, 2.0, 4.0, 8.0] {
+            let speed = can_be_known_above(pulses) * factor;
+            if speed > 6000.0 {
+                continue;
+            }
+            let dies = f64::max(3.0, 6.0 * 60.0 / speed);
+            let capture = Capture::new(pulses)
+                .placed(placement)
+                .then(Piece::steady(speed, dies))
+                .with(Piece::steady(speed, 40.0), &[(Fault::StuckHigh, true)]);
+            let four = 4.0 * 60.0 / speed / f64::from(pulses);
+            for (at, reading, silence) in capture.rows() {
+                let context = format!("{pulses} pulses, {speed:.0} rpm, at {at} s, silent for {silence:.3} s: {reading:?}");
+                if silence > f64::max(0.5, four * 1.02) + 0.011 && at > dies {
+                    assert_eq!(reading.signal, Signal::Lost, "{context}");
+                    assert_eq!(reading.speed, None);
+                } else if at > 1.0 && at < dies {
+                    assert_eq!(reading.signal, Signal::Turning, "{context}");
+                } else if at > 1.0 {
+                    assert_ne!(reading.signal, Signal::Still, "{context}");
+                }
+            }
+        }
+    }
+}
+
+#[test]
+fn a_stop_at_the_braking_limit_is_never_lost() {
+    for (pulses, placement) in [(1, &[][..]), (2, PLACED_2), (3, &[0.0, 2.0, -1.0]), (6, PLACED_6), (60, &[])] {
+        for seed in 0..60_u64 {
+            let speed = 30.0 * 1.093_f64.powi(seed as i32);
+            for start in [0.0, 0.31, 0.77] {
+                let capture = Capture::new(pulses)
+                    .placed(placement)
+                    .rippled(0.002)
+                    .seeded(seed, start)
+                    .then(Piece::ramp(0.0, speed, 900.0))
+                    .then(Piece::steady(speed, 1.0 + 0.013 * seed as f64))
+                    .then(Piece::ramp(speed, 0.0, BRAKE))
+                    .then(Piece::steady(0.0, 8.0));
+                for (at, reading, _) in capture.rows() {
+                    assert_ne!(reading.signal, Signal::Lost, "{pulses} pulses from {speed:.1} rpm, start {start}, at {at} s");
+                }
+                let last = capture.rows().last().unwrap().1;
+                assert_eq!(last.signal, Signal::Still, "{pulses} pulses from {speed:.1} rpm");
+            }
+        }
+    }
+}
+
+#[test]
+fn a_jog_that_is_braked_at_once_is_never_lost() {
+    for pulses in [1, 2, 6, 60] {
+        for seed in 0..60_u64 {
+            let speed = 20.0 * 1.09_f64.powi(seed as i32);
+            let capture = Capture::new(pulses)
+                .seeded(seed, 0.137 * seed as f64)
+                .then(Piece::ramp(0.0, speed, 1500.0 + 40.0 * seed as f64))
+                .then(Piece::ramp(speed, 0.0, BRAKE))
+                .then(Piece::steady(0.0, 7.0));
+            for (at, reading, _) in capture.rows() {
+                assert_ne!(reading.signal, Signal::Lost, "{pulses} pulses to {speed:.1} rpm, at {at} s");
+            }
+        }
+    }
+}
+
+#[test]
+fn a_stopped_spindle_is_still_after_one_period_of_the_slowest_speed() {
+    for pulses in [1, 2, 4, 6] {
+        for speed in [30.0, 150.0, 400.0] {
+            let capture = Capture::new(pulses)
+                .then(Piece::steady(speed, 12.0))
+                .then(Piece::ramp(speed, 0.0, 2000.0))
+                .then(Piece::steady(0.0, 8.0));
+            for (at, reading, silence) in capture.rows() {
+                if silence > 6.0 / f64::from(pulses) * 1.005 + 0.011 && at > 12.0 {
+                    assert_eq!(reading.signal, Signal::Still, "{pulses} pulses from {speed} rpm at {at} s");
+                    assert_eq!(rpm(&reading), 0.0);
+                }
+            }
+        }
+    }
+}
+
+#[test]
+fn signal_comes_back_after_a_loss() {
+    let capture = Capture::new(2)
+        .placed(PLACED_2)
+        .then(Piece::steady(800.0, 3.0))
+        .with(Piece::steady(800.0, 5.0), &[(Fault::StuckHigh, true)])
+        .with(Piece::steady(800.0, 3.0), &[(Fault::StuckHigh, false)]);
+    let rows = capture.rows();
+    let at = |t: f64| rows.iter().find(|(at, ..)| *at >= t).unwrap().1;
+    assert_eq!(at(7.9).signal, Signal::Lost);
+    // Three pulses make two intervals that agree with the last speed: 0.12 s at the latest.
+    assert_eq!(at(8.2).signal, Signal::Turning);
+    assert!((rpm(&at(9.0)) / 800.0 - 1.0).abs() < 1e-3);
+}
+
+#[test]
+fn a_parked_magnet_that_shakes_is_still() {
+    for fault in [Fault::ShakeRegular, Fault::ShakeRandom] {
+        for (turned_before, low) in [(true, 0.5), (true, 0.25), (true, 0.75), (false, 0.5), (false, 0.45)] {
+            for pulses in [1, 2, 6] {
+                let mut capture = Capture::new(pulses).seeded(u64::from(pulses), 0.11);
+                // Six magnets are low for a fifth of the time while they turn: shaking must differ from that.
+                capture.sensor.shake_low = if pulses == 6 { f64::max(low, 0.45) } else { low };
+                let before = if turned_before { 20.0 } else { 0.0 };
+                if turned_before {
+                    capture = capture
+                        .then(Piece::steady(300.0, 5.0))
+                        .then(Piece::ramp(300.0, 0.0, 500.0))
+                        .then(Piece::steady(0.0, before - 5.6));
+                }
+                let capture = capture.with(Piece::steady(0.0, 600.0), &[(fault, true)]);
+                let wrong: Vec<f64> = capture
+                    .rows()
+                    .into_iter()
+                    .filter(|(at, reading, _)| *at > before && reading.signal != Signal::Still)
+                    .map(|(at, ..)| at)
+                    .collect();
+                assert!(wrong.is_empty(), "{fault:?}, low {low}, {pulses} pulses, turned before {turned_before}: {} rows, first {:?}", wrong.len(), wrong.first());
+            }
+        }
+    }
+}
+
+#[test]
+fn shaking_that_begins_as_the_spindle_stops_ends_in_still() {
+    for fault in [Fault::ShakeRegular, Fault::ShakeRandom] {
+        for pulses in [1, 2, 6] {
+            for speed in [100.0, 300.0, 900.0] {
+                let capture = Capture::new(pulses)
+                    .then(Piece::steady(speed, 5.0))
+                    .then(Piece::ramp(speed, 0.0, 1000.0))
+                    .with(Piece::steady(0.0, 30.0), &[(fault, true)]);
+                for (at, reading, _) in capture.rows().into_iter().filter(|(at, ..)| *at > 5.0 + speed / 1000.0 + 7.0) {
+                    assert_eq!(reading.signal, Signal::Still, "{fault:?}, {pulses} pulses from {speed} rpm at {at} s");
+                }
+            }
+        }
+    }
+}
+
+#[test]
+fn chatter_noise_and_missed_pulses_do_not_move_the_reading() {
+    let cases: [(&str, Fault, fn(&mut SensorSpec)); 3] = [
+        ("chatter", Fault::Chatter, |_| {}),
+        ("60 spikes a second", Fault::Spikes, |s| s.spike_rate = 60.0),
+        ("3 % missing", Fault::Dropouts, |s| s.dropout = 0.03),
+    ];
+    for (name, fault, prepare) in cases {
+        for pulses in [1, 2, 6] {
+            for speed in [180.0, 800.0, 2400.0] {
+                let mut capture = Capture::new(pulses);
+                prepare(&mut capture.sensor);
+                let mut wrong = 0;
+                let capture = capture.then(Piece::steady(speed, 2.0)).with(Piece::steady(speed, 60.0), &[(fault, true)]);
+                let rows = capture.rows();
+                for (_, reading, _) in rows.iter().filter(|(at, ..)| *at > 2.0) {
+                    wrong += u32::from(reading.signal != Signal::Turning || (rpm(reading) / speed - 1.0).abs() > 2e-3);
+                }
+                let share = f64::from(wrong) / rows.len() as f64;
+                assert!(share < 0.001, "{name}, {pulses} pulses, {speed} rpm: {:.2} % of rows wrong", 100.0 * share);
+            }
+        }
+    }
+}
+
+#[test]
+fn a_start_under_noise_is_read() {
+    for pulses in [1, 2, 6] {
+        let mut capture = Capture::new(pulses);
+        capture.sensor.spike_rate = 60.0;
+        let capture = capture
+            .with(Piece::steady(0.0, 2.0), &[(Fault::Spikes, true)])
+            .then(Piece::ramp(0.0, 800.0, 800.0))
+            .then(Piece::steady(800.0, 5.0));
+        let worst = worst_after(&capture, 6.0);
+        assert!(worst < 2e-3, "{pulses} pulses: {worst:.2e}");
+    }
+}
+
+#[test]
+fn one_of_two_magnets_gone_is_doubtful_and_the_higher_speed_is_assumed() {
+    let capture = Capture::new(2)
+        .then(Piece::steady(800.0, 3.0))
+        .with(Piece::steady(800.0, 20.0), &[(Fault::MagnetLost(0), true)]);
+    for (at, reading, _) in capture.rows() {
+        if at > 6.0 {
+            assert_eq!(reading.signal, Signal::Doubtful, "at {at} s");
+            assert!(reading.quick.is_some_and(|n| n.get() > 600.0), "at {at} s: {reading:?}");
+        }
+        assert_ne!(reading.signal, Signal::Lost);
+    }
+}
+
+#[test]
+fn a_steady_speed_that_no_step_explains_is_doubtful() {
+    let capture = Capture::new(2).then(Piece::steady(400.0, 10.0));
+    let (edges, end) = capture.edges();
+    let mut tacho = Tacho::new(capture.config());
+    edges.into_iter().for_each(|edge| tacho.push(edge));
+    let only_800 = |n: Rpm| (700.0..850.0).contains(&n.get());
+    let reading = tacho.reading(end, only_800);
+    assert_eq!(reading.signal, Signal::Doubtful);
+    assert!((reading.quick.unwrap().get() - 800.0).abs() < 1.0, "the speed with a magnet gone: {reading:?}");
+}
+
+#[test]
+fn a_runaway_is_shown_at_its_real_speed() {
+    let capture = Capture::new(1).then(Piece::steady(500.0, 2.0)).then(Piece::ramp(500.0, 50_000.0, 5_000.0)).then(Piece::steady(50_000.0, 1.0));
+    let last = capture.rows().last().unwrap().1;
+    assert!((rpm(&last) / 50_000.0 - 1.0).abs() < 1e-3, "{last:?}");
+}
+
+#[test]
+fn the_input_limit_of_20000_pulses_a_second_is_read() {
+    let capture = Capture::new(60).then(Piece::ramp(0.0, 19_900.0, 10_000.0)).then(Piece::steady(19_900.0, 0.5));
+    let last = capture.rows().last().unwrap().1;
+    assert!((rpm(&last) / 19_900.0 - 1.0).abs() < 1e-3, "{last:?}");
+}
+
+#[test]
+fn run_up_and_coast_down_stay_within_the_true_extremes() {
+    for pulses in [1, 2, 6, 60] {
+        let capture = Capture::new(pulses)
+            .then(Piece::ramp(0.0, 1200.0, 600.0))
+            .then(Piece::steady(1200.0, 2.0))
+            .then(Piece::ramp(1200.0, 300.0, 300.0))
+            .then(Piece::steady(300.0, 2.0));
+        for (at, reading, _) in capture.rows().into_iter().filter(|(_, r, _)| r.signal == Signal::Turning) {
+            let n = rpm(&reading);
+            assert!(n <= 1212.0 && (at < 3.0 || n >= 297.0), "{pulses} pulses at {at} s: {n}");
+        }
+    }
+}
+
+proptest! {
+    #![proptest_config(ProptestConfig { cases: 400, failure_persistence: None, ..ProptestConfig::default() })]
+
+    /// Any edges at all, in any order and state: no panic, no NaN, nothing above what silence allows.
+    #[test]
+    fn no_edges_break_it(
+        steps in prop::collection::vec((0_u64..3_000_000_000, any::<bool>(), 0_u8..20), 0..400),
+        pulses in 1_u16..=240,
+        brake in 10.0_f32..100_000.0,
+        slowest in 1.0_f32..1000.0,
+    ) {
+        let config = Config {
+            pulses: machine::pulses(pulses).unwrap(),
+            brake_rpm_per_s: brake,
+            slowest: Rpm::new(slowest).unwrap(),
+        };
+        let mut tacho = Tacho::new(config);
+        let mut now = 0_u64;
+        for (gap, fall, shrink) in steps {
+            now += gap >> shrink;
+            let at = Instant::from_nanos(now);
+            tacho.push(if fall { Edge::fall(at) } else { Edge::rise(at) });
+            let reading = tacho.reading(at + Duration::from_nanos(gap / 2), |n| n.get() < 1e4);
+            for n in [reading.speed, reading.quick].into_iter().flatten() {
+                prop_assert!(n.get().is_finite() && n.get() >= 0.0);
+            }
+        }
+    }
+}
