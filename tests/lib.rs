@@ -135,6 +135,16 @@ impl Clocked {
         self.polls.push((self.now, poll));
     }
 
+    /// Switches the box off and on again, with the setup that it handed out last.
+    pub fn power_cycle(&mut self, machine: Machine, stored: Option<Setup>) {
+        let kept = self
+            .saved()
+            .last()
+            .map_or(stored, |(_, setup)| Some(*setup));
+        self.instrument = Instrument::new(self.now, machine, kept);
+        self.poll();
+    }
+
     /// Something happens now.
     pub fn event(&mut self, event: Event<'_>) {
         self.instrument.handle(self.now, event);
@@ -151,8 +161,7 @@ impl Clocked {
         let until = self.now + Duration::from_nanos((seconds * 1e9).round() as u64);
         for edge in edges {
             self.pass(edge.at);
-            self.instrument
-                .handle(self.now, Event::Edges(std::slice::from_ref(edge)));
+            self.event(Event::Edges(std::slice::from_ref(edge)));
         }
         self.pass(until);
     }
