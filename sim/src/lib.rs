@@ -26,3 +26,4 @@ pub mod replay;
 pub mod rig;
 pub mod scenario;
 pub mod sensor;
+pub mod terminal;

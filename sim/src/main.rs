@@ -14,6 +14,7 @@ use rimrate_sim::fail::Fail;
 use rimrate_sim::play::{self, Keep};
 use rimrate_sim::replay;
 use rimrate_sim::scenario::Scenario;
+use rimrate_sim::terminal;
 
 const DEMO: &str = include_str!("../scenarios/shift.toml");
 
@@ -123,6 +124,9 @@ fn main() -> ExitCode {
 
 fn shift() -> Result<(), Fail> {
     let scenario = Scenario::parse(DEMO, "the built-in shift", None)?;
+    if terminal::somebody_watches() {
+        return terminal::run(&scenario);
+    }
     finish(&scenario, &Keep::default())
 }
 
