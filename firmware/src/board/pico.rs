@@ -1,0 +1,79 @@
+//! Raspberry Pi Pico (RP2040).
+
+use embassy_rp::pac;
+
+use super::parts;
+
+/// What the log calls it.
+pub(crate) const NAME: &str = "Pico (RP2040)";
+/// The system clock that `embassy_rp` sets: PLL_SYS at 125 MHz from the 12 MHz crystal (RP2040 data sheet, 2.18.2).
+pub(crate) const SYS_HZ: u32 = 125_000_000;
+
+/// The display's I2C.
+pub(crate) type DisplayI2c = embassy_rp::peripherals::I2C0;
+/// The display's data pin.
+pub(crate) type DisplaySda = embassy_rp::peripherals::PIN_4;
+/// The display's clock pin.
+pub(crate) type DisplayScl = embassy_rp::peripherals::PIN_5;
+/// The PIO that times the sensor.
+pub(crate) type CapturePio = embassy_rp::peripherals::PIO0;
+
+embassy_rp::bind_interrupts!(pub(crate) struct Irqs {
+    I2C0_IRQ => embassy_rp::i2c::InterruptHandler<DisplayI2c>;
+    PIO0_IRQ_0 => embassy_rp::pio::InterruptHandler<CapturePio>;
+});
+
+parts! {
+    /// Hall sensor, open collector: low while a magnet is near.
+    sensor: PIN_2,
+    /// Display, I2C data.
+    display_sda: PIN_4,
+    /// Display, I2C clock.
+    display_scl: PIN_5,
+    /// Left knob, first contact; closes to ground, as all of a knob's.
+    left_a: PIN_6,
+    /// Left knob, second contact.
+    left_b: PIN_7,
+    /// Left knob, push switch.
+    left_push: PIN_8,
+    /// Right knob, first contact.
+    right_a: PIN_10,
+    /// Right knob, second contact.
+    right_b: PIN_11,
+    /// Right knob, push switch.
+    right_push: PIN_12,
+    /// Upper lamp: over.
+    over: PIN_16,
+    /// Middle lamp: right.
+    right: PIN_17,
+    /// Lower lamp: under.
+    under: PIN_18,
+    /// Relay driver, closed while high; held low by a resistor during reset.
+    relay: PIN_19,
+    /// Buzzer, piezo, driven by PWM.
+    buzzer: PIN_20,
+    /// The board's own lamp: a heartbeat, hurried while something is wrong with the box.
+    status: PIN_25,
+    /// Times the sensor.
+    capture: PIO0,
+    /// Carries edges into the ring.
+    ring_dma: DMA_CH0,
+    /// Starts it again when its count has run out.
+    rearm_dma: DMA_CH1,
+    /// Drives the display.
+    display: I2C0,
+    /// Sounds the buzzer: GPIO20 is output A of slice 2 (RP2040 data sheet, 4.5.2).
+    tone: PWM_SLICE2,
+    /// Restarts what hangs.
+    watchdog: WATCHDOG,
+}
+
+/// Transfers that a DMA channel has left (RP2040 data sheet, 2.5.7).
+pub(crate) fn count_left(channel: pac::dma::Channel) -> u32 {
+    channel.trans_count().read()
+}
+
+/// Sets the transfers of a DMA channel.
+pub(crate) fn set_count(channel: pac::dma::Channel, count: u32) {
+    channel.trans_count().write_value(count);
+}

@@ -1,0 +1,272 @@
+//! The owner of the instrument: events in, effects out.
+
+use embassy_futures::select::{Either, select};
+use embassy_futures::yield_now;
+use embassy_time::{Duration, Instant as Now, Timer};
+use embedded_graphics::pixelcolor::BinaryColor;
+use embedded_graphics::prelude::DrawTarget;
+use rimrate_core::beacon::Outputs;
+use rimrate_core::instrument::{Event, Instrument};
+use rimrate_core::tacho::Rejected;
+use rimrate_core::time::Instant;
+use rimrate_core::verdict::Verdict;
+
+use super::sense::Sense;
+use super::{MESSAGES, Message, knobs, screen};
+use crate::board::{Capture, Signs};
+use crate::fault::{Cause, Task, check_in};
+use crate::{notice, profile};
+
+/// Edges are fetched this often while they come. With a picture being drawn in between an over-speed is shown within 6 ms.
+const FETCH: Duration = Duration::from_millis(2);
+/// And this often when none has come for [`REST`].
+const FETCH_AT_REST: Duration = Duration::from_millis(10);
+const REST: Duration = Duration::from_secs(1);
+/// The reading is logged this often while the spindle may turn, the counts when they have changed.
+const LOG: Duration = Duration::from_millis(250);
+const LOG_COUNTS: Duration = Duration::from_secs(1);
+
+/// Time as the instrument means it.
+fn now() -> Instant {
+    Instant::from_nanos(Now::now().as_micros() * 1000)
+}
+
+/// Runs for ever.
+#[embassy_executor::task]
+pub(crate) async fn run(capture: Capture, signs: Signs, cause: Cause) -> ! {
+    let mut owner = Owner::new(capture, signs, cause);
+    loop {
+        check_in(Task::Owner);
+        let more = owner.step();
+        if more {
+            yield_now().await;
+        } else if let Either::First(message) =
+            select(MESSAGES.receive(), Timer::at(owner.wake_at())).await
+        {
+            owner.hear(message);
+            while let Ok(message) = MESSAGES.try_receive() {
+                owner.hear(message);
+            }
+        }
+    }
+}
+
+struct Owner {
+    instrument: Instrument,
+    sense: Sense,
+    signs: Signs,
+    /// Shown, and the relay held open, until a knob is pressed.
+    cause: Cause,
+    /// The picture has to be drawn though the instrument has not changed.
+    repaint: bool,
+    display: bool,
+    stuck: bool,
+    next_poll: Now,
+    last_edge: Now,
+    verdict: Verdict,
+    next_log: Now,
+    next_count: Now,
+    counted: Counts,
+}
+
+/// What is worth a line in the log when it changes.
+#[derive(Clone, Copy, PartialEq, Default)]
+struct Counts {
+    edges: u32,
+    lost: u32,
+    rejected: Rejected,
+    illegal: u32,
+    unheard: u32,
+}
+
+impl Owner {
+    fn new(capture: Capture, signs: Signs, cause: Cause) -> Self {
+        let (machine, chosen) = profile::load();
+        defmt::info!(
+            "machine {=str} pulses {=u16}",
+            machine.name(),
+            machine.pulses().get()
+        );
+        let sense = Sense::new(capture, machine.pulses().get());
+        let start = Now::now();
+        let instrument = Instrument::new(now(), machine, chosen);
+        Owner {
+            verdict: instrument.view().verdict,
+            instrument,
+            sense,
+            signs,
+            repaint: !matches!(cause, Cause::Power),
+            cause,
+            display: true,
+            stuck: false,
+            next_poll: start,
+            last_edge: start,
+            next_log: start,
+            next_count: start + LOG_COUNTS,
+            counted: Counts::default(),
+        }
+    }
+
+    /// When to step again, at the latest.
+    fn wake_at(&self) -> Now {
+        let now = Now::now();
+        let fetch = if now - self.last_edge < REST {
+            FETCH
+        } else {
+            FETCH_AT_REST
+        };
+        self.next_poll.min(now + fetch)
+    }
+
+    /// Fetches edges, and where anything is due lets the instrument say what to do. Says whether more edges wait.
+    fn step(&mut self) -> bool {
+        let instrument = &mut self.instrument;
+        let taken = self
+            .sense
+            .take(|edges| instrument.handle(Instant::ZERO, Event::Edges(edges)));
+        let time = Now::now();
+        if taken.lost {
+            defmt::error!("capture: window lost");
+        }
+        if taken.edges > 0 {
+            self.last_edge = time;
+        }
+        if taken.edges > 0 || time >= self.next_poll || self.repaint {
+            self.poll();
+        }
+        self.status(time);
+        self.log(time);
+        taken.more
+    }
+
+    fn hear(&mut self, message: Message) {
+        match message {
+            Message::Turn(knob, detents) => {
+                self.instrument.handle(now(), Event::Turn(knob, detents));
+            }
+            Message::Press(knob) => {
+                if !matches!(self.cause, Cause::Power) {
+                    defmt::info!("restart acknowledged");
+                    self.cause = Cause::Power;
+                    self.repaint = true;
+                }
+                self.instrument.handle(now(), Event::Press(knob));
+            }
+            Message::Release(knob) => self.instrument.handle(now(), Event::Release(knob)),
+            Message::Stuck(knob, stuck) => {
+                defmt::warn!("knob {} stuck {=bool}", knob, stuck);
+                self.stuck = stuck;
+            }
+            Message::Display(answers) => self.display = answers,
+        }
+        // What a knob does shows at once.
+        self.next_poll = Now::now();
+    }
+
+    fn poll(&mut self) {
+        let poll = self.instrument.poll(now());
+        // Rounded up: woken before its time the instrument would only say so again.
+        self.next_poll = Now::from_micros(poll.next.nanos().div_ceil(1000));
+        let mut outputs = poll.outputs;
+        let verdict = self.instrument.view().verdict;
+        if !self.display && is_dark(verdict) {
+            outputs = without_display(outputs, Now::now());
+        }
+        outputs.relay &= matches!(self.cause, Cause::Power);
+        self.signs.show(outputs);
+        if verdict != self.verdict {
+            self.verdict = verdict;
+            defmt::info!("verdict {}", verdict);
+        }
+        if poll.redraw || self.repaint {
+            self.repaint = false;
+            screen::draw(|frame| {
+                let Ok(()) = frame.clear(BinaryColor::Off);
+                if notice::draw(&self.cause, frame).is_none() {
+                    let Ok(()) = self.instrument.draw(frame);
+                }
+            });
+        }
+    }
+
+    /// The board's own lamp: short and seldom while all is well.
+    fn status(&mut self, time: Now) {
+        let well = self.display && !self.stuck && matches!(self.cause, Cause::Power);
+        let tick = time.as_millis() / 125;
+        self.signs.status(if well {
+            tick.is_multiple_of(16)
+        } else {
+            tick.is_multiple_of(2)
+        });
+        if !self.display {
+            // The lamp code has the same beat.
+            self.next_poll = self.next_poll.min(Now::from_millis((tick + 1) * 125));
+        }
+    }
+
+    fn log(&mut self, time: Now) {
+        if time >= self.next_log {
+            self.next_log = time + LOG;
+            let reading = self.instrument.view().reading;
+            if reading.is_running() {
+                defmt::info!(
+                    "reading {} calm {=f32} quick {=f32}",
+                    reading.signal,
+                    reading.speed.map_or(-1.0, |n| n.get()),
+                    reading.quick.map_or(-1.0, |n| n.get())
+                );
+            }
+        }
+        if time >= self.next_count {
+            self.next_count = time + LOG_COUNTS;
+            let (edges, lost, _) = self.sense.counts();
+            let (illegal, unheard) = knobs::counts();
+            let counts = Counts {
+                edges,
+                lost,
+                rejected: self.instrument.rejected(),
+                illegal,
+                unheard,
+            };
+            if counts != self.counted {
+                self.counted = counts;
+                defmt::info!(
+                    "counts edges {=u32} lost {=u32} illegal {=u32} unheard {=u32} rejected {}",
+                    edges,
+                    lost,
+                    illegal,
+                    unheard,
+                    counts.rejected
+                );
+            }
+        }
+    }
+}
+
+/// Whether this verdict leaves the lamps dark, or flashing only to ask for a look at the display.
+fn is_dark(verdict: Verdict) -> bool {
+    match verdict {
+        Verdict::NoPulses
+        | Verdict::RunUp
+        | Verdict::Unconfirmed
+        | Verdict::NeedsCap
+        | Verdict::NoAdvice => true,
+        Verdict::Danger
+        | Verdict::Fast
+        | Verdict::Slow
+        | Verdict::Right
+        | Verdict::Lost
+        | Verdict::Doubtful => false,
+    }
+}
+
+/// The lamp code for a display that does not answer: over and under together, two short flashes every two seconds. Warnings
+/// come first: it shows only where the lamps have nothing of their own to say.
+fn without_display(outputs: Outputs, time: Now) -> Outputs {
+    let on = matches!(time.as_millis() / 125 % 16, 0 | 2);
+    Outputs {
+        over: on,
+        under: on,
+        ..outputs
+    }
+}
