@@ -50,6 +50,7 @@ pub fn turning(n: f32) -> Reading {
         signal: Signal::Turning,
         speed: Some(rpm(n)),
         quick: Some(rpm(n)),
+        ..Reading::NOTHING
     }
 }
 

@@ -126,6 +126,8 @@ impl Judge {
             Signal::Lost => return Verdict::Lost,
             Signal::Doubtful => return Verdict::Doubtful,
             Signal::Still => return Verdict::NoPulses,
+            // The speed is an upper bound only: nothing may be said of it but that it is not above.
+            Signal::Turning if reading.overdue => return Verdict::NoPulses,
             Signal::Turning => {}
         }
         if fast {

@@ -3,23 +3,26 @@
 use std::convert::Infallible;
 use std::io::Write;
 
-use embedded_graphics::mono_font::ascii::{FONT_4X6, FONT_5X8, FONT_7X13_BOLD};
+use embedded_graphics::mono_font::ascii::{FONT_4X6, FONT_5X8, FONT_6X13_BOLD};
 use embedded_graphics::mono_font::{MonoFont, MonoTextStyle};
 use embedded_graphics::pixelcolor::BinaryColor;
 use embedded_graphics::prelude::*;
 use embedded_graphics::text::{Baseline, Text};
 use rimrate_core::screen::{HEIGHT, WIDTH};
 
-/// A picture of the panel. Row by row, one byte a pixel: it is small, and simple wins.
-#[derive(Clone, PartialEq, Eq)]
+/// A picture of the panel: a number a row, its lowest bit the leftmost pixel.
+#[derive(Clone, Copy, PartialEq, Eq)]
 pub struct Frame {
-    lit: Vec<bool>,
+    rows: [u128; HEIGHT as usize],
 }
+
+// One bit for each pixel of a row.
+const _: () = assert!(WIDTH == u128::BITS);
 
 impl Default for Frame {
     fn default() -> Self {
         Frame {
-            lit: vec![false; (WIDTH * HEIGHT) as usize],
+            rows: [0; HEIGHT as usize],
         }
     }
 }
@@ -34,23 +37,22 @@ impl Frame {
     pub fn lit(&self, x: u32, y: u32) -> bool {
         x < WIDTH
             && self
-                .lit
-                .get((y * WIDTH + x) as usize)
-                .copied()
-                .unwrap_or(false)
+                .rows
+                .get(y as usize)
+                .is_some_and(|row| row >> x & 1 == 1)
     }
 
     /// Makes it dark.
     pub fn clear(&mut self) {
-        self.lit.fill(false);
+        self.rows.fill(0);
     }
 
     /// Sets one pixel, if it is on the panel.
     pub fn set(&mut self, x: u32, y: u32, lit: bool) {
         if x < WIDTH
-            && let Some(pixel) = self.lit.get_mut((y * WIDTH + x) as usize)
+            && let Some(row) = self.rows.get_mut(y as usize)
         {
-            *pixel = lit;
+            *row = *row & !(1 << x) | u128::from(lit) << x;
         }
     }
 
@@ -98,7 +100,7 @@ impl Frame {
 
     /// Whether these words stand anywhere on the panel, in one of its fonts, plain or reversed.
     pub fn shows(&self, words: &str) -> bool {
-        [&FONT_5X8, &FONT_4X6, &FONT_7X13_BOLD]
+        [&FONT_5X8, &FONT_4X6, &FONT_6X13_BOLD]
             .into_iter()
             .any(|font| self.shows_in(words, font))
     }
@@ -113,24 +115,34 @@ impl Frame {
         let style = MonoTextStyle::new(font, BinaryColor::On);
         let Ok(_) =
             Text::with_baseline(words, Point::zero(), style, Baseline::Top).draw(&mut pattern);
-        // Blank columns and rows at the pattern's edge belong to the neighbours.
-        let inked = |x: u32, y: u32| pattern.lit(x, y);
-        let (Some(right), Some(top), Some(bottom), Some(left)) = (
-            (0..width).rev().find(|&x| (0..height).any(|y| inked(x, y))),
-            (0..height).find(|&y| (0..width).any(|x| inked(x, y))),
-            (0..height).rev().find(|&y| (0..width).any(|x| inked(x, y))),
-            (0..width).find(|&x| (0..height).any(|y| inked(x, y))),
-        ) else {
+        let ink = pattern.rows.iter().fold(0, |ink, row| ink | row);
+        if ink == 0 {
             return false;
-        };
-        let (w, h) = (right - left + 1, bottom - top + 1);
-        let matches = |dx: u32, dy: u32, reversed: bool| {
-            (0..h).all(|y| {
-                (0..w).all(|x| inked(x + left, y + top) == (self.lit(x + dx, y + dy) != reversed))
+        }
+        // Blank columns and rows at the pattern's edge belong to the neighbours.
+        let left = ink.trailing_zeros();
+        let columns = u128::MAX >> (ink.leading_zeros() + left);
+        let inked = |row: &&u128| **row != 0;
+        let top = pattern.rows.iter().take_while(|row| !inked(row)).count();
+        let bottom = pattern
+            .rows
+            .iter()
+            .rposition(|row| *row != 0)
+            .unwrap_or(top);
+        let pattern: Vec<u128> = pattern.rows[top..=bottom]
+            .iter()
+            .map(|row| row >> left)
+            .collect();
+        self.rows.windows(pattern.len()).any(|rows| {
+            (0..WIDTH - columns.count_ones() + 1).any(|x| {
+                let same = |reversed: u128| {
+                    rows.iter()
+                        .zip(&pattern)
+                        .all(|(row, wanted)| (row >> x ^ reversed) & columns == *wanted)
+                };
+                same(0) || same(u128::MAX)
             })
-        };
-        (0..=HEIGHT - h)
-            .any(|dy| (0..=WIDTH - w).any(|dx| matches(dx, dy, false) || matches(dx, dy, true)))
+        })
     }
 }
 

@@ -257,14 +257,13 @@ fn check<R: Rig>(wanted: &Wanted, bench: &Bench<R>) -> Result<(), String> {
                 &seen,
             )
         }
-        Wanted::Text(words) => {
-            let frame = rig.frame();
-            same(
-                frame.shows(words),
-                &format!("`{words}` on the panel"),
-                &format!("\n{}", frame.to_text()),
-            )
-        }
+        // The picture is put into words only where they are needed.
+        Wanted::Text(words) if rig.frame().shows(words) => Ok(()),
+        Wanted::Text(words) => same(
+            false,
+            &format!("`{words}` on the panel"),
+            &format!("\n{}", rig.frame().to_text()),
+        ),
         Wanted::Lamp(lamp) => {
             let outputs = rig.outputs();
             let (lit, name) = match lamp {
@@ -286,7 +285,7 @@ fn check<R: Rig>(wanted: &Wanted, bench: &Bench<R>) -> Result<(), String> {
     }
 }
 
-/// Prints a run: each change of the verdict, then what it came to.
+/// Prints a run: each stage in a sentence and each change of the verdict in it, then what it came to.
 pub fn report(scenario: &Scenario, summary: &Summary, out: &mut impl Write) -> std::io::Result<()> {
     writeln!(
         out,
@@ -294,12 +293,19 @@ pub fn report(scenario: &Scenario, summary: &Summary, out: &mut impl Write) -> s
         scenario.title,
         scenario.machine.name()
     )?;
+    let mut notes = scenario.notes.iter().peekable();
     for (at, verdict, truth) in &summary.changes {
+        while let Some((_, note)) = notes.next_if(|(t, _)| t <= at) {
+            writeln!(out, "{note}")?;
+        }
         writeln!(
             out,
             "  {at:8.2} s  {:<11}  spindle at {truth:6.1} rpm",
             verdict.id()
         )?;
+    }
+    for (_, note) in notes {
+        writeln!(out, "{note}")?;
     }
     for missed in &summary.missed {
         writeln!(out, "  MISSED {missed}")?;

@@ -33,13 +33,10 @@ impl Readings {
 
     /// Adds a row.
     pub fn row(&mut self, at: Instant, reading: &Reading) -> Result<(), Fail> {
-        let rpm = match (reading.signal, reading.quick) {
+        let rpm = match (reading.signal, reading.speed) {
             (Signal::Still, _) => "0".to_owned(),
+            (Signal::Turning | Signal::Doubtful, Some(speed)) => format!("{:.4}", speed.get()),
             (Signal::Lost, _) | (_, None) => String::new(),
-            (Signal::Doubtful, Some(quick)) => format!("{:.4}", quick.get()),
-            (Signal::Turning, Some(quick)) => {
-                format!("{:.4}", reading.speed.unwrap_or(quick).get())
-            }
         };
         let time = format!("{:.3}", at.nanos() as f64 / 1e9);
         self.csv

@@ -44,8 +44,10 @@ pub struct Reading {
     pub signal: Signal,
     /// The calm speed, for digits: zero when still, `None` when lost, not to be shown when doubtful.
     pub speed: Option<Rpm>,
-    /// The fast speed, for verdict and beacon: as `speed`, but when doubtful the highest speed that the pulses allow.
+    /// The fast speed, for verdict and beacon: the higher one where pulses may be missing.
     pub quick: Option<Rpm>,
+    /// Pulses are overdue by more than a missing one explains: the speeds are upper bounds and nothing more.
+    pub overdue: bool,
 }
 
 impl Reading {
@@ -54,6 +56,7 @@ impl Reading {
         signal: Signal::Still,
         speed: Some(Rpm::ZERO),
         quick: Some(Rpm::ZERO),
+        overdue: false,
     };
 
     /// Whether the spindle may be turning.
@@ -152,6 +155,8 @@ const RETURN: Start = Start {
 const SPEEDS_AGREE: f32 = 0.10;
 /// A pulse this much later than expected, and the jitter of a cheap switch on top, is only just overdue.
 const OVERDUE: f32 = 1.005;
+/// Later than this factor on its time, not even a missing pulse explains a silence.
+const LATE: f32 = 1.25;
 const JITTER: Duration = Duration::from_micros(5);
 
 impl Tacho {
@@ -225,35 +230,37 @@ impl Tacho {
                 signal: Signal::Lost,
                 speed: None,
                 quick: None,
+                overdue: true,
             },
-            State::Turning => {
-                let bound = self.silence_bound(now);
-                let believe = |n: Option<f32>| n.map(|n| Rpm::saturating(60.0 * n.min(bound)));
-                let (calm, quick) = (believe(self.track.calm()), believe(self.track.quick()));
-                let unexplained = self.track.steady_for(DOUBT_AFTER)
-                    && calm.is_some_and(|n| n > self.config.slowest && !explains(n));
-                let signal = if unexplained || self.track.often_missing() {
-                    Signal::Doubtful
-                } else {
-                    Signal::Turning
-                };
-                let quick = if unexplained {
-                    quick.map(|n| self.with_a_magnet_gone(n, &explains))
-                } else if signal == Signal::Doubtful {
-                    // Where magnets are gone, silence proves less.
-                    let bound = bound * (1 + self.track.longest_missing()) as f32;
-                    self.track
-                        .quick()
-                        .map(|n| Rpm::saturating(60.0 * n.min(bound)))
-                } else {
-                    quick
-                };
-                Reading {
-                    signal,
-                    speed: calm,
-                    quick,
-                }
-            }
+            State::Turning => self.turning(now, explains),
+        }
+    }
+
+    fn turning(&self, now: Instant, explains: impl Fn(Rpm) -> bool) -> Reading {
+        let rpm = |n: f32| Rpm::saturating(60.0 * n);
+        let bound = self.silence_bound(now);
+        let (calm, quick) = (self.track.calm(), self.track.quick());
+        // Judged by the pulses as they came: silence lowers what may be said, not what a step must explain.
+        let unexplained = self.track.steady_for(DOUBT_AFTER)
+            && calm.is_some_and(|n| rpm(n) > self.config.slowest && !explains(rpm(n)));
+        // One missing pulse is no slower spindle, and where magnets are gone silence proves even less: the verdict assumes
+        // the higher speed.
+        let missing = 1.0 + self.track.longest_missing().max(1) as f32;
+        let quick = quick.map(|n| rpm(n.min(bound * missing)));
+        let due = self.track.expected().unwrap_or(f32::MAX) * missing * LATE;
+        Reading {
+            overdue: self.silence(now).secs_f32() > due,
+            signal: if unexplained || self.track.often_missing() {
+                Signal::Doubtful
+            } else {
+                Signal::Turning
+            },
+            speed: calm.map(|n| rpm(n.min(bound))),
+            quick: if unexplained {
+                quick.map(|n| self.with_a_magnet_gone(n, explains))
+            } else {
+                quick
+            },
         }
     }
 
@@ -343,17 +350,21 @@ impl Tacho {
         signal::lost_at(under_way.unwrap_or(last), end, gap, spacing, brake)
     }
 
-    /// The fastest that the silence since the last pulse allows, rev/s. A pulse that may be under way ends one silence and
-    /// begins another: the longer one counts. A pulse that is only just overdue proves little: see [`OVERDUE`].
-    fn silence_bound(&self, now: Instant) -> f32 {
+    /// The silence since the last pulse. A pulse that may be under way ends one silence and begins another: the longer
+    /// one counts.
+    fn silence(&self, now: Instant) -> Duration {
         let Some(last) = self.track.last() else {
-            return 0.0;
+            return Duration::MAX;
         };
-        let silence = match self.gate.under_way(now).filter(|&fell| fell > last) {
+        match self.gate.under_way(now).filter(|&fell| fell > last) {
             Some(fell) => fell.since(last).max(now.since(fell)),
             None => now.since(last),
-        };
-        let proven = silence.nanos().saturating_sub(JITTER.nanos());
+        }
+    }
+
+    /// The fastest that the silence allows, rev/s. A pulse that is only just overdue proves little: see [`OVERDUE`].
+    fn silence_bound(&self, now: Instant) -> f32 {
+        let proven = self.silence(now).nanos().saturating_sub(JITTER.nanos());
         if proven > 0 {
             self.track.placement.largest(1.0) * OVERDUE / Duration::from_nanos(proven).secs_f32()
         } else {
