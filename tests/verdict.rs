@@ -117,11 +117,13 @@ fn an_unconfirmed_setup_suppresses_everything_but_danger() {
             signal: Signal::Lost,
             speed: None,
             quick: None,
+            ..Reading::NOTHING
         },
         Reading {
             signal: Signal::Doubtful,
             speed: None,
             quick: Some(rpm(300.0)),
+            ..Reading::NOTHING
         },
     ];
     for (i, reading) in (0..).zip(readings) {
@@ -168,6 +170,7 @@ fn run_up_suppresses_slow_for_four_seconds_and_nothing_else() {
             signal,
             speed: None,
             quick: None,
+            ..Reading::NOTHING
         };
         assert_eq!(start().verdict(at(12.0), &reading, &advice, true), want);
     }
@@ -199,6 +202,7 @@ fn no_signal_but_a_speed_is_ever_right() {
                 signal,
                 speed: Some(rpm(n)),
                 quick: Some(rpm(n)),
+                ..Reading::NOTHING
             };
             let seen = Judge::default().verdict(at(0.0), &reading, &advice, true);
             let want = match signal {
@@ -214,11 +218,30 @@ fn no_signal_but_a_speed_is_ever_right() {
         signal: Signal::Doubtful,
         speed: None,
         quick: Some(rpm(1001.0)),
+        ..Reading::NOTHING
     };
     assert_eq!(
         Judge::default().verdict(at(0.0), &doubtful, &advice, true),
         Verdict::Danger
     );
+}
+
+/// Pulses are overdue: the speed is an upper bound and nothing more.
+#[test]
+fn overdue_pulses_are_never_right_nor_slow_but_danger_still() {
+    let advice = advice(None);
+    for (n, want) in [
+        (100.0, Verdict::NoPulses),
+        (300.0, Verdict::NoPulses),
+        (1001.0, Verdict::Danger),
+    ] {
+        let reading = Reading {
+            overdue: true,
+            ..turning(n)
+        };
+        let seen = Judge::default().verdict(at(0.0), &reading, &advice, true);
+        assert_eq!(seen, want, "{n}");
+    }
 }
 
 #[test]

@@ -66,12 +66,7 @@ pub fn text<const N: usize>(value: impl fmt::Display) -> String<N> {
     impl<const N: usize> fmt::Write for Cut<'_, N> {
         fn write_str(&mut self, s: &str) -> fmt::Result {
             for c in s.chars() {
-                if self.1 || self.0.len() + c.len_utf8() > N.saturating_sub(1) {
-                    self.1 = true;
-                } else {
-                    // Room was checked in the line above.
-                    let _ = self.0.push(c);
-                }
+                self.1 = self.1 || self.0.push(c).is_err();
             }
             Ok(())
         }
@@ -81,7 +76,7 @@ pub fn text<const N: usize>(value: impl fmt::Display) -> String<N> {
     // Neither this writer nor the numbers and texts printed here can fail.
     let _ = fmt::write(&mut cut, format_args!("{value}"));
     if cut.1 {
-        let _ = out.push('~');
+        while out.push('~').is_err() && out.pop().is_some() {}
     }
     out
 }

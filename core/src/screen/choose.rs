@@ -40,7 +40,7 @@ pub(super) fn draw<D: DrawTarget<Color = BinaryColor>>(
             BinaryColor::On
         };
         // 17 characters of 5 pixels are left for the value.
-        let value: String<18> = text(field.value(view.setup, view.machine));
+        let value: String<17> = text(field.value(view.setup, view.machine));
         write(
             field.label(),
             &FONT_5X8,

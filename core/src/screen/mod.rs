@@ -73,17 +73,20 @@ fn fitting(line: &str, pixels: u32) -> &'static MonoFont<'static> {
     }
 }
 
-/// Writes one line with its upper edge at `y`, in the larger font that fits; what still does not fit is cut and ends in `~`.
+/// Writes one line in the eight rows from `y` on, in the larger font that fits; what still does not fit is cut and ends
+/// in `~`. Neither font inks the first of these rows.
 fn line<D: DrawTarget<Color = BinaryColor>>(
     words: impl fmt::Display,
     y: i32,
     target: &mut D,
 ) -> Result<(), D::Error> {
-    let line: String<33> = text(words);
+    // 32 characters of 4 pixels fill the width.
+    let line: String<32> = text(words);
+    let font = fitting(&line, WIDTH);
     write(
         &line,
-        fitting(&line, WIDTH),
-        Point::new(0, y),
+        font,
+        Point::new(0, y + i32::from(font.character_size.height < 8)),
         Alignment::Left,
         BinaryColor::On,
         target,

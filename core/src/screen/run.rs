@@ -5,7 +5,7 @@
 //!   ___                 RIGHT     speed in digits 36 pixels high; the verdict in words
 //!  |   ...                        (reversed where it warns)
 //!  |___               set 280     the step to choose
-//!  ----|-------|--^----|-----     where the speed lies: slow, best and fast marked, each octave the same width
+//!  ____|_______|__v____|_____     where the speed lies: slow, best and fast marked, each octave the same width
 //!  best 344: cutting speed        the best speed and what holds it
 //!  A-2, back gear in              the step's label
 //! ```
@@ -14,10 +14,10 @@ use core::fmt;
 
 use eg_seven_segment::SevenSegmentStyleBuilder;
 use embedded_graphics::mono_font::MonoFont;
-use embedded_graphics::mono_font::ascii::{FONT_5X8, FONT_7X13_BOLD};
+use embedded_graphics::mono_font::ascii::{FONT_4X6, FONT_6X13_BOLD};
 use embedded_graphics::pixelcolor::BinaryColor;
 use embedded_graphics::prelude::*;
-use embedded_graphics::primitives::{Line, PrimitiveStyle, Rectangle, Triangle};
+use embedded_graphics::primitives::{Line, PrimitiveStyle, Rectangle};
 use embedded_graphics::text::{Alignment, Text};
 use heapless::String;
 use micromath::F32Ext;
@@ -32,10 +32,12 @@ use crate::verdict::Verdict;
 /// Left edge of the right-hand column.
 const COLUMN: i32 = 86;
 const COLUMN_WIDTH: u32 = WIDTH - COLUMN as u32;
-const DIGITS_TOP: i32 = 9;
+const DIGITS_TOP: i32 = 8;
 const DIGITS_HEIGHT: u32 = 36;
-/// Upper edge of the scale.
-const SCALE_TOP: i32 = 46;
+/// The scale's line; ticks and pointer stand on it, two rows high.
+const SCALE: i32 = 47;
+/// The two lines at the bottom.
+const LINES: [i32; 2] = [48, 56];
 /// The scale spans one octave to each side of the best speed.
 const OCTAVES: f32 = 1.0;
 
@@ -46,14 +48,18 @@ pub(super) fn draw<D: DrawTarget<Color = BinaryColor>>(
     head(view, target)?;
     speed(view, target)?;
     verdict(view.verdict, target)?;
+    if let Some(setting) = view.advice.pick.setting() {
+        set(setting.rpm, target)?;
+    }
     scale(view, target)?;
+    let [first, second] = LINES;
     match view.notice {
         Some(notice) => match notice.text.split_once(", ") {
             Some((was, now)) if notice.text.len() > 25 => {
-                line(was, 48, target)?;
-                line(now, 56, target)
+                line(was, first, target)?;
+                line(now, second, target)
             }
-            _ => line(&notice.text, 52, target),
+            _ => line(&notice.text, (first + second) / 2, target),
         },
         None => advice(view, target),
     }
@@ -72,10 +78,16 @@ fn head<D: DrawTarget<Color = BinaryColor>>(
     let left = view.setup.material.label();
     let both: String<48> = text(format_args!("{left} {right}"));
     let font = fitting(&both, WIDTH);
+    // No font inks its first row: the head begins at the very top.
+    let top = if font.character_size.height < 8 {
+        0
+    } else {
+        -1
+    };
     write(
         left,
         font,
-        Point::zero(),
+        Point::new(0, top),
         Alignment::Left,
         BinaryColor::On,
         target,
@@ -83,7 +95,7 @@ fn head<D: DrawTarget<Color = BinaryColor>>(
     write(
         &right,
         font,
-        Point::new(WIDTH as i32 - 1, 0),
+        Point::new(WIDTH as i32 - 1, top),
         Alignment::Right,
         BinaryColor::On,
         target,
@@ -110,7 +122,8 @@ fn speed<D: DrawTarget<Color = BinaryColor>>(
         .segment_width(segment)
         .segment_color(BinaryColor::On)
         .build();
-    let baseline = Point::new(0, DIGITS_TOP + DIGITS_HEIGHT as i32);
+    // The baseline is the digits' last row.
+    let baseline = Point::new(0, DIGITS_TOP + DIGITS_HEIGHT as i32 - 1);
     Text::new(&words, baseline, style).draw(target).map(|_| ())
 }
 
@@ -143,7 +156,7 @@ fn verdict<D: DrawTarget<Color = BinaryColor>>(
     verdict: Verdict,
     target: &mut D,
 ) -> Result<(), D::Error> {
-    const FONT: &MonoFont<'_> = &FONT_7X13_BOLD;
+    const FONT: &MonoFont<'_> = &FONT_6X13_BOLD;
     let (first, second) = words(verdict);
     let ink = if warns(verdict) {
         let back = Rectangle::new(
@@ -185,8 +198,23 @@ fn verdict<D: DrawTarget<Color = BinaryColor>>(
     )
 }
 
-/// A bar with ticks at slow, best and fast and a pointer at the speed. Its places are logarithms by micromath: within a few
-/// percent of an octave, which is less than two pixels here, and far too coarse for anything that is computed with.
+/// The speed to set on the machine.
+fn set<D: DrawTarget<Color = BinaryColor>>(rpm: Rpm, target: &mut D) -> Result<(), D::Error> {
+    let set: String<10> = text(format_args!("set {}", Whole(rpm)));
+    let at = Point::new(COLUMN + COLUMN_WIDTH as i32 / 2, DIGITS_TOP + 28);
+    write(
+        &set,
+        fitting(&set, COLUMN_WIDTH),
+        at,
+        Alignment::Center,
+        BinaryColor::On,
+        target,
+    )
+}
+
+/// A line with ticks at slow, best (the high one) and fast, and a pointer at the speed. Its places are logarithms by
+/// micromath: within a few percent of an octave, which is less than two pixels here, and far too coarse for anything that
+/// is computed with.
 fn scale<D: DrawTarget<Color = BinaryColor>>(
     view: &View<'_>,
     target: &mut D,
@@ -195,8 +223,8 @@ fn scale<D: DrawTarget<Color = BinaryColor>>(
         return Ok(());
     };
     let ink = PrimitiveStyle::with_stroke(BinaryColor::On, 1);
-    let (left, right, y) = (0, WIDTH as i32 - 1, SCALE_TOP + 1);
-    Line::new(Point::new(left, y), Point::new(right, y))
+    let (left, right) = (0, WIDTH as i32 - 1);
+    Line::new(Point::new(left, SCALE), Point::new(right, SCALE))
         .into_styled(ink)
         .draw(target)?;
 
@@ -217,25 +245,22 @@ fn scale<D: DrawTarget<Color = BinaryColor>>(
         .into_iter()
         .flatten()
         .reduce(|a, b| if b < a { b } else { a });
-    for tick in [Some(view.advice.slow_below()), Some(best), limit]
-        .into_iter()
-        .flatten()
-    {
-        let x = place(tick);
-        Line::new(Point::new(x, y - 1), Point::new(x, y + 1))
-            .into_styled(ink)
-            .draw(target)?;
+    let slow = Some(view.advice.slow_below()).filter(|n| *n > Rpm::ZERO);
+    for (tick, height) in [(slow, 1), (Some(best), 2), (limit, 1)] {
+        if let Some(x) = tick.map(place) {
+            Line::new(Point::new(x, SCALE - height), Point::new(x, SCALE - 1))
+                .into_styled(ink)
+                .draw(target)?;
+        }
     }
     if let (Some(_), Some(n)) = (digits(view.reading), view.reading.speed) {
         let x = place(n).clamp(left + 2, right - 2);
-        let pointer = Triangle::new(
-            Point::new(x, y),
-            Point::new(x - 2, y - 2),
-            Point::new(x + 2, y - 2),
-        );
-        pointer
-            .into_styled(PrimitiveStyle::with_fill(BinaryColor::On))
-            .draw(target)?;
+        for (half, above) in [(2, 2), (1, 1)] {
+            let y = SCALE - above;
+            Line::new(Point::new(x - half, y), Point::new(x + half, y))
+                .into_styled(ink)
+                .draw(target)?;
+        }
     }
     Ok(())
 }
@@ -246,39 +271,59 @@ fn advice<D: DrawTarget<Color = BinaryColor>>(
     target: &mut D,
 ) -> Result<(), D::Error> {
     let advice = view.advice;
-    if let Some(setting) = advice.pick.setting() {
-        let set: String<10> = text(format_args!("set {}", Whole(setting.rpm)));
-        let at = Point::new(COLUMN + COLUMN_WIDTH as i32 / 2, DIGITS_TOP + 28);
+    let [first, second] = LINES;
+    if let Pick::NoBasis(refusal) = &advice.pick {
+        return reason(refusal.reason, target);
+    }
+    let held_by = advice.window.high.reason.short();
+    line(
+        format_args!("best {}: {held_by}", Whole(advice.window.best())),
+        first,
+        target,
+    )?;
+    match &advice.pick {
+        Pick::Set(setting) => line(&setting.label, second, target),
+        Pick::TooFast { over_percent, .. } => line(
+            format_args!("slowest is {over_percent:.0} % too fast"),
+            second,
+            target,
+        ),
+        Pick::NeedsCap => line("holder unrated: set a cap", second, target),
+        Pick::NoBasis(_) => Ok(()),
+    }
+}
+
+/// Why there is no advice, in small letters where scale and lines would be. What does not fit is cut and ends in `~`.
+fn reason<D: DrawTarget<Color = BinaryColor>>(
+    reason: &str,
+    target: &mut D,
+) -> Result<(), D::Error> {
+    const ROWS: [i32; 3] = [46, 52, 58];
+    let mut words = reason.split_whitespace().peekable();
+    for y in ROWS {
+        let mut row: String<32> = String::new();
+        while let Some(word) = words.peek() {
+            let space = usize::from(!row.is_empty());
+            if row.len() + space + word.len() > row.capacity() {
+                break;
+            }
+            // Room was checked in the line above. A word longer than a row would be cut here with all that follows it.
+            let _ = (space == 0 || row.push(' ').is_ok()) && row.push_str(word).is_ok();
+            words.next();
+        }
+        if y == ROWS[2] && words.peek().is_some() {
+            while row.push('~').is_err() && row.pop().is_some() {}
+        }
         write(
-            &set,
-            &FONT_5X8,
-            at,
-            Alignment::Center,
+            &row,
+            &FONT_4X6,
+            Point::new(0, y),
+            Alignment::Left,
             BinaryColor::On,
             target,
         )?;
     }
-    match &advice.cutting {
-        Ok(_) => {
-            let held_by = advice.window.high.reason.short();
-            line(
-                format_args!("best {}: {held_by}", Whole(advice.window.best())),
-                48,
-                target,
-            )?;
-        }
-        Err(_) => line("no basis for a speed", 48, target)?,
-    }
-    match &advice.pick {
-        Pick::Set(setting) => line(&setting.label, 56, target),
-        Pick::TooFast { over_percent, .. } => line(
-            format_args!("slowest is {over_percent:.0} % too fast"),
-            56,
-            target,
-        ),
-        Pick::NeedsCap => line("holder unrated: set a cap", 56, target),
-        Pick::NoBasis(refusal) => line(refusal, 56, target),
-    }
+    Ok(())
 }
 
 /// A speed without its unit, for places that name it.

@@ -1,0 +1,604 @@
+//! The pages as a person sees them. Golden pictures are text, two rows of pixels in a row of half blocks, so that a
+//! change can be read in a diff; after a wanted change accept them with `INSTA_UPDATE=always`.
+
+use std::convert::Infallible;
+
+use embedded_graphics::pixelcolor::BinaryColor;
+use embedded_graphics::prelude::*;
+use rimrate_core::advice::{Advice, Pick, advise};
+use rimrate_core::machine::{
+    HolderKind, HolderSpec, Machine, MachineKind, MachineSpec, SensorSpec, StepSpec,
+};
+use rimrate_core::panel::{Bench, Field, Knob, Notice, Page, Panel};
+use rimrate_core::screen::{self, HEIGHT, View, WIDTH};
+use rimrate_core::setup::{Diameter, Setup};
+use rimrate_core::tacho::{Reading, Signal};
+use rimrate_core::trade::{Material, Operation, Tool, cutting_speed};
+use rimrate_core::units::UnitSystem;
+use rimrate_core::verdict::Verdict;
+use rimrate_sim::frame::Frame;
+use rimrate_tests::{at, bar, machine, machines, rpm, turning};
+
+/// What a page shows.
+#[derive(Clone)]
+struct Scene {
+    setup: Setup,
+    machine: Machine,
+    reading: Reading,
+    verdict: Verdict,
+    page: Page,
+    notice: Option<Notice>,
+}
+
+impl Scene {
+    /// A 25 mm bar on the geared lathe, at 279 rpm, right.
+    fn new() -> Self {
+        Scene {
+            setup: bar(25.0),
+            machine: machine("geared-lathe"),
+            reading: turning(279.0),
+            verdict: Verdict::Right,
+            page: Page::Run,
+            notice: None,
+        }
+    }
+
+    fn at(self, n: f32, verdict: Verdict) -> Self {
+        Scene {
+            reading: turning(n),
+            verdict,
+            ..self
+        }
+    }
+
+    fn without_speed(self, signal: Signal, verdict: Verdict) -> Self {
+        let reading = Reading {
+            signal,
+            speed: None,
+            quick: None,
+            ..Reading::NOTHING
+        };
+        Scene {
+            reading,
+            verdict,
+            ..self
+        }
+    }
+
+    /// The right knob, or the left one, turned while the spindle runs.
+    fn turned(mut self, knob: Knob, detents: i8) -> Self {
+        let mut panel = Panel::new(true);
+        let advice = self.advice();
+        let bench = Bench {
+            setup: &mut self.setup,
+            machine: &self.machine,
+            advice: &advice,
+            running: true,
+        };
+        panel.turn(at(1.0), knob, detents, bench);
+        self.notice = panel.notice().cloned();
+        assert!(self.notice.is_some());
+        self
+    }
+
+    fn advice(&self) -> Advice {
+        advise(&self.setup, &self.machine)
+    }
+
+    fn draw<D: DrawTarget<Color = BinaryColor>>(&self, target: &mut D) -> Result<(), D::Error> {
+        let advice = self.advice();
+        let view = View {
+            setup: &self.setup,
+            machine: &self.machine,
+            advice: &advice,
+            reading: &self.reading,
+            verdict: self.verdict,
+            page: self.page,
+            notice: self.notice.as_ref(),
+        };
+        screen::draw(&view, target)
+    }
+
+    fn frame(&self) -> Frame {
+        let mut frame = Frame::new();
+        let Ok(()) = self.draw(&mut frame);
+        frame
+    }
+}
+
+/// A lathe whose every text is as long as a profile allows.
+fn wordy() -> Machine {
+    let spec = MachineSpec {
+        name: "A machine with as long a name as can".parse().unwrap(),
+        kind: MachineKind::Lathe,
+        units: UnitSystem::Inch,
+        top_speed_rpm: None,
+        brake_rpm_per_s: None,
+        slowest_rpm: None,
+        sensor: SensorSpec { pulses: 2 },
+        steps: [(100.0, "1"), (12_345.0, "2")]
+            .into_iter()
+            .map(|(rpm, end)| StepSpec {
+                label: format!("{:<31}{end}", "C-3, back gear out, motor high,")
+                    .parse()
+                    .unwrap(),
+                rpm,
+            })
+            .collect(),
+        ranges: Default::default(),
+        holders: [HolderSpec {
+            kind: HolderKind::BetweenCentres,
+            name: Some("Mandrel W, 17 characters".parse().unwrap()),
+            rated_rpm: Some(99_999.0),
+        }]
+        .into_iter()
+        .collect(),
+    };
+    Machine::new(spec).unwrap_or_else(|e| panic!("{e}"))
+}
+
+/// Every golden picture with its name.
+fn scenes() -> Vec<(&'static str, Scene)> {
+    let lathe = Scene::new;
+    let faceplate = || Scene {
+        setup: Setup {
+            holder: 3,
+            ..bar(120.0)
+        },
+        ..lathe()
+    };
+    let refused = || Scene {
+        setup: Setup {
+            material: Material::UnknownSteel,
+            tool: Tool::Carbide,
+            ..bar(25.0)
+        },
+        ..lathe()
+    };
+    let drill = || Scene {
+        setup: Setup {
+            material: Material::Brass,
+            operation: Operation::Drilling,
+            diameter: Diameter::parse("3/8 in").unwrap(),
+            ..bar(25.0)
+        },
+        machine: machine("drill-press"),
+        ..lathe()
+    };
+    let fast_drill = || Scene {
+        setup: Setup {
+            material: Material::TitaniumAlloy,
+            operation: Operation::Drilling,
+            diameter: Diameter::parse("2 in").unwrap(),
+            ..bar(25.0)
+        },
+        machine: machine("drill-press"),
+        ..lathe()
+    };
+    let long = || Scene {
+        setup: Setup {
+            material: Material::StainlessPrecipitation,
+            tool: Tool::CoatedCarbide,
+            operation: Operation::Milling,
+            diameter: Diameter::parse("1 63/64 in").unwrap(),
+            ..bar(25.0)
+        },
+        machine: wordy(),
+        ..lathe()
+    };
+    let capped = || Scene {
+        setup: Setup {
+            cap: Some(rpm(300.0)),
+            ..bar(25.0)
+        },
+        ..lathe()
+    };
+    let choose = |field, setup: Setup| Scene {
+        setup,
+        page: Page::Choose(field),
+        ..lathe()
+    };
+    vec![
+        ("run-right", lathe()),
+        ("run-slow", lathe().at(180.0, Verdict::Slow)),
+        ("run-up", lathe().at(96.0, Verdict::RunUp)),
+        ("run-fast", lathe().at(446.0, Verdict::Fast)),
+        ("run-danger", capped().at(448.0, Verdict::Danger)),
+        (
+            "run-lost",
+            lathe().without_speed(Signal::Lost, Verdict::Lost),
+        ),
+        (
+            "run-doubtful",
+            lathe().without_speed(Signal::Doubtful, Verdict::Doubtful),
+        ),
+        (
+            "run-no-pulses",
+            Scene {
+                reading: Reading::NOTHING,
+                verdict: Verdict::NoPulses,
+                ..lathe()
+            },
+        ),
+        ("run-unconfirmed", lathe().at(279.0, Verdict::Unconfirmed)),
+        ("run-needs-cap", faceplate().at(45.0, Verdict::NeedsCap)),
+        ("run-no-advice", refused().at(279.0, Verdict::NoAdvice)),
+        ("run-too-fast", fast_drill().at(354.0, Verdict::Fast)),
+        ("run-inch", drill().at(893.0, Verdict::Right)),
+        ("run-long-labels", long().at(98.0, Verdict::Right)),
+        ("run-five-digits", long().at(12_345.0, Verdict::Danger)),
+        ("run-seven-digits", long().at(1_234_567.0, Verdict::Danger)),
+        ("run-notice", lathe().turned(Knob::Right, 5)),
+        (
+            "run-notice-in-two-lines",
+            lathe().at(279.0, Verdict::Fast).turned(Knob::Left, 5),
+        ),
+        ("choose-job", choose(Field::Operation, bar(25.0))),
+        (
+            "choose-holder",
+            choose(
+                Field::Holder,
+                Setup {
+                    holder: 4,
+                    ..bar(25.0)
+                },
+            ),
+        ),
+        (
+            "choose-cap",
+            choose(
+                Field::Cap,
+                Setup {
+                    cap: Some(rpm(1250.0)),
+                    ..bar(25.0)
+                },
+            ),
+        ),
+    ]
+}
+
+#[test]
+fn golden_pictures() {
+    for (name, scene) in scenes() {
+        insta::assert_snapshot!(name, scene.frame().to_text());
+    }
+}
+
+#[test]
+fn every_golden_picture_belongs_to_a_scene_and_every_verdict_has_one() {
+    let scenes = scenes();
+    let folder = std::path::Path::new(env!("CARGO_MANIFEST_DIR")).join("snapshots");
+    let mut count = 0;
+    for entry in std::fs::read_dir(folder).unwrap() {
+        let name = entry.unwrap().file_name().into_string().unwrap();
+        let scene = name
+            .strip_prefix("screens__")
+            .and_then(|n| n.strip_suffix(".snap"))
+            .unwrap_or_else(|| panic!("{name} is no golden picture"));
+        assert!(scenes.iter().any(|(n, _)| *n == scene), "{name}");
+        count += 1;
+    }
+    assert_eq!(count, scenes.len());
+    for verdict in Verdict::ALL {
+        assert!(
+            scenes.iter().any(|(_, s)| s.verdict == verdict),
+            "{verdict:?}"
+        );
+    }
+}
+
+/// Counts, for each pixel, how often it was lit, and what fell outside.
+struct Ink {
+    lit: Vec<u32>,
+    dark: Vec<bool>,
+    outside: Vec<Point>,
+}
+
+impl Ink {
+    fn of(scene: &Scene) -> Self {
+        let mut ink = Ink {
+            lit: vec![0; (WIDTH * HEIGHT) as usize],
+            dark: vec![false; (WIDTH * HEIGHT) as usize],
+            outside: Vec::new(),
+        };
+        let Ok(()) = scene.draw(&mut ink);
+        ink
+    }
+}
+
+impl OriginDimensions for Ink {
+    fn size(&self) -> Size {
+        Size::new(WIDTH, HEIGHT)
+    }
+}
+
+impl DrawTarget for Ink {
+    type Color = BinaryColor;
+    type Error = Infallible;
+
+    fn draw_iter<I>(&mut self, pixels: I) -> Result<(), Infallible>
+    where
+        I: IntoIterator<Item = Pixel<BinaryColor>>,
+    {
+        for Pixel(p, color) in pixels {
+            if p.x < 0 || p.y < 0 || p.x >= WIDTH as i32 || p.y >= HEIGHT as i32 {
+                self.outside.push(p);
+                continue;
+            }
+            let at = (p.y * WIDTH as i32 + p.x) as usize;
+            if color.is_on() {
+                self.lit[at] += 1;
+            } else {
+                self.dark[at] = true;
+            }
+        }
+        Ok(())
+    }
+}
+
+/// Many scenes: every demo machine, every material, operation and holder, and what else changes the page.
+fn many() -> impl Iterator<Item = Scene> {
+    let machines: Vec<Machine> = machines().chain([wordy()]).collect();
+    machines.into_iter().flat_map(|machine| {
+        let holders = machine.holders().len() as u8;
+        Material::ALL.into_iter().flat_map(move |material| {
+            let machine = machine.clone();
+            Operation::ALL.into_iter().flat_map(move |operation| {
+                let machine = machine.clone();
+                (0..holders).map(move |holder| Scene {
+                    setup: Setup {
+                        material,
+                        operation,
+                        holder,
+                        // A fraction of every length that the scale of either unit has.
+                        diameter: Diameter::nearest(if operation == Operation::Milling {
+                            1_000.0
+                        } else {
+                            1.984_375
+                        }),
+                        ..bar(25.0)
+                    },
+                    machine: machine.clone(),
+                    ..Scene::new()
+                })
+            })
+        })
+    })
+}
+
+#[test]
+fn nothing_is_drawn_outside_or_over_something_else() {
+    let verdicts = Verdict::ALL;
+    let speeds = [0.0, 7.0, 45.4, 279.0, 2240.0, 9999.0, 12_345.0, 1_000_000.0];
+    let mut seen = 0;
+    let all = many().chain(scenes().into_iter().map(|(_, s)| s));
+    for (i, scene) in all.enumerate() {
+        let scene = scene
+            .clone()
+            .at(speeds[i % speeds.len()], verdicts[i % verdicts.len()]);
+        let ink = Ink::of(&scene);
+        assert_eq!(ink.outside, [], "{:?}", scene.setup);
+        for (at, &times) in ink.lit.iter().enumerate() {
+            // The scale's ticks and pointer stand on its line.
+            let (x, y) = (at as u32 % WIDTH, at as u32 / WIDTH);
+            let on_scale = scene.page == Page::Run && (45..=47).contains(&y);
+            assert!(
+                times <= 1 || on_scale,
+                "({x}, {y}) was lit {times} times\n{}",
+                scene.frame().to_text()
+            );
+        }
+        seen += 1;
+    }
+    assert!(seen > 5_000);
+}
+
+/// Rows and columns that must stay dark, so that the parts stand apart: head, digits, verdict, scale, and two lines.
+#[test]
+fn the_parts_of_the_run_page_stand_apart() {
+    for scene in many().step_by(7) {
+        for verdict in Verdict::ALL {
+            let scene = scene.clone().at(888.0, verdict);
+            let frame = scene.frame();
+            let dark = |y: u32, x: std::ops::Range<u32>| x.into_iter().all(|x| !frame.lit(x, y));
+            let refused = matches!(scene.advice().pick, Pick::NoBasis(_));
+            let rows: &[u32] = if refused {
+                &[7, 44, 45]
+            } else {
+                &[7, 44, 48, 56]
+            };
+            for &y in rows {
+                assert!(dark(y, 0..WIDTH), "row {y}\n{}", frame.to_text());
+            }
+            for y in 8..44 {
+                assert!(dark(y, 81..85), "row {y}\n{}", frame.to_text());
+            }
+        }
+    }
+}
+
+#[test]
+fn the_digits_are_36_pixels_high_for_every_speed() {
+    for n in [8.0, 88.0, 888.0, 8888.0, 88_888.0, 888_888.0] {
+        let frame = Scene::new().at(n, Verdict::Right).frame();
+        let lit = |y: u32| (0..82).any(|x| frame.lit(x, y));
+        assert_eq!((8..44).filter(|&y| lit(y)).count(), 36, "{n}");
+        assert!(!lit(7) && !lit(44), "{n}");
+    }
+}
+
+#[test]
+fn no_line_is_cut_on_any_demo_machine() {
+    let demo = |s: &Scene| s.machine.name() != wordy().name();
+    for scene in many().filter(demo) {
+        let (frame, advice) = (scene.frame(), scene.advice());
+        let shown = |words: &str| assert!(frame.shows(words), "{words}\n{}", frame.to_text());
+        let word = scene.setup.operation.diameter_word();
+        let diameter = scene.setup.diameter.length().display(scene.machine.units());
+        shown(scene.setup.material.label());
+        shown(&format!("{word} {diameter}"));
+        match &advice.pick {
+            Pick::Set(setting) => {
+                shown(&setting.label);
+                shown(&format!("set {:.0}", setting.rpm.get()));
+            }
+            Pick::TooFast { over_percent, .. } => {
+                shown(&format!("slowest is {over_percent:.0} % too fast"))
+            }
+            Pick::NeedsCap => shown("holder unrated: set a cap"),
+            // Reasons may be longer than the screen.
+            Pick::NoBasis(_) => continue,
+        }
+        let held_by = advice.window.high.reason.short();
+        shown(&format!(
+            "best {:.0}: {held_by}",
+            advice.window.best().get()
+        ));
+    }
+}
+
+#[test]
+fn no_choice_is_cut_on_any_demo_machine() {
+    for machine in machines() {
+        for holder in 0..machine.holders().len() as u8 {
+            for operation in Operation::ALL {
+                for tool in Tool::ALL {
+                    let scene = Scene {
+                        setup: Setup {
+                            holder,
+                            operation,
+                            tool,
+                            cap: Some(rpm(10_000.0)),
+                            ..bar(25.0)
+                        },
+                        machine: machine.clone(),
+                        page: Page::Choose(Field::CHOOSE[usize::from(holder) % 5]),
+                        ..Scene::new()
+                    };
+                    let frame = scene.frame();
+                    for field in Field::CHOOSE {
+                        let value = field.value(&scene.setup, &scene.machine).to_string();
+                        let label = field.label();
+                        assert!(frame.shows(&value), "{value}\n{}", frame.to_text());
+                        assert!(frame.shows(label), "{label}\n{}", frame.to_text());
+                    }
+                }
+            }
+        }
+    }
+}
+
+#[test]
+fn a_label_of_the_full_length_fits() {
+    let scene = Scene {
+        machine: wordy(),
+        ..Scene::new()
+    };
+    let label = scene.advice().pick.setting().unwrap().label.clone();
+    assert_eq!(label.len(), 32);
+    assert!(scene.frame().shows(&label), "{}", scene.frame().to_text());
+}
+
+#[test]
+fn a_speed_that_is_not_believed_is_never_shown() {
+    for signal in [Signal::Still, Signal::Lost, Signal::Doubtful] {
+        let reading = Reading {
+            signal,
+            speed: Some(rpm(888.0)),
+            quick: Some(rpm(888.0)),
+            ..Reading::NOTHING
+        };
+        assert_eq!(screen::digits(&reading), None);
+        let with = Scene {
+            reading,
+            ..Scene::new()
+        };
+        let without = Scene::new().without_speed(signal, Verdict::Right);
+        assert!(
+            with.frame() == without.frame(),
+            "neither digits nor pointer"
+        );
+    }
+}
+
+#[test]
+fn the_screen_never_says_stopped_or_safe() {
+    for (name, scene) in scenes() {
+        for word in ["STOP", "SAFE", "stop", "safe", "OK"] {
+            assert!(!scene.frame().shows(word), "{name}");
+        }
+    }
+}
+
+#[test]
+fn the_pointer_moves_with_the_speed() {
+    let pointer = |n: f32| {
+        let frame = Scene::new().at(n, Verdict::Right).frame();
+        let wide = |x: &u32| (x - 2..=x + 2).all(|x| frame.lit(x, 45));
+        let places: Vec<u32> = (2..WIDTH - 2).filter(wide).collect();
+        // A tick right beside it leaves two places that may be its middle.
+        assert!((1..=2).contains(&places.len()), "{n}: {places:?}");
+        places[0]
+    };
+    let mut before = 0;
+    for n in (180..700).step_by(20) {
+        let x = pointer(n as f32);
+        assert!(x >= before, "{n}");
+        before = x;
+    }
+    // At the best speed it stands in the middle.
+    assert!(pointer(348.9).abs_diff(WIDTH / 2) <= 1);
+}
+
+#[test]
+fn every_refusal_is_told_with_its_reason() {
+    let mut told = 0;
+    for material in Material::ALL {
+        for tool in Tool::ALL {
+            for operation in Operation::ALL {
+                let setup = Setup {
+                    material,
+                    tool,
+                    operation,
+                    ..bar(25.0)
+                };
+                if let Err(refusal) = cutting_speed(material, tool, operation, setup.coolant) {
+                    let scene = Scene {
+                        setup,
+                        ..Scene::new()
+                    };
+                    // Its first words, as many as a row of the small letters has.
+                    let mut row = String::new();
+                    for word in refusal.reason.split(' ') {
+                        if row.len() + 1 + word.len() > 32 {
+                            break;
+                        }
+                        row += if row.is_empty() { "" } else { " " };
+                        row += word;
+                    }
+                    assert!(
+                        scene.frame().shows(&row),
+                        "{row}\n{}",
+                        scene.frame().to_text()
+                    );
+                    told += 1;
+                }
+            }
+        }
+    }
+    assert!(told > 100);
+}
+
+/// Writes every scene as PNG into the folder that `RIMRATE_PICTURES` names, to be looked at.
+#[test]
+fn pictures_can_be_written() {
+    let kept = std::env::var_os("RIMRATE_PICTURES").map(std::path::PathBuf::from);
+    for (name, scene) in scenes() {
+        let mut png = Vec::new();
+        scene.frame().write_png(&mut png, 4).unwrap();
+        assert!(png.starts_with(b"\x89PNG"));
+        if let Some(folder) = &kept {
+            std::fs::write(folder.join(format!("{name}.png")), png).unwrap();
+        }
+    }
+}
