@@ -24,8 +24,17 @@ struct Capture {
 
 impl Capture {
     fn new(pulses: u32) -> Self {
-        let sensor = SensorSpec { jitter_ns: 1000.0, ..SensorSpec::ideal(pulses) };
-        Capture { sensor, seed: 1, start: 0.3, ripple: 0.0, pieces: Vec::new() }
+        let sensor = SensorSpec {
+            jitter_ns: 1000.0,
+            ..SensorSpec::ideal(pulses)
+        };
+        Capture {
+            sensor,
+            seed: 1,
+            start: 0.3,
+            ripple: 0.0,
+            pieces: Vec::new(),
+        }
     }
     fn placed(mut self, degrees: &[f64]) -> Self {
         self.sensor.placement = degrees.to_vec();
@@ -53,8 +62,16 @@ impl Capture {
         let mut sensor = Sensor::new(self.sensor.clone(), self.seed);
         let mut profile = Profile::new(self.start);
         profile.ripple = Ripple {
-            turn: Wave { share: self.ripple, per_turn: 1.0, phase: 0.4 },
-            belt: Wave { share: self.ripple, per_turn: 0.37, phase: 1.1 },
+            turn: Wave {
+                share: self.ripple,
+                per_turn: 1.0,
+                phase: 0.4,
+            },
+            belt: Wave {
+                share: self.ripple,
+                per_turn: 0.37,
+                phase: 1.1,
+            },
         };
         let mut edges = Vec::new();
         for (piece, faults) in &self.pieces {
@@ -71,7 +88,11 @@ impl Capture {
         let mut start = 0.0;
         for (piece, _) in &self.pieces {
             if at <= start + piece.secs {
-                let share = if piece.secs > 0.0 { (at - start) / piece.secs } else { 1.0 };
+                let share = if piece.secs > 0.0 {
+                    (at - start) / piece.secs
+                } else {
+                    1.0
+                };
                 return piece.from_rpm + (piece.to_rpm - piece.from_rpm) * share;
             }
             start += piece.secs;
@@ -102,8 +123,14 @@ impl Capture {
                 }
                 tacho.push(edge);
             }
-            let silence = last_fall.map_or(f64::INFINITY, |fall: Instant| at.since(fall).nanos() as f64 / 1e9);
-            rows.push((at.nanos() as f64 / 1e9, tacho.reading(at, |_| true), silence));
+            let silence = last_fall.map_or(f64::INFINITY, |fall: Instant| {
+                at.since(fall).nanos() as f64 / 1e9
+            });
+            rows.push((
+                at.nanos() as f64 / 1e9,
+                tacho.reading(at, |_| true),
+                silence,
+            ));
             at += Duration::from_millis(10);
         }
         rows
@@ -130,11 +157,18 @@ const PLACED_6: &[f64] = &[0.0, 3.0, -2.0, 1.5, -3.0, 2.0];
 
 #[test]
 fn a_steady_speed_reads_within_a_thousandth() {
-    for (pulses, placement) in [(1, &[][..]), (2, PLACED_2), (4, &[0.5, -0.5]), (6, PLACED_6), (60, &[])] {
+    for (pulses, placement) in [
+        (1, &[][..]),
+        (2, PLACED_2),
+        (4, &[0.5, -0.5]),
+        (6, PLACED_6),
+        (60, &[]),
+    ] {
         for speed in [20.0, 45.0, 112.0, 333.0, 800.0, 1777.0, 3000.0, 6000.0] {
             let settling = f64::max(1.0, 5.0 * 60.0 / speed);
-            let capture =
-                Capture::new(pulses).placed(placement).then(Piece::steady(speed, settling + 3.0 * 60.0 / speed + 2.0));
+            let capture = Capture::new(pulses)
+                .placed(placement)
+                .then(Piece::steady(speed, settling + 3.0 * 60.0 / speed + 2.0));
             let worst = worst_after(&capture, settling);
             assert!(worst < 1e-3, "{pulses} pulses, {speed} rpm: {worst:.2e}");
         }
@@ -143,7 +177,9 @@ fn a_steady_speed_reads_within_a_thousandth() {
 
 #[test]
 fn ten_rpm_reads_with_four_pulses() {
-    let capture = Capture::new(4).placed(&[1.0, -1.0, 0.0, 0.5]).then(Piece::steady(10.0, 60.0));
+    let capture = Capture::new(4)
+        .placed(&[1.0, -1.0, 0.0, 0.5])
+        .then(Piece::steady(10.0, 60.0));
     let worst = worst_after(&capture, 20.0);
     assert!(worst < 1e-3, "{worst:.2e}");
 }
@@ -151,7 +187,9 @@ fn ten_rpm_reads_with_four_pulses() {
 #[test]
 fn ripple_leaves_the_reading_near_its_size() {
     for pulses in [1, 2, 6, 60] {
-        let capture = Capture::new(pulses).rippled(0.003).then(Piece::steady(640.0, 20.0));
+        let capture = Capture::new(pulses)
+            .rippled(0.003)
+            .then(Piece::steady(640.0, 20.0));
         let worst = worst_after(&capture, 1.0);
         assert!(worst < 0.005, "{pulses} pulses: {worst:.2e}");
     }
@@ -174,7 +212,10 @@ fn a_reading_never_exceeds_what_silence_allows() {
                 // The largest gap between magnets may be wider than the mean by their placement errors.
                 let gap = if pulses == 1 { 1.0 } else { 1.12 };
                 if let Some(speed) = reading.speed {
-                    assert!(f64::from(speed.get()) <= bound * gap * 1.006, "{pulses} pulses at {at} s: {reading:?}, bound {bound}");
+                    assert!(
+                        f64::from(speed.get()) <= bound * gap * 1.006,
+                        "{pulses} pulses at {at} s: {reading:?}, bound {bound}"
+                    );
                 }
             }
         }
@@ -201,7 +242,9 @@ fn a_dead_sensor_is_lost_in_time_and_stays_lost() {
                 .with(Piece::steady(speed, 40.0), &[(Fault::StuckHigh, true)]);
             let four = 4.0 * 60.0 / speed / f64::from(pulses);
             for (at, reading, silence) in capture.rows() {
-                let context = format!("{pulses} pulses, {speed:.0} rpm, at {at} s, silent for {silence:.3} s: {reading:?}");
+                let context = format!(
+                    "{pulses} pulses, {speed:.0} rpm, at {at} s, silent for {silence:.3} s: {reading:?}"
+                );
                 if silence > f64::max(0.5, four * 1.02) + 0.011 && at > dies {
                     assert_eq!(reading.signal, Signal::Lost, "{context}");
                     assert_eq!(reading.speed, None);
@@ -217,7 +260,13 @@ fn a_dead_sensor_is_lost_in_time_and_stays_lost() {
 
 #[test]
 fn a_stop_at_the_braking_limit_is_never_lost() {
-    for (pulses, placement) in [(1, &[][..]), (2, PLACED_2), (3, &[0.0, 2.0, -1.0]), (6, PLACED_6), (60, &[])] {
+    for (pulses, placement) in [
+        (1, &[][..]),
+        (2, PLACED_2),
+        (3, &[0.0, 2.0, -1.0]),
+        (6, PLACED_6),
+        (60, &[]),
+    ] {
         for seed in 0..60_u64 {
             let speed = 30.0 * 1.093_f64.powi(seed as i32);
             for start in [0.0, 0.31, 0.77] {
@@ -230,10 +279,18 @@ fn a_stop_at_the_braking_limit_is_never_lost() {
                     .then(Piece::ramp(speed, 0.0, BRAKE))
                     .then(Piece::steady(0.0, 8.0));
                 for (at, reading, _) in capture.rows() {
-                    assert_ne!(reading.signal, Signal::Lost, "{pulses} pulses from {speed:.1} rpm, start {start}, at {at} s");
+                    assert_ne!(
+                        reading.signal,
+                        Signal::Lost,
+                        "{pulses} pulses from {speed:.1} rpm, start {start}, at {at} s"
+                    );
                 }
                 let last = capture.rows().last().unwrap().1;
-                assert_eq!(last.signal, Signal::Still, "{pulses} pulses from {speed:.1} rpm");
+                assert_eq!(
+                    last.signal,
+                    Signal::Still,
+                    "{pulses} pulses from {speed:.1} rpm"
+                );
             }
         }
     }
@@ -250,7 +307,11 @@ fn a_jog_that_is_braked_at_once_is_never_lost() {
                 .then(Piece::ramp(speed, 0.0, BRAKE))
                 .then(Piece::steady(0.0, 7.0));
             for (at, reading, _) in capture.rows() {
-                assert_ne!(reading.signal, Signal::Lost, "{pulses} pulses to {speed:.1} rpm, at {at} s");
+                assert_ne!(
+                    reading.signal,
+                    Signal::Lost,
+                    "{pulses} pulses to {speed:.1} rpm, at {at} s"
+                );
             }
         }
     }
@@ -266,7 +327,11 @@ fn a_stopped_spindle_is_still_after_one_period_of_the_slowest_speed() {
                 .then(Piece::steady(0.0, 8.0));
             for (at, reading, silence) in capture.rows() {
                 if silence > 6.0 / f64::from(pulses) * 1.005 + 0.011 && at > 12.0 {
-                    assert_eq!(reading.signal, Signal::Still, "{pulses} pulses from {speed} rpm at {at} s");
+                    assert_eq!(
+                        reading.signal,
+                        Signal::Still,
+                        "{pulses} pulses from {speed} rpm at {at} s"
+                    );
                     assert_eq!(rpm(&reading), 0.0);
                 }
             }
@@ -292,11 +357,21 @@ fn signal_comes_back_after_a_loss() {
 #[test]
 fn a_parked_magnet_that_shakes_is_still() {
     for fault in [Fault::ShakeRegular, Fault::ShakeRandom] {
-        for (turned_before, low) in [(true, 0.5), (true, 0.25), (true, 0.75), (false, 0.5), (false, 0.45)] {
+        for (turned_before, low) in [
+            (true, 0.5),
+            (true, 0.25),
+            (true, 0.75),
+            (false, 0.5),
+            (false, 0.45),
+        ] {
             for pulses in [1, 2, 6] {
                 let mut capture = Capture::new(pulses).seeded(u64::from(pulses), 0.11);
                 // Six magnets are low for a fifth of the time while they turn: shaking must differ from that.
-                capture.sensor.shake_low = if pulses == 6 { f64::max(low, 0.45) } else { low };
+                capture.sensor.shake_low = if pulses == 6 {
+                    f64::max(low, 0.45)
+                } else {
+                    low
+                };
                 let before = if turned_before { 20.0 } else { 0.0 };
                 if turned_before {
                     capture = capture
@@ -311,7 +386,12 @@ fn a_parked_magnet_that_shakes_is_still() {
                     .filter(|(at, reading, _)| *at > before && reading.signal != Signal::Still)
                     .map(|(at, ..)| at)
                     .collect();
-                assert!(wrong.is_empty(), "{fault:?}, low {low}, {pulses} pulses, turned before {turned_before}: {} rows, first {:?}", wrong.len(), wrong.first());
+                assert!(
+                    wrong.is_empty(),
+                    "{fault:?}, low {low}, {pulses} pulses, turned before {turned_before}: {} rows, first {:?}",
+                    wrong.len(),
+                    wrong.first()
+                );
             }
         }
     }
@@ -326,8 +406,16 @@ fn shaking_that_begins_as_the_spindle_stops_ends_in_still() {
                     .then(Piece::steady(speed, 5.0))
                     .then(Piece::ramp(speed, 0.0, 1000.0))
                     .with(Piece::steady(0.0, 30.0), &[(fault, true)]);
-                for (at, reading, _) in capture.rows().into_iter().filter(|(at, ..)| *at > 5.0 + speed / 1000.0 + 7.0) {
-                    assert_eq!(reading.signal, Signal::Still, "{fault:?}, {pulses} pulses from {speed} rpm at {at} s");
+                for (at, reading, _) in capture
+                    .rows()
+                    .into_iter()
+                    .filter(|(at, ..)| *at > 5.0 + speed / 1000.0 + 7.0)
+                {
+                    assert_eq!(
+                        reading.signal,
+                        Signal::Still,
+                        "{fault:?}, {pulses} pulses from {speed} rpm at {at} s"
+                    );
                 }
             }
         }
@@ -347,13 +435,22 @@ fn chatter_noise_and_missed_pulses_do_not_move_the_reading() {
                 let mut capture = Capture::new(pulses);
                 prepare(&mut capture.sensor);
                 let mut wrong = 0;
-                let capture = capture.then(Piece::steady(speed, 2.0)).with(Piece::steady(speed, 60.0), &[(fault, true)]);
+                let capture = capture
+                    .then(Piece::steady(speed, 2.0))
+                    .with(Piece::steady(speed, 60.0), &[(fault, true)]);
                 let rows = capture.rows();
                 for (_, reading, _) in rows.iter().filter(|(at, ..)| *at > 2.0) {
-                    wrong += u32::from(reading.signal != Signal::Turning || (rpm(reading) / speed - 1.0).abs() > 5e-3);
+                    wrong += u32::from(
+                        reading.signal != Signal::Turning
+                            || (rpm(reading) / speed - 1.0).abs() > 5e-3,
+                    );
                 }
                 let share = f64::from(wrong) / rows.len() as f64;
-                assert!(share < 0.001, "{name}, {pulses} pulses, {speed} rpm: {:.2} % of rows wrong", 100.0 * share);
+                assert!(
+                    share < 0.001,
+                    "{name}, {pulses} pulses, {speed} rpm: {:.2} % of rows wrong",
+                    100.0 * share
+                );
             }
         }
     }
@@ -381,7 +478,10 @@ fn one_of_two_magnets_gone_is_doubtful_and_the_higher_speed_is_assumed() {
     for (at, reading, _) in capture.rows() {
         if at > 6.0 {
             assert_eq!(reading.signal, Signal::Doubtful, "at {at} s");
-            assert!(reading.quick.is_some_and(|n| n.get() > 600.0), "at {at} s: {reading:?}");
+            assert!(
+                reading.quick.is_some_and(|n| n.get() > 600.0),
+                "at {at} s: {reading:?}"
+            );
         }
         assert_ne!(reading.signal, Signal::Lost);
     }
@@ -396,19 +496,27 @@ fn a_steady_speed_that_no_step_explains_is_doubtful() {
     let only_800 = |n: Rpm| (700.0..850.0).contains(&n.get());
     let reading = tacho.reading(end, only_800);
     assert_eq!(reading.signal, Signal::Doubtful);
-    assert!((reading.quick.unwrap().get() - 800.0).abs() < 1.0, "the speed with a magnet gone: {reading:?}");
+    assert!(
+        (reading.quick.unwrap().get() - 800.0).abs() < 1.0,
+        "the speed with a magnet gone: {reading:?}"
+    );
 }
 
 #[test]
 fn a_runaway_is_shown_at_its_real_speed() {
-    let capture = Capture::new(1).then(Piece::steady(500.0, 2.0)).then(Piece::ramp(500.0, 50_000.0, 5_000.0)).then(Piece::steady(50_000.0, 1.0));
+    let capture = Capture::new(1)
+        .then(Piece::steady(500.0, 2.0))
+        .then(Piece::ramp(500.0, 50_000.0, 5_000.0))
+        .then(Piece::steady(50_000.0, 1.0));
     let last = capture.rows().last().unwrap().1;
     assert!((rpm(&last) / 50_000.0 - 1.0).abs() < 1e-3, "{last:?}");
 }
 
 #[test]
 fn the_input_limit_of_20000_pulses_a_second_is_read() {
-    let capture = Capture::new(60).then(Piece::ramp(0.0, 19_900.0, 10_000.0)).then(Piece::steady(19_900.0, 0.5));
+    let capture = Capture::new(60)
+        .then(Piece::ramp(0.0, 19_900.0, 10_000.0))
+        .then(Piece::steady(19_900.0, 0.5));
     let last = capture.rows().last().unwrap().1;
     assert!((rpm(&last) / 19_900.0 - 1.0).abs() < 1e-3, "{last:?}");
 }
@@ -421,9 +529,16 @@ fn run_up_and_coast_down_stay_within_the_true_extremes() {
             .then(Piece::steady(1200.0, 2.0))
             .then(Piece::ramp(1200.0, 300.0, 300.0))
             .then(Piece::steady(300.0, 2.0));
-        for (at, reading, _) in capture.rows().into_iter().filter(|(_, r, _)| r.signal == Signal::Turning) {
+        for (at, reading, _) in capture
+            .rows()
+            .into_iter()
+            .filter(|(_, r, _)| r.signal == Signal::Turning)
+        {
             let n = rpm(&reading);
-            assert!(n <= 1212.0 && (at < 3.0 || n >= 297.0), "{pulses} pulses at {at} s: {n}");
+            assert!(
+                n <= 1212.0 && (at < 3.0 || n >= 297.0),
+                "{pulses} pulses at {at} s: {n}"
+            );
         }
     }
 }
