@@ -122,7 +122,9 @@ fn happening(frame: &mut Frame<'_>, plan: &Plan, app: &App<'_>) {
     let (story, events) = match events {
         Some(events) => (story, events),
         None => {
-            let sentence = story.height.min(if plan.frames { 3 } else { 2 });
+            // Lines end at words: some columns stay empty.
+            let letters = app.story().chars().count() as u16;
+            let sentence = letters / story.width.saturating_sub(8).max(1) + 1;
             let [story, events] =
                 Layout::vertical([Constraint::Length(sentence), Constraint::Fill(1)]).areas(story);
             (story, events)
