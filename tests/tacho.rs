@@ -439,15 +439,23 @@ fn chatter_noise_and_missed_pulses_do_not_move_the_reading() {
                     .then(Piece::steady(speed, 2.0))
                     .with(Piece::steady(speed, 60.0), &[(fault, true)]);
                 let rows = capture.rows();
-                for (_, reading, _) in rows.iter().filter(|(at, ..)| *at > 2.0) {
+                let spacing = 60.0 / speed / f64::from(pulses);
+                for (_, reading, silence) in rows.iter().filter(|(at, ..)| *at > 2.0) {
+                    // While a pulse is missing, what silence allows goes down: that rule wins over a calm reading.
+                    let bounded = fault == Fault::Dropouts && *silence > spacing;
+                    let quick = f64::from(reading.quick.map_or(f32::NAN, |n| n.get()));
+                    let calm = if bounded { quick } else { rpm(reading) };
                     wrong += u32::from(
                         reading.signal != Signal::Turning
-                            || (rpm(reading) / speed - 1.0).abs() > 5e-3,
+                            || (calm / speed - 1.0).abs() > 2e-3
+                            || (quick / speed - 1.0).abs() > 0.05,
                     );
                 }
                 let share = f64::from(wrong) / rows.len() as f64;
+                // With one magnet, two missing pulses close together look like a slower spindle until the rhythm returns.
+                let allowed = if fault == Fault::Dropouts { 0.01 } else { 0.001 };
                 assert!(
-                    share < 0.001,
+                    share < allowed,
                     "{name}, {pulses} pulses, {speed} rpm: {:.2} % of rows wrong",
                     100.0 * share
                 );

@@ -107,7 +107,7 @@ impl Frame {
 
     fn shows_in(&self, words: &str, font: &MonoFont<'_>) -> bool {
         let size = font.character_size;
-        let (width, height) = (words.chars().count() as u32 * size.width, size.height);
+        let width = words.chars().count() as u32 * size.width;
         if words.is_empty() || width > WIDTH {
             return false;
         }

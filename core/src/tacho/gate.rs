@@ -72,6 +72,8 @@ pub(super) struct Gate {
     passage: Option<Passage>,
     /// First fall of the last reported pulse.
     reported_at: Option<Instant>,
+    /// Fall of the piece that proved it wide enough: what came before may have been noise.
+    proven_at: Option<Instant>,
     /// Width of the recent passages; zero where nothing is known.
     usual: u64,
     /// First fall of the last passage or sliver that is over.
@@ -85,6 +87,14 @@ impl Gate {
     /// Forgets the usual width: after a standstill the next passages may have any.
     pub(super) fn forget_width(&mut self) {
         self.usual = 0;
+    }
+
+    /// When the pulse that began at `at` certainly had begun.
+    pub(super) fn proven(&self, at: Instant) -> Instant {
+        match self.proven_at {
+            Some(proven) if self.reported_at == Some(at) => proven,
+            _ => at,
+        }
     }
 
     /// When a pulse began that may be under way at `now` but is not proven yet.
@@ -162,6 +172,7 @@ impl Gate {
         self.passage = Some(passage);
         (report && !too_close).then(|| {
             self.reported_at = Some(passage.first);
+            self.proven_at = Some(fell);
             Pulse {
                 at: passage.first,
                 width,

@@ -339,6 +339,9 @@ impl Tacho {
         };
         let last = self.track.last()?;
         let mut end = of_turn?.max(of_interval.unwrap_or(f32::MIN));
+        if let Some(stretch) = self.track.doubtful_interval(UNKNOWN_GAP) {
+            end = signal::slowest_end(stretch, None, None, brake);
+        }
         let under_way = self.gate.under_way(now).filter(|&fell| fell > last);
         if let Some(fell) = under_way {
             // The spindle may have come to stand with a magnet at the sensor: that passage ends no more, but it counts.
@@ -356,6 +359,7 @@ impl Tacho {
         let Some(last) = self.track.last() else {
             return Duration::MAX;
         };
+        let last = self.gate.proven(last);
         match self.gate.under_way(now).filter(|&fell| fell > last) {
             Some(fell) => fell.since(last).max(now.since(fell)),
             None => now.since(last),

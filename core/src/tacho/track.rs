@@ -35,15 +35,6 @@ struct Mark {
     index: u32,
 }
 
-/// A pulse that came whole spacings late.
-#[derive(Clone, Copy, Debug)]
-struct Late {
-    /// The spacing that was expected, s.
-    expected: f32,
-    /// How many pulses would be missing.
-    missing: u32,
-}
-
 /// A stretch of motion: an angle in revolutions and the time that it took in seconds.
 #[derive(Clone, Copy, Debug)]
 pub(super) struct Span {
@@ -69,8 +60,8 @@ pub(super) struct Track {
     window: u32,
     /// A pulse that came too early to be believed yet.
     suspect: Option<Instant>,
-    /// The newest pulse was late by whole spacings: the next one tells whether some were missing.
-    late: Option<Late>,
+    /// So many pulses are taken as missing before the newest one, though braking might explain the gap.
+    late: Option<u32>,
     /// The last pulses that were dropped as extra stood in the middle.
     extra_in_a_row: u8,
     /// One bit a magnet, newest lowest, set where its pulse was missing.
@@ -258,48 +249,48 @@ impl Track {
     /// An early pulse with an implausible width never makes the spindle faster: a magnet parked at its switching point
     /// shakes.
     pub(super) fn push(&mut self, at: Instant, plausible: bool, rejected: &mut Rejected) {
+        let late = self.late.take();
+        let overdue =
+            |track: &Track| Some(at.since(track.last()?).secs_f32() >= LATE * track.expected()?);
+        if let Some(missing) = late
+            && overdue(self) == Some(true)
+        {
+            // Late again: the spindle has become slower, and none was missing.
+            self.retreat(missing, rejected);
+        }
         let (Some(newest), Some(expected)) = (self.last(), self.expected()) else {
             return self.accept(at, 1, rejected);
         };
-        let interval = at.since(newest).secs_f32();
-        let steps = interval / expected;
-        let late = self.late.take();
-        match self.suspect.take() {
-            None if steps < EARLY && !plausible => rejected.extra += 1,
-            None if steps < EARLY => match late {
-                // The rhythm from before the long gap goes on: the gap was missing pulses, not a slower spindle.
-                Some(late) if alike(interval, late.expected) => {
-                    self.advance_newest(late.missing, rejected);
-                    self.accept(at, 1, rejected);
-                }
-                _ => self.suspect = Some(at),
-            },
-            None => self.accept_late(at, steps, expected, rejected),
-            Some(suspect) => {
-                let halves_alike = alike(
-                    suspect.since(newest).secs_f32(),
-                    at.since(suspect).secs_f32(),
-                );
-                if halves_alike && plausible && (steps < EARLY || self.extra_in_a_row > 0) {
-                    // Two early intervals that agree, within one spacing or time and again: the spindle is faster.
-                    self.extra_in_a_row = 0;
-                    self.accept(suspect, 1, rejected);
-                    self.accept(at, 1, rejected);
-                    return;
-                }
-                rejected.extra += 1;
-                if steps < EARLY {
-                    self.suspect = Some(at);
-                } else {
-                    self.extra_in_a_row = u8::from(halves_alike);
-                    self.accept_late(at, steps, expected, rejected);
-                }
-            }
+        let steps = at.since(newest).secs_f32() / expected;
+        let Some(suspect) = self.suspect.take() else {
+            return match steps < EARLY {
+                true if plausible => self.suspect = Some(at),
+                true => rejected.extra += 1,
+                false => self.accept_late(at, steps, expected, rejected),
+            };
+        };
+        let halves_alike = alike(
+            suspect.since(newest).secs_f32(),
+            at.since(suspect).secs_f32(),
+        );
+        if halves_alike && plausible && (steps < EARLY || self.extra_in_a_row > 0) {
+            // Two early intervals that agree, within one spacing or time and again: the spindle is faster.
+            self.extra_in_a_row = 0;
+            self.accept(suspect, 1, rejected);
+            self.accept(at, 1, rejected);
+            return;
+        }
+        rejected.extra += 1;
+        if steps < EARLY {
+            self.suspect = Some(at);
+        } else {
+            self.extra_in_a_row = u8::from(halves_alike);
+            self.accept_late(at, steps, expected, rejected);
         }
     }
 
-    /// Takes a pulse that is not early. Where not even the hardest braking explains the gap, pulses are missing;
-    /// where braking might, the next pulse tells.
+    /// Takes a pulse that is not early. Whole spacings late, it is taken as a sign of missing pulses, which is the higher
+    /// speed; where braking might explain the gap as well, the next pulse tells.
     fn accept_late(&mut self, at: Instant, steps: f32, expected: f32, rejected: &mut Rejected) {
         let whole = libm::roundf(steps);
         if steps < LATE || (steps - whole).abs() > MISSING_WITHIN {
@@ -311,20 +302,30 @@ impl Track {
         let speed = 1.0 / (expected * self.pulses as f32) - self.brake * expected / 2.0;
         let braked = (self.brake * interval).min(speed);
         let least = interval * (speed - braked / 2.0) * self.pulses as f32;
-        if least > 1.0 + MISSING_WITHIN {
-            self.accept(at, 1 + missing, rejected);
-        } else {
-            self.accept(at, 1, rejected);
-            self.late = Some(Late { expected, missing });
+        self.accept(at, 1 + missing, rejected);
+        if least < 1.0 + MISSING_WITHIN {
+            self.late = Some(missing);
         }
     }
 
-    /// The newest mark turns out to be `missing` magnets further on.
-    fn advance_newest(&mut self, missing: u32, rejected: &mut Rejected) {
+    /// No pulses were missing before the newest mark after all.
+    fn retreat(&mut self, missing: u32, rejected: &mut Rejected) {
         if let Some(newest) = self.marks.back_mut() {
-            newest.index += missing;
+            newest.index -= missing;
+            self.window = self.window.min(newest.index);
         }
-        self.miss(missing, rejected);
+        rejected.missing = rejected.missing.saturating_sub(missing);
+        self.missed = (self.missed >> 1).checked_shr(missing).unwrap_or(0) << 1;
+    }
+
+    /// The last interval, if it may have been one slow spacing as well as several with pulses missing.
+    pub(super) fn doubtful_interval(&self, unknown: f32) -> Option<Span> {
+        self.late?;
+        let newest = self.marks.back()?;
+        let before = self.marks.get(self.marks.len().checked_sub(2)?)?;
+        let time = newest.at.since(before.at).secs_f32();
+        let angle = self.placement.angle(before.index, before.index + 1) / unknown;
+        (time > 0.0).then_some(Span { angle, time })
     }
 
     fn miss(&mut self, missing: u32, rejected: &mut Rejected) {
