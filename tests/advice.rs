@@ -9,7 +9,7 @@ use rimrate_core::machine::{
     ABOVE_PLATE, Drive, HolderKind, HolderSpec, Machine, MachineKind, MachineSpec, RangeSpec,
     SensorSpec, StepSpec,
 };
-use rimrate_core::setup::{Diameter, Setup};
+use rimrate_core::setup::{Details, Diameter, Setup};
 use rimrate_core::time::Instant;
 use rimrate_core::trade::{Coolant, Material, Operation, Tool, cutting_speed};
 use rimrate_core::units::{Rpm, UnitSystem};
@@ -22,6 +22,7 @@ fn any_machine() -> impl Strategy<Value = Machine> {
         let steps = rpms.iter().map(|&n| StepSpec {
             label: format!("step {n}").parse().unwrap(),
             rpm: n as f32,
+            ..StepSpec::default()
         });
         (steps.collect::<Vec<_>>(), Vec::new())
     });
@@ -37,6 +38,7 @@ fn any_machine() -> impl Strategy<Value = Machine> {
             label: format!("range {low}").parse().unwrap(),
             low_rpm: low as f32,
             high_rpm: high as f32,
+            ..RangeSpec::default()
         });
         (Vec::new(), ranges.collect::<Vec<_>>())
     });
@@ -60,6 +62,10 @@ fn any_machine() -> impl Strategy<Value = Machine> {
                 top_speed_rpm: above.map(|a| fastest * a),
                 brake_rpm_per_s: None,
                 slowest_rpm: None,
+                motor: None,
+                feeds_mm: Default::default(),
+                half_nut_stop_s: None,
+                spindle_nose: None,
                 sensor: SensorSpec { pulses: 2 },
                 steps: steps.into_iter().collect(),
                 ranges: ranges.into_iter().collect(),
@@ -95,6 +101,7 @@ fn any_setup() -> impl Strategy<Value = Setup> {
                 diameter: Diameter::nearest(mm),
                 holder,
                 cap: cap.map(rpm),
+                details: Details::NONE,
             },
         )
 }
@@ -447,6 +454,7 @@ fn in_a_gap_between_ranges_the_top_of_the_lower_one_is_set() {
         label: label.parse().unwrap(),
         low_rpm,
         high_rpm,
+        ..RangeSpec::default()
     };
     let spec = MachineSpec {
         name: "gap".parse().unwrap(),
@@ -455,6 +463,10 @@ fn in_a_gap_between_ranges_the_top_of_the_lower_one_is_set() {
         top_speed_rpm: None,
         brake_rpm_per_s: None,
         slowest_rpm: None,
+        motor: None,
+        feeds_mm: Default::default(),
+        half_nut_stop_s: None,
+        spindle_nose: None,
         sensor: SensorSpec { pulses: 1 },
         steps: Default::default(),
         ranges: [range("low", 50.0, 200.0), range("high", 600.0, 2000.0)]

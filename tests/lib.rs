@@ -4,7 +4,7 @@ use std::path::Path;
 
 use rimrate_core::instrument::{Event, Instrument, Poll};
 use rimrate_core::machine::Machine;
-use rimrate_core::setup::{Diameter, Setup};
+use rimrate_core::setup::{Details, Diameter, Setup};
 use rimrate_core::tacho::{Reading, Signal};
 use rimrate_core::time::{Duration, Edge, Instant};
 use rimrate_core::trade::{Coolant, Material, Operation, Tool};
@@ -31,6 +31,7 @@ pub fn bar(mm: f32) -> Setup {
         diameter: Diameter::nearest(mm),
         holder: 0,
         cap: None,
+        details: Details::NONE,
     }
 }
 

@@ -115,6 +115,10 @@ fn wordy() -> Machine {
         top_speed_rpm: None,
         brake_rpm_per_s: None,
         slowest_rpm: None,
+        motor: None,
+        feeds_mm: Default::default(),
+        half_nut_stop_s: None,
+        spindle_nose: None,
         sensor: SensorSpec { pulses: 2 },
         steps: [(100.0, "1"), (12_345.0, "2")]
             .into_iter()
@@ -123,6 +127,7 @@ fn wordy() -> Machine {
                     .parse()
                     .unwrap(),
                 rpm,
+                ..StepSpec::default()
             })
             .collect(),
         ranges: Default::default(),

@@ -35,6 +35,8 @@ fn advice(low: Option<f32>) -> Advice {
             label: "a step".parse().unwrap(),
             rpm: rpm(300.0),
         }),
+        cut: Default::default(),
+        cautions: Default::default(),
     }
 }
 

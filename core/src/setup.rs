@@ -1,8 +1,14 @@
 //! What the operator has chosen for the cut.
 
+mod details;
+
 use crate::error::Rejected;
 use crate::trade::{Coolant, Material, Operation, Tool};
 use crate::units::{Length, Rpm, UnitError};
+
+pub use details::{
+    Bar, Details, HalfNut, InsertBox, Jaws, Life, Ra, Support, Thread, lead, length,
+};
 
 /// The largest diameter that the edge meets: 0.1 mm to 2000 mm.
 #[derive(Clone, Copy, Debug, PartialEq, PartialOrd)]
@@ -79,6 +85,8 @@ pub struct Setup {
     pub holder: u8,
     /// The highest speed that the operator or instructor allows.
     pub cap: Option<Rpm>,
+    /// What the operator has added: the cut, the finish, the life, the bar, the thread.
+    pub details: Details,
 }
 
 impl Setup {
@@ -91,6 +99,7 @@ impl Setup {
         diameter: Diameter(Length::INCH),
         holder: 0,
         cap: None,
+        details: Details::NONE,
     };
 }
 

@@ -286,7 +286,7 @@ fn checked(value: f32, (low, high): (f32, f32)) -> Result<f32, UnitError> {
 }
 
 /// Splits `1 1/2 in` into its number and its unit.
-fn split(s: &str) -> Result<(f32, &str), UnitError> {
+pub(crate) fn split(s: &str) -> Result<(f32, &str), UnitError> {
     let s = s.trim();
     if s.is_empty() {
         return Err(UnitError::Empty);

@@ -58,6 +58,7 @@ impl StartSpec {
             diameter: Diameter::new(length).map_err(|e| e.within("start"))?,
             holder: self.holder,
             cap,
+            details: setup::Details::NONE,
         })
     }
 }

@@ -4,7 +4,7 @@ use std::path::{Path, PathBuf};
 
 use rimrate_core::machine::{Drive, Machine};
 use rimrate_core::panel::Knob;
-use rimrate_core::setup::{self, Diameter, Setup};
+use rimrate_core::setup::{self, Details, Diameter, Setup};
 use rimrate_core::tacho::Signal;
 use rimrate_core::trade::{Coolant, Material, Operation, Tool};
 use rimrate_core::units::Rpm;
@@ -392,6 +392,7 @@ impl WrittenSetup {
             diameter,
             holder,
             cap,
+            details: Details::NONE,
         })
     }
 }

@@ -10,7 +10,12 @@ use crate::units::{Rpm, SurfaceSpeed};
 
 /// The spindle speed at which the edge meets `diameter` with cutting speed `v`.
 pub fn spindle_speed(v: SurfaceSpeed, diameter: Diameter) -> Rpm {
-    Rpm::saturating(1000.0 * v.m_min() / (PI * diameter.mm()))
+    spindle_speed_of(v.m_min(), diameter)
+}
+
+/// As [`spindle_speed`], from a computed `v` in m/min.
+pub fn spindle_speed_of(v: f32, diameter: Diameter) -> Rpm {
+    Rpm::saturating(1000.0 * v / (PI * diameter.mm()))
 }
 
 /// The cutting speed in m/min at `diameter` when the spindle turns at `n`; 0 at rest.

@@ -3,6 +3,9 @@
 //! [`MachineSpec`] is what stands in a profile file, unchecked; [`Machine`] is what the rest of core works with.
 //! The only way from one to the other is [`Machine::new`], so a `Machine` is always sound.
 
+mod motor;
+mod spec;
+
 use core::num::NonZeroU16;
 
 use heapless::{String, Vec};
@@ -10,12 +13,20 @@ use heapless::{String, Vec};
 use crate::error::{Rejected, text};
 use crate::units::{Decimal, Rpm, UnitSystem};
 
+pub use motor::{DEFAULT_EFFICIENCY, Motor};
+pub use spec::{
+    HolderKind, HolderSpec, MachineKind, MachineSpec, MotorKind, MotorSpec, RangeSpec, SensorSpec,
+    SpindleNose, StepSpec,
+};
+
 /// The most steps that a profile may list.
 pub const MAX_STEPS: usize = 32;
 /// The most ranges of a variable drive.
 pub const MAX_RANGES: usize = 8;
 /// The most workholders that a profile may list.
 pub const MAX_HOLDERS: usize = 10;
+/// The most feeds that a profile may list.
+pub const MAX_FEEDS: usize = 48;
 /// The most pulses in one revolution that the sensor may give; 120-tooth discs are published practice.
 pub const MAX_PULSES: u16 = 240;
 
@@ -29,189 +40,6 @@ pub const BELOW_PLATE: f32 = 0.85;
 /// Label of a step or range as the machine's own plates show it; it may name several levers.
 pub type Label = String<32>;
 
-/// What kind of machine the box sits on.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
-#[cfg_attr(feature = "defmt", derive(defmt::Format))]
-#[cfg_attr(
-    feature = "serde",
-    derive(serde::Serialize, serde::Deserialize),
-    serde(rename_all = "kebab-case")
-)]
-pub enum MachineKind {
-    /// The work turns.
-    Lathe,
-    /// The cutter turns, the work is clamped.
-    Mill,
-    /// The drill turns, the work is clamped.
-    DrillPress,
-}
-
-/// What holds the work, or the tool where the tool turns.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
-#[cfg_attr(feature = "defmt", derive(defmt::Format))]
-#[cfg_attr(
-    feature = "serde",
-    derive(serde::Serialize, serde::Deserialize),
-    serde(rename_all = "kebab-case")
-)]
-pub enum HolderKind {
-    /// Self-centring chuck.
-    ThreeJaw,
-    /// Independent-jaw chuck.
-    FourJaw,
-    /// Collet chuck.
-    Collet,
-    /// Faceplate with clamped work.
-    Faceplate,
-    /// Between centres with a driver.
-    BetweenCentres,
-    /// Arbor or mandrel.
-    Arbor,
-    /// Drill chuck.
-    DrillChuck,
-    /// Taper straight in the spindle.
-    Taper,
-}
-
-impl HolderKind {
-    /// Every kind.
-    pub const ALL: [HolderKind; 8] = [
-        HolderKind::ThreeJaw,
-        HolderKind::FourJaw,
-        HolderKind::Collet,
-        HolderKind::Faceplate,
-        HolderKind::BetweenCentres,
-        HolderKind::Arbor,
-        HolderKind::DrillChuck,
-        HolderKind::Taper,
-    ];
-
-    /// The word that a profile and a command line use.
-    pub const fn id(self) -> &'static str {
-        match self {
-            HolderKind::ThreeJaw => "three-jaw",
-            HolderKind::FourJaw => "four-jaw",
-            HolderKind::Collet => "collet",
-            HolderKind::Faceplate => "faceplate",
-            HolderKind::BetweenCentres => "between-centres",
-            HolderKind::Arbor => "arbor",
-            HolderKind::DrillChuck => "drill-chuck",
-            HolderKind::Taper => "taper",
-        }
-    }
-
-    /// The trade's name.
-    pub const fn name(self) -> &'static str {
-        match self {
-            HolderKind::ThreeJaw => "three-jaw chuck",
-            HolderKind::FourJaw => "four-jaw chuck",
-            HolderKind::Collet => "collet",
-            HolderKind::Faceplate => "faceplate",
-            HolderKind::BetweenCentres => "between centres",
-            HolderKind::Arbor => "arbor",
-            HolderKind::DrillChuck => "drill chuck",
-            HolderKind::Taper => "spindle taper",
-        }
-    }
-}
-
-/// One speed of a stepped drive, as written in a profile.
-#[derive(Clone, Debug, PartialEq)]
-#[cfg_attr(
-    feature = "serde",
-    derive(serde::Serialize, serde::Deserialize),
-    serde(deny_unknown_fields)
-)]
-pub struct StepSpec {
-    /// What the machine's plates say, e.g. `B-2, back gear in`.
-    pub label: Label,
-    /// Speed on the plate, rev/min.
-    pub rpm: f32,
-}
-
-/// One range of a variable drive, as written in a profile.
-#[derive(Clone, Debug, PartialEq)]
-#[cfg_attr(
-    feature = "serde",
-    derive(serde::Serialize, serde::Deserialize),
-    serde(deny_unknown_fields)
-)]
-pub struct RangeSpec {
-    /// What the machine's plates say, e.g. `low belt`.
-    pub label: Label,
-    /// Slowest speed of the range, rev/min.
-    pub low_rpm: f32,
-    /// Fastest speed of the range, rev/min.
-    pub high_rpm: f32,
-}
-
-/// One workholder, as written in a profile.
-#[derive(Clone, Debug, PartialEq)]
-#[cfg_attr(
-    feature = "serde",
-    derive(serde::Serialize, serde::Deserialize),
-    serde(deny_unknown_fields)
-)]
-pub struct HolderSpec {
-    /// Which kind.
-    pub kind: HolderKind,
-    /// What this shop calls it, to tell two of a kind apart; the kind's name where missing.
-    #[cfg_attr(feature = "serde", serde(default))]
-    pub name: Option<String<24>>,
-    /// The speed stamped on it by its maker, rev/min; missing where nothing is stamped. Never guess one.
-    #[cfg_attr(feature = "serde", serde(default))]
-    pub rated_rpm: Option<f32>,
-}
-
-/// The sensor, as written in a profile.
-#[derive(Clone, Debug, PartialEq)]
-#[cfg_attr(
-    feature = "serde",
-    derive(serde::Serialize, serde::Deserialize),
-    serde(deny_unknown_fields)
-)]
-pub struct SensorSpec {
-    /// Pulses in one revolution of the spindle.
-    pub pulses: u16,
-}
-
-/// A machine's profile as written, before any check.
-#[derive(Clone, Debug, PartialEq)]
-#[cfg_attr(
-    feature = "serde",
-    derive(serde::Serialize, serde::Deserialize),
-    serde(deny_unknown_fields)
-)]
-pub struct MachineSpec {
-    /// What this shop calls the machine.
-    pub name: String<40>,
-    /// Lathe, mill or drill press.
-    pub kind: MachineKind,
-    /// Units that its people read.
-    #[cfg_attr(feature = "serde", serde(default))]
-    pub units: UnitSystem,
-    /// Top speed allowed by the machine's maker, rev/min; where missing, 1.06 of the fastest plate speed.
-    #[cfg_attr(feature = "serde", serde(default))]
-    pub top_speed_rpm: Option<f32>,
-    /// Hardest stop that the machine can make, rev/min in a second; where missing 3000 (foot brake, plug reversal).
-    #[cfg_attr(feature = "serde", serde(default))]
-    pub brake_rpm_per_s: Option<f32>,
-    /// Slowest speed worth reading, rev/min; where missing 10.
-    #[cfg_attr(feature = "serde", serde(default))]
-    pub slowest_rpm: Option<f32>,
-    /// The sensor on the spindle.
-    pub sensor: SensorSpec,
-    /// Speeds of a stepped drive, slowest first; empty for a variable drive.
-    #[cfg_attr(feature = "serde", serde(default, rename = "step"))]
-    pub steps: Vec<StepSpec, MAX_STEPS>,
-    /// Ranges of a variable drive, slowest first; empty for a stepped drive.
-    #[cfg_attr(feature = "serde", serde(default, rename = "range"))]
-    pub ranges: Vec<RangeSpec, MAX_RANGES>,
-    /// The workholders.
-    #[cfg_attr(feature = "serde", serde(rename = "holder"))]
-    pub holders: Vec<HolderSpec, MAX_HOLDERS>,
-}
-
 /// One speed of a stepped drive.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Step {
@@ -219,6 +47,8 @@ pub struct Step {
     pub label: Label,
     /// Speed on the plate.
     pub rpm: Rpm,
+    /// The motor's power in this step, kW, where it has one of its own.
+    pub kw: Option<f32>,
 }
 
 /// One range of a variable drive.
@@ -230,6 +60,10 @@ pub struct Range {
     pub low: Rpm,
     /// Fastest speed.
     pub high: Rpm,
+    /// Where constant torque ends and constant power begins.
+    pub base: Rpm,
+    /// Slowest speed for long, where the motor's cooling sets one.
+    pub cool: Option<Rpm>,
 }
 
 /// How the spindle's speed is chosen.
@@ -264,6 +98,10 @@ pub struct Machine {
     pulses: NonZeroU16,
     brake_rpm_per_s: f32,
     slowest: Rpm,
+    motor: Option<Motor>,
+    feeds: Vec<f32, MAX_FEEDS>,
+    half_nut_stop_s: Option<f32>,
+    nose: SpindleNose,
 }
 
 const SPEED: (f32, f32) = (1.0, 100_000.0);
@@ -298,6 +136,7 @@ impl Machine {
                 top
             }
         };
+        let motor = motor::motor(&spec)?;
         Ok(Machine {
             name: named("name", spec.name)?,
             kind: spec.kind,
@@ -307,6 +146,13 @@ impl Machine {
             pulses: pulses(spec.sensor.pulses).map_err(|e| e.within("sensor"))?,
             brake_rpm_per_s: braking(spec.brake_rpm_per_s.unwrap_or(DEFAULT_BRAKE_RPM_PER_S))?,
             slowest: slowest(spec.slowest_rpm.unwrap_or(DEFAULT_SLOWEST_RPM))?,
+            motor,
+            feeds: feeds(spec.feeds_mm)?,
+            half_nut_stop_s: spec
+                .half_nut_stop_s
+                .map(|t| in_range("half_nut_stop_s", t, (0.1, 60.0), "s"))
+                .transpose()?,
+            nose: spec.spindle_nose.unwrap_or_default(),
             drive,
         })
     }
@@ -348,6 +194,23 @@ impl Machine {
         self.slowest
     }
 
+    /// The motor, where the profile has it.
+    pub fn motor(&self) -> Option<&Motor> {
+        self.motor.as_ref()
+    }
+    /// Feeds of the gearbox, mm per revolution, finest first; empty where the feed is by hand.
+    pub fn feeds(&self) -> &[f32] {
+        &self.feeds
+    }
+    /// Time from switching off to standstill, s, where somebody has taken it.
+    pub fn half_nut_stop_s(&self) -> Option<f32> {
+        self.half_nut_stop_s
+    }
+    /// How the chuck sits on the spindle.
+    pub fn nose(&self) -> SpindleNose {
+        self.nose
+    }
+
     /// Finds a holder by this shop's name for it, or by its kind where only one is of that kind.
     pub fn holder_named(&self, word: &str) -> Option<u8> {
         let position = |found: &dyn Fn(&Holder) -> bool| self.holders.iter().position(found);
@@ -357,6 +220,27 @@ impl Machine {
             .then(|| position(&|h| h.kind.id() == word))
             .flatten();
         by_name.or(by_kind).and_then(|i| u8::try_from(i).ok())
+    }
+
+    /// The step that the spindle seems to turn in: of those that explain the speed the nearest, in ratio; `None` for a
+    /// variable drive and for a speed that no step explains.
+    pub fn step_at(&self, speed: Rpm) -> Option<&Step> {
+        let Drive::Stepped(steps) = &self.drive else {
+            return None;
+        };
+        // A loaded spindle runs below its plate far more often than above it.
+        let apart = |s: &Step| {
+            let ratio = speed.get() / s.rpm.get().max(f32::MIN_POSITIVE);
+            if ratio > 1.0 {
+                ratio
+            } else {
+                1.0 / ratio.max(f32::MIN_POSITIVE)
+            }
+        };
+        steps
+            .iter()
+            .filter(|s| (s.rpm.scaled(BELOW_PLATE)..=s.rpm.scaled(ABOVE_PLATE)).contains(&speed))
+            .reduce(|a, b| if apart(b) < apart(a) { b } else { a })
     }
 
     /// Whether some step or range, loaded or free, would turn the spindle at this speed.
@@ -405,7 +289,16 @@ pub fn slowest(rpm: f32) -> Result<Rpm, Rejected> {
     in_range("slowest_rpm", rpm, (1.0, 1000.0), "rpm").map(Rpm::saturating)
 }
 
-fn in_range(field: &str, value: f32, (low, high): (f32, f32), unit: &str) -> Result<f32, Rejected> {
+fn in_range(field: &str, value: f32, range: (f32, f32), unit: &str) -> Result<f32, Rejected> {
+    in_range_of(format_args!("{field}"), value, range, unit)
+}
+
+fn in_range_of(
+    field: core::fmt::Arguments<'_>,
+    value: f32,
+    (low, high): (f32, f32),
+    unit: &str,
+) -> Result<f32, Rejected> {
     if (low..=high).contains(&value) {
         Ok(value)
     } else {
@@ -478,7 +371,11 @@ fn stepped(specs: &[StepSpec]) -> Result<Vec<Step, MAX_STEPS>, Rejected> {
             )));
         }
         // As many places as the specification has.
-        let _ = steps.push(Step { label, rpm });
+        let _ = steps.push(Step {
+            label,
+            rpm,
+            kw: spec.kw,
+        });
     }
     Ok(steps)
 }
@@ -517,9 +414,40 @@ fn variable(specs: &[RangeSpec]) -> Result<Vec<Range, MAX_RANGES>, Rejected> {
                 ),
             )));
         }
-        let _ = ranges.push(Range { label, low, high });
+        let within = |field, rpm: Option<f32>| {
+            rpm.map(|n| in_range(field, n, (spec.low_rpm, spec.high_rpm), "rpm, the range's"))
+                .transpose()
+                .map(|n| n.map(Rpm::saturating))
+        };
+        let base = within("base_rpm", spec.base_rpm).map_err(inside)?;
+        let cool = within("cool_rpm", spec.cool_rpm).map_err(inside)?;
+        let _ = ranges.push(Range {
+            label,
+            low,
+            high,
+            base: base.unwrap_or(high),
+            cool,
+        });
     }
     Ok(ranges)
+}
+
+fn feeds(specs: Vec<f32, MAX_FEEDS>) -> Result<Vec<f32, MAX_FEEDS>, Rejected> {
+    let mut before = 0.0;
+    for (i, &mm) in specs.iter().enumerate() {
+        let field = format_args!("feeds_mm[{i}]");
+        let mm = in_range_of(field, mm, (0.005, 10.0), "mm per revolution")?;
+        if mm <= before {
+            return Err(Rejected::new(
+                field,
+                mm,
+                "is not coarser than the feed before it",
+                format_args!("above {before} mm, finest first"),
+            ));
+        }
+        before = mm;
+    }
+    Ok(specs)
 }
 
 fn holders(specs: Vec<HolderSpec, MAX_HOLDERS>) -> Result<Vec<Holder, MAX_HOLDERS>, Rejected> {

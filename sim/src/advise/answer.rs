@@ -1,0 +1,468 @@
+//! The answer, as text that explains itself or as JSON.
+
+use std::fmt::Write as _;
+
+use rimrate_core::advice::{Advice, Bound, Caution, FAST_ABOVE, FeedFrom, Pick, Setting, Side};
+use rimrate_core::machine::{Drive, Holder, Machine};
+use rimrate_core::physics::cutting_speed::surface_speed_m_min;
+use rimrate_core::setup::{HalfNut, Setup, Support};
+use rimrate_core::trade::{Coolant, CuttingSpeed};
+use rimrate_core::units::{Decimal, Rpm, SurfaceSpeed, UnitSystem};
+use serde_json::{Value, json};
+
+pub(super) struct Answer<'a> {
+    pub(super) setup: &'a Setup,
+    pub(super) machine: &'a Machine,
+    pub(super) advice: &'a Advice,
+    pub(super) cutting: &'a CuttingSpeed,
+}
+
+/// A number for people, with so many places at the most.
+fn n(value: f32, decimals: u32) -> Decimal {
+    Decimal { value, decimals }
+}
+
+/// A number for JSON, with three significant places behind the point.
+fn round(x: f32) -> f64 {
+    (f64::from(x) * 1000.0).round() / 1000.0
+}
+
+fn rpm(x: Rpm) -> f64 {
+    (f64::from(x.get()) * 100.0).round() / 100.0
+}
+
+impl Answer<'_> {
+    fn holder(&self) -> Option<&Holder> {
+        self.machine.holders().get(usize::from(self.setup.holder))
+    }
+
+    fn stated(&self) -> SurfaceSpeed {
+        self.advice.surface_speed().unwrap_or(self.cutting.ours)
+    }
+
+    pub(super) fn json(&self) -> Value {
+        let (setup, advice, cut) = (self.setup, self.advice, &self.advice.cut);
+        let window = &advice.window;
+        let bounds: Vec<Value> = advice
+            .bounds
+            .iter()
+            .map(|b| {
+                json!({
+                    "rpm": rpm(b.at),
+                    "reason": b.reason.code(),
+                    "kind": b.kind.code(),
+                    "side": match b.side { Side::Upper => "upper", Side::Lower => "lower" },
+                    "text": b.to_string(),
+                })
+            })
+            .collect();
+        let setting = |s: &Setting| json!({ "label": s.label.as_str(), "rpm": rpm(s.rpm) });
+        let (pick, nearest) = match &advice.pick {
+            Pick::Set(s) => (setting(s), Value::Null),
+            Pick::TooFast {
+                nearest,
+                over_percent,
+            } => {
+                let mut nearest = setting(nearest);
+                nearest["over_percent"] = json!(round(*over_percent));
+                (Value::Null, nearest)
+            }
+            Pick::NeedsCap | Pick::NoBasis(_) => (Value::Null, Value::Null),
+        };
+        let set = advice.pick.setting().map(|s| s.rpm);
+        let edge = cut.edge.as_ref().map(|e| {
+            json!({
+                "from": if e.from_box { "box" } else { "table" },
+                "stated_m_min": round(e.stated.m_min()),
+                "stated_min": round(e.stated_min),
+                "exponent_range": [round(e.n.0), round(e.n.1)],
+                "wanted_min": e.wanted_min.map(round),
+                "exponent": e.wanted_min.map(|_| round(e.n.1)),
+                "speed_m_min": e.for_wanted.map(round),
+                "slowest_useful_m_min": e.slowest_useful.map(round),
+                "expected_min": set.map(|s| round(e.expected_min(surface_speed_m_min(s, setup.diameter)))),
+                "reached": e.wanted_min.map(|_| !e.life_given_up()),
+            })
+        });
+        let per_rev = cut.feed.and_then(|f| f.per_rev);
+        json!({
+            "material": setup.material.id(),
+            "tool": setup.tool.id(),
+            "operation": setup.operation.id(),
+            "coolant": setup.coolant.id(),
+            "diameter_mm": setup.diameter.mm(),
+            "machine": self.machine.name(),
+            "holder": self.holder().map(|h| h.name.as_str()),
+            "surface_speed_m_min": round(self.stated().m_min()),
+            "surface_speed_range_m_min": [round(self.cutting.range.0.m_min()), round(self.cutting.range.1.m_min())],
+            "basis": self.cutting.how.to_string(),
+            "window_rpm": {
+                "low": window.low.map_or(0.0, |b| rpm(b.at)),
+                "best": rpm(window.best()),
+                "high": rpm(window.high.at),
+            },
+            "held_by": window.high.reason.code(),
+            "bounds": bounds,
+            "pick": pick,
+            "nearest": nearest,
+            "needs_cap": advice.pick == Pick::NeedsCap,
+            "conflict": window.conflict(),
+            "edge_life": edge,
+            "feed": cut.feed.map(|f| json!({
+                "mm_per_rev": f.per_rev.map(round),
+                "mm_per_tooth": f.per_tooth.map(round),
+                "mm_per_min": per_rev.zip(set).map(|(f, n)| round(f * n.get())),
+                "from": f.from.code(),
+                "of_gearbox": f.of_gearbox,
+                "by_hand": f.by_hand,
+            })),
+            "load": cut.load.map(|l| json!({
+                "force_n": l.force_n.map(round),
+                "torque_nm": round(l.torque_nm),
+                "power_kw": set.map(|n| round(l.power_kw(n))),
+                "in_range": l.in_range,
+            })),
+            "depth_limit_mm": cut.depth_limit_mm.map(round),
+            "finish": cut.finish.map(|f| json!({
+                "ra_um": round(f.ra_um),
+                "rt_um": round(f.rt_um),
+                "nose_radius_mm": round(f.nose_mm),
+                "nose_assumed": f.nose_assumed,
+            })),
+            "time_min": cut.time_min.map(round),
+            "removal_cm3_min": cut.removal_cm3_min.map(round),
+            "thread": cut.thread.map(|t| json!({
+                "opened_rpm": rpm(t.opened),
+                "closed_rpm": rpm(t.closed),
+                "stop_s": round(t.stop_s),
+                "stop_assumed": t.stop_assumed,
+            })),
+            "hand_feed": cut.hand.map(|h| json!({
+                "mm_per_min": round(h.mm_per_min),
+                "s_per_10_mm": round(h.s_per_10_mm),
+            })),
+            "thrust_n": cut.thrust_n.map(round),
+            "stick_out": cut.bar.map(|b| json!({
+                "length_per_diameter": round(b.ratio),
+                "support": b.support.id(),
+                "fastest_rpm": rpm(b.fastest),
+                "too_slender": b.too_slender(),
+            })),
+            "cautions": advice.cautions.iter().map(Caution::to_string).collect::<Vec<_>>(),
+            "caution_codes": advice.cautions.iter().map(Caution::code).collect::<Vec<_>>(),
+        })
+    }
+
+    pub(super) fn text(&self) -> String {
+        let mut text = String::new();
+        let mut say = |word: &str, line: String| {
+            // Writing into a String cannot fail.
+            let _ = writeln!(text, "{word:<15}{line}");
+        };
+        self.head(&mut say);
+        self.setting(&mut say);
+        self.cut(&mut say);
+        say("bounds", self.bounds());
+        let (last, mind) = match self.advice.cautions.split_last() {
+            Some((last, rest)) => (Some(last), rest),
+            None => (None, &[][..]),
+        };
+        for (i, caution) in mind.iter().enumerate() {
+            let line = match last {
+                // What is always said shares the last line.
+                Some(last) if i + 1 == mind.len() => format!("{caution} {last}"),
+                _ => caution.to_string(),
+            };
+            say("caution", line);
+        }
+        text
+    }
+
+    fn head(&self, say: &mut dyn FnMut(&str, String)) {
+        let setup = self.setup;
+        let coolant = match setup.coolant {
+            Coolant::Flood => "with cutting fluid",
+            Coolant::Dry => "dry",
+        };
+        let held = match self.holder() {
+            Some(Holder { name, rated, .. }) => match rated {
+                Some(n) => format!("{name}, stamped {n}"),
+                None => format!("{name}, which has no stamped speed"),
+            },
+            None => "nothing".to_owned(),
+        };
+        say(
+            "cut",
+            format!(
+                "{}, {}, {}, {} {}, {coolant}",
+                setup.material.name(),
+                setup.tool.name(),
+                setup.operation.name(),
+                setup.operation.diameter_word(),
+                setup.diameter.length().display(self.machine.units()),
+            ),
+        );
+        say(
+            "machine",
+            format!("{}, held by {held}", self.machine.name()),
+        );
+        let v = self.stated();
+        let from = match &self.advice.cut.edge {
+            Some(e) if e.from_box => {
+                format!("from the insert's box, for {} min", n(e.stated_min, 0))
+            }
+            _ => {
+                let row = self.cutting.how.row;
+                let factors: Vec<String> = self
+                    .cutting
+                    .how
+                    .factors
+                    .iter()
+                    .map(|f| format!("x {:.2} {}", f.by, f.what))
+                    .collect();
+                let by = if factors.is_empty() {
+                    String::new()
+                } else {
+                    format!(" of {} {}", row.operation, factors.join(", "))
+                };
+                format!(
+                    "from {} to {}{by}; {}",
+                    n(row.range.0.m_min(), 1),
+                    row.range.1,
+                    row.source
+                )
+            }
+        };
+        say(
+            "cutting speed",
+            format!(
+                "{} ({}), {from}",
+                v.display(UnitSystem::Metric),
+                v.display(UnitSystem::Inch)
+            ),
+        );
+    }
+
+    fn setting(&self, say: &mut dyn FnMut(&str, String)) {
+        let (setup, advice) = (self.setup, self.advice);
+        say(
+            "best speed",
+            format!(
+                "{}, held by the {}",
+                advice.window.best(),
+                advice.window.high.reason.words()
+            ),
+        );
+        match &advice.pick {
+            Pick::Set(s) => {
+                let v = surface_speed_m_min(s.rpm, setup.diameter);
+                let how = match self.machine.drive() {
+                    Drive::Stepped(_) => "set the step",
+                    Drive::Variable(_) => "set the drive",
+                };
+                let (low, high) = (advice.slow_below(), self.right_until());
+                say(
+                    how,
+                    format!(
+                        "{} at {}: the edge then runs at {v:.1} m/min; reads right from {low} to {high}",
+                        s.label, s.rpm
+                    ),
+                );
+            }
+            Pick::TooFast {
+                nearest,
+                over_percent,
+            } => say(
+                "set no step",
+                format!(
+                    "even the slowest, {} at {}, is {over_percent:.0} % too fast",
+                    nearest.label, nearest.rpm
+                ),
+            ),
+            Pick::NeedsCap => say(
+                "set no step",
+                "nothing reads right until you give a cap (--cap)".to_owned(),
+            ),
+            Pick::NoBasis(refusal) => say("set no step", refusal.to_string()),
+        }
+        let Some(e) = advice.cut.edge.as_ref() else {
+            return;
+        };
+        let set = advice.pick.setting();
+        let at_set = set.map(|s| e.expected_min(surface_speed_m_min(s.rpm, setup.diameter)));
+        if let (Some(wanted), Some(v)) = (e.wanted_min, e.for_wanted) {
+            let low = match e.slowest_useful {
+                Some(low) => format!("; slowest useful {} m/min", n(low, 1)),
+                None => String::new(),
+            };
+            let at_set = at_set.map_or_else(String::new, |t| {
+                format!("; at that setting {} min or more", n(t, 0))
+            });
+            say(
+                "edge life",
+                format!(
+                    "{} min wanted, {} m/min stated for {} min: {} m/min with the largest exponent of {} to {} ({}){low}{at_set}",
+                    n(wanted, 0),
+                    n(e.stated.m_min(), 1),
+                    n(e.stated_min, 0),
+                    n(v, 1),
+                    n(e.n.0, 2),
+                    n(e.n.1, 2),
+                    e.source
+                ),
+            );
+        }
+    }
+
+    fn cut(&self, say: &mut dyn FnMut(&str, String)) {
+        let (cut, set) = (&self.advice.cut, self.advice.pick.setting().map(|s| s.rpm));
+        if let Some(f) = &cut.feed {
+            let per = match (f.per_rev, f.per_tooth) {
+                (Some(rev), Some(tooth)) => {
+                    format!("{} mm a tooth, {} mm a turn", n(tooth, 3), n(rev, 3))
+                }
+                (None, Some(tooth)) => format!("{} mm a tooth", n(tooth, 3)),
+                (Some(rev), None) => format!("{} mm a turn", n(rev, 3)),
+                (None, None) => String::new(),
+            };
+            let minute = f.per_rev.zip(set).map_or_else(String::new, |(f, n_)| {
+                format!(", {} mm/min", n(f * n_.get(), 1))
+            });
+            let from = match f.from {
+                FeedFrom::Typed => "as typed".to_owned(),
+                FeedFrom::ForFinish => "for the finish".to_owned(),
+                FeedFrom::Lead => "the lead".to_owned(),
+                FeedFrom::Table => f.source.to_string(),
+            };
+            let gearbox = if f.of_gearbox {
+                ", next lower of the gearbox"
+            } else {
+                ""
+            };
+            let hand = if f.by_hand { ", by hand" } else { "" };
+            let seconds = cut.hand.map_or_else(String::new, |h| {
+                format!(": 10 mm in {} s or more", n(h.s_per_10_mm, 1))
+            });
+            say(
+                "feed",
+                format!("{per}{minute}{hand}{seconds} ({from}{gearbox})"),
+            );
+        }
+        let mut power = Vec::new();
+        if let Some(load) = &cut.load {
+            power.extend(load.force_n.map(|f| format!("{} N", n(f, 0))));
+            power.push(format!("{} N m", n(load.torque_nm, 1)));
+            power.extend(set.map(|s| format!("{} kW at that setting", n(load.power_kw(s), 2))));
+        }
+        power.extend(cut.thrust_n.map(|t| format!("thrust {} N", n(t, 0))));
+        if let Some(motor) = self
+            .machine
+            .motor()
+            .filter(|_| cut.load.is_some() || cut.depth_limit_mm.is_some())
+        {
+            power.push(format!(
+                "the motor gives {} kW at the cut",
+                n(motor.at_cut(), 2)
+            ));
+        }
+        power.extend(cut.depth_limit_mm.map(|d| {
+            format!(
+                "it pulls {} mm of depth where the motor is not the limit of speed",
+                n(d, 2)
+            )
+        }));
+        if !power.is_empty() {
+            say("power", format!("{} (worn edge)", power.join(", ")));
+        }
+        let mut pass = Vec::new();
+        if let Some(t) = cut.time_min {
+            let s = t * 60.0;
+            pass.push(if s < 120.0 {
+                format!("{} s", n(s, 0))
+            } else {
+                format!("{} min", n(t, 1))
+            });
+        }
+        pass.extend(
+            cut.removal_cm3_min
+                .map(|q| format!("{} cm3/min of chips", n(q, 1))),
+        );
+        if let Some(f) = &cut.finish {
+            let nose = if f.nose_assumed { ", assumed" } else { "" };
+            pass.push(format!(
+                "Ra {} um, Rt {} um at best (nose {} mm{nose})",
+                n(f.ra_um, 2),
+                n(f.rt_um, 1),
+                n(f.nose_mm, 2)
+            ));
+        }
+        if !pass.is_empty() {
+            say("pass", pass.join(", "));
+        }
+        if let Some(t) = &cut.thread {
+            let assumed = if t.stop_assumed { ", assumed" } else { "" };
+            let away = match self.setup.details.thread.and_then(|t| t.half_nut) {
+                Some(HalfNut::Away) => "; cut away from the shoulder neither holds",
+                _ => "",
+            };
+            say(
+                "thread's end",
+                format!(
+                    "half-nut opened by hand in 1 s: {}; kept closed, spindle stopped in {} s{assumed}: {}{away}",
+                    t.opened,
+                    n(t.stop_s, 1),
+                    t.closed
+                ),
+            );
+        }
+        if let Some(b) = &cut.bar {
+            let held = match b.support {
+                Support::Free => "in the chuck alone",
+                Support::Tailstock => "with the tailstock",
+                Support::Behind => "behind the headstock",
+            };
+            say(
+                "stick-out",
+                format!(
+                    "{} diameters {held}: half its whipping speed is {}",
+                    n(b.ratio, 1),
+                    b.fastest
+                ),
+            );
+        }
+    }
+
+    /// Upper bounds, lowest first, then lower ones.
+    fn bounds(&self) -> String {
+        let one = |b: &Bound| format!("{} {} ({})", b.at, b.reason.short(), b.kind.code());
+        let mut all: Vec<String> = self
+            .advice
+            .ranked()
+            .iter()
+            .map(|(b, above)| match above {
+                a if *a < 0.05 => one(b),
+                a => format!("{} +{a:.0} %", one(b)),
+            })
+            .collect();
+        all.extend(
+            self.advice
+                .bounds
+                .iter()
+                .filter(|b| b.side == Side::Lower)
+                .map(|b| format!("at least {}", one(b))),
+        );
+        all.join("; ")
+    }
+
+    /// Where the verdict leaves right upwards.
+    fn right_until(&self) -> Rpm {
+        let window = &self.advice.window;
+        let fast = window.soft.map(|b| b.at.scaled(FAST_ABOVE));
+        let hard = window.hard.map(|b| b.at);
+        [fast, hard]
+            .into_iter()
+            .flatten()
+            .reduce(|a, b| if b < a { b } else { a })
+            .unwrap_or(window.best())
+    }
+}
