@@ -59,6 +59,8 @@ pub enum Caution {
     StaysBelow {
         /// How far, percent.
         percent: f32,
+        /// A drill, which breaks when it is pressed.
+        drill: bool,
     },
     /// The setting lies below a lower bound.
     BelowUseful {
@@ -195,7 +197,7 @@ impl fmt::Display for Caution {
             Caution::MachineTooSlow { wanted, fastest } => {
                 return write!(
                     f,
-                    "The machine is too slow for this: {wanted} would be right, its fastest setting is {fastest}. It cuts all the same, with less feed in proportion to the time."
+                    "The machine is too slow for this: {wanted} would be allowed, its fastest setting is {fastest}. It cuts all the same, only longer: the feed of a turn stays, that of a minute falls."
                 );
             }
             Caution::DrillBreaks {
@@ -209,11 +211,12 @@ impl fmt::Display for Caution {
                     one(s_per_10_mm)
                 );
             }
-            Caution::StaysBelow { percent } => {
-                return write!(
+            Caution::StaysBelow { percent, drill } => {
+                write!(
                     f,
-                    "The machine stays {percent:.0} % below the best speed: feed by hand more slowly in proportion, small drills break."
-                );
+                    "The machine stays {percent:.0} % below the best speed: feed by hand more slowly in proportion"
+                )?;
+                if drill { ", small drills break." } else { "." }
             }
             Caution::BelowUseful { at, motor: true } => {
                 return write!(

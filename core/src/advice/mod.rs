@@ -160,10 +160,16 @@ pub fn advise(setup: &Setup, machine: &Machine) -> Advice {
     cut.load = demand.and_then(|d| d.load(setup));
     let mut answer = Answer::of(setup, machine, rated, &cutting, window, None);
     // The depth that would pull where everything but the motor has its way.
-    cut.depth_limit_mm = answer
-        .pick
-        .setting()
-        .and_then(|set| demand?.depth_of(machine.torque_at(&set.label, set.rpm)?));
+    let to_centre = matches!(
+        setup.operation,
+        Operation::RoughTurning | Operation::FinishTurning
+    )
+    .then(|| setup.diameter.mm() / 2.0);
+    cut.depth_limit_mm = answer.pick.setting().and_then(|set| {
+        let torque = machine.torque_at(&set.label, set.rpm)?;
+        let depth = demand?.depth_of(torque)?;
+        Some(to_centre.map_or(depth, |radius| depth.min(radius)))
+    });
     if let Some(torque) = cut.load.map(|l| l.torque_nm) {
         let power = machine
             .power_limit(torque)
@@ -339,7 +345,10 @@ fn cautions(setup: &Setup, machine: &Machine, advice: &Advice) -> Vec<Caution, M
     if let Some((fastest, wanted)) = too_slow {
         mind(Caution::MachineTooSlow { wanted, fastest });
     } else if let Some(percent) = advice.short_percent().filter(|&p| p > 30.0) {
-        mind(Caution::StaysBelow { percent });
+        mind(Caution::StaysBelow {
+            percent,
+            drill: op == Operation::Drilling,
+        });
     }
     if let Some(hand) = cut.hand.filter(|_| {
         op == Operation::Drilling && setup.diameter.mm() <= THIN_DRILL_MM && too_slow.is_some()

@@ -7,7 +7,7 @@ use rimrate_core::machine::{Drive, Holder, Machine};
 use rimrate_core::physics::cutting_speed::surface_speed_m_min;
 use rimrate_core::setup::{HalfNut, Setup, Support};
 use rimrate_core::trade::{Coolant, CuttingSpeed};
-use rimrate_core::units::{Decimal, Rpm, SurfaceSpeed, UnitSystem};
+use rimrate_core::units::{Decimal, Rpm, SurfaceSpeed};
 use serde_json::{Value, json};
 
 pub(super) struct Answer<'a> {
@@ -20,6 +20,23 @@ pub(super) struct Answer<'a> {
 /// A number for people, with so many places at the most.
 fn n(value: f32, decimals: u32) -> Decimal {
     Decimal { value, decimals }
+}
+
+/// A line broken at spaces for a terminal of 110 columns, the first 15 of which say what it is about.
+fn wrapped(line: &str) -> Vec<String> {
+    const ROOM: usize = 95;
+    let mut rows = vec![String::new()];
+    for word in line.split(' ') {
+        match rows.last_mut() {
+            Some(row) if row.is_empty() => row.push_str(word),
+            Some(row) if row.chars().count() + 1 + word.chars().count() <= ROOM => {
+                row.push(' ');
+                row.push_str(word);
+            }
+            _ => rows.push(word.to_owned()),
+        }
+    }
+    rows
 }
 
 /// A number for JSON, with three significant places behind the point.
@@ -115,6 +132,7 @@ impl Answer<'_> {
                 "from": f.from.code(),
                 "of_gearbox": f.of_gearbox,
                 "by_hand": f.by_hand,
+                "source": (f.from == FeedFrom::Table).then(|| f.source.to_string()),
             })),
             "load": cut.load.map(|l| json!({
                 "force_n": l.force_n.map(round),
@@ -156,8 +174,12 @@ impl Answer<'_> {
     pub(super) fn text(&self) -> String {
         let mut text = String::new();
         let mut say = |word: &str, line: String| {
-            // Writing into a String cannot fail.
-            let _ = writeln!(text, "{word:<15}{line}");
+            let mut word = word;
+            for row in wrapped(&line) {
+                // Writing into a String cannot fail.
+                let _ = writeln!(text, "{word:<15}{row}");
+                word = "";
+            }
         };
         self.head(&mut say);
         self.setting(&mut say);
@@ -195,7 +217,8 @@ impl Answer<'_> {
             "cut",
             format!(
                 "{}, {}, {}, {} {}, {coolant}",
-                setup.material.name(),
+                // The grades in brackets are for `--list`.
+                setup.material.name().split(" (").next().unwrap_or_default(),
                 setup.tool.name(),
                 setup.operation.name(),
                 setup.operation.diameter_word(),
@@ -218,7 +241,11 @@ impl Answer<'_> {
                     .how
                     .factors
                     .iter()
-                    .map(|f| format!("x {:.2} {}", f.by, f.what))
+                    .map(|f| {
+                        // Behind the colon stands why: that is for `--list` and JSON.
+                        let what = f.what.split(':').next().unwrap_or(f.what);
+                        format!("x {:.2} {what}", f.by)
+                    })
                     .collect();
                 let by = if factors.is_empty() {
                     String::new()
@@ -229,16 +256,16 @@ impl Answer<'_> {
                     "from {} to {}{by}; {}",
                     n(row.range.0.m_min(), 1),
                     row.range.1,
-                    row.source
+                    row.source.text
                 )
             }
         };
         say(
             "cutting speed",
             format!(
-                "{} ({}), {from}",
-                v.display(UnitSystem::Metric),
-                v.display(UnitSystem::Inch)
+                "{} m/min ({} ft/min), {from}",
+                n(v.m_min(), 1),
+                n(v.ft_min(), 0)
             ),
         );
     }
@@ -264,8 +291,10 @@ impl Answer<'_> {
                 say(
                     how,
                     format!(
-                        "{} at {}: the edge then runs at {v:.1} m/min; reads right from {low} to {high}",
-                        s.label, s.rpm
+                        "{} at {}: the edge runs at {v:.1} m/min; right from {} to {high}",
+                        s.label,
+                        s.rpm,
+                        n(low.get(), 0)
                     ),
                 );
             }
@@ -291,26 +320,22 @@ impl Answer<'_> {
         let set = advice.pick.setting();
         let at_set = set.map(|s| e.expected_min(surface_speed_m_min(s.rpm, setup.diameter)));
         if let (Some(wanted), Some(v)) = (e.wanted_min, e.for_wanted) {
-            let low = match e.slowest_useful {
-                Some(low) => format!("; slowest useful {} m/min", n(low, 1)),
-                None => String::new(),
-            };
-            let at_set = at_set.map_or_else(String::new, |t| {
-                format!("; at that setting {} min or more", n(t, 0))
-            });
-            say(
-                "edge life",
-                format!(
-                    "{} min wanted, {} m/min stated for {} min: {} m/min with the largest exponent of {} to {} ({}){low}{at_set}",
-                    n(wanted, 0),
-                    n(e.stated.m_min(), 1),
-                    n(e.stated_min, 0),
-                    n(v, 1),
-                    n(e.n.0, 2),
-                    n(e.n.1, 2),
-                    e.source
-                ),
+            let mut line = format!(
+                "{} min wanted: {} m/min by the largest exponent of {} to {}, from {} m/min for {} min",
+                n(wanted, 0),
+                n(v, 1),
+                n(e.n.0, 2),
+                n(e.n.1, 2),
+                n(e.stated.m_min(), 1),
+                n(e.stated_min, 0)
             );
+            if let Some(low) = e.slowest_useful {
+                let _ = write!(line, "; slowest useful {} m/min", n(low, 1));
+            }
+            if let Some(t) = at_set {
+                let _ = write!(line, "; at that setting {} min or more", n(t, 0));
+            }
+            say("edge life", line);
         }
     }
 
@@ -332,7 +357,7 @@ impl Answer<'_> {
                 FeedFrom::Typed => "as typed".to_owned(),
                 FeedFrom::ForFinish => "for the finish".to_owned(),
                 FeedFrom::Lead => "the lead".to_owned(),
-                FeedFrom::Table => f.source.to_string(),
+                FeedFrom::Table => "table".to_owned(),
             };
             let gearbox = if f.of_gearbox {
                 ", next lower of the gearbox"
@@ -348,26 +373,22 @@ impl Answer<'_> {
                 format!("{per}{minute}{hand}{seconds} ({from}{gearbox})"),
             );
         }
+        let motor = self.machine.motor();
         let mut power = Vec::new();
         if let Some(load) = &cut.load {
             power.extend(load.force_n.map(|f| format!("{} N", n(f, 0))));
             power.push(format!("{} N m", n(load.torque_nm, 1)));
-            power.extend(set.map(|s| format!("{} kW at that setting", n(load.power_kw(s), 2))));
+            power.extend(set.map(|s| {
+                let of = motor.map_or_else(String::new, |m| {
+                    format!(" of the motor's {}", n(m.at_cut(), 2))
+                });
+                format!("{}{of} kW", n(load.power_kw(s), 2))
+            }));
         }
         power.extend(cut.thrust_n.map(|t| format!("thrust {} N", n(t, 0))));
-        if let Some(motor) = self
-            .machine
-            .motor()
-            .filter(|_| cut.load.is_some() || cut.depth_limit_mm.is_some())
-        {
-            power.push(format!(
-                "the motor gives {} kW at the cut",
-                n(motor.at_cut(), 2)
-            ));
-        }
         power.extend(cut.depth_limit_mm.map(|d| {
             format!(
-                "it pulls {} mm of depth where the motor is not the limit of speed",
+                "pulls {} mm of depth at the speed that all else allows",
                 n(d, 2)
             )
         }));
