@@ -244,16 +244,16 @@ fn turned_diameter(diameter: Diameter, detents: i8, units: UnitSystem) -> Diamet
     }
 }
 
-/// The first detent sets the cap to the best speed as it stands, on the scale's mark at or below it.
+/// The first detent from no cap sets it to the scale's next mark above the best speed: a spindle that runs right is not in
+/// danger because somebody begins to type. The others move it from there.
 fn turned_cap(cap: Option<Rpm>, detents: i8, advice: &Advice) -> Rpm {
     let (lowest, highest) = (10.0, 10_000.0);
     let rpm = match cap {
         Some(cap) => turned(SCALE_RPM, cap.get(), detents),
-        None => turned(
-            SCALE_RPM,
-            turned(SCALE_RPM, advice.window.best().get(), 1),
-            -1,
-        ),
+        None => {
+            let first = turned(SCALE_RPM, advice.window.best().get(), 1);
+            turned(SCALE_RPM, first, detents - detents.signum())
+        }
     };
     Rpm::saturating(rpm.clamp(lowest, highest))
 }
