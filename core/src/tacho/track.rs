@@ -62,6 +62,8 @@ pub(super) struct Track {
     suspect: Option<Instant>,
     /// So many pulses are taken as missing before the newest one, though braking might explain the gap.
     late: Option<u32>,
+    /// So many had been taken as missing before a pulse that was late again: the rhythm may yet return.
+    retreated: Option<u32>,
     /// The last pulses that were dropped as extra stood in the middle.
     extra_in_a_row: u8,
     /// One bit a magnet, newest lowest, set where its pulse was missing.
@@ -78,6 +80,7 @@ impl Track {
             window: 0,
             suspect: None,
             late: None,
+            retreated: None,
             extra_in_a_row: 0,
             missed: 0,
             placement: Placement::new(pulses),
@@ -90,6 +93,7 @@ impl Track {
         self.window = 0;
         self.suspect = None;
         self.late = None;
+        self.retreated = None;
         self.extra_in_a_row = 0;
         self.missed = 0;
         self.placement.forget();
@@ -257,11 +261,22 @@ impl Track {
         {
             // Late again: the spindle has become slower, and none was missing.
             self.retreat(missing, rejected);
+            self.accept(at, 1, rejected);
+            self.retreated = Some(missing);
+            return;
         }
+        let retreated = self.retreated.take();
         let (Some(newest), Some(expected)) = (self.last(), self.expected()) else {
             return self.accept(at, 1, rejected);
         };
         let steps = at.since(newest).secs_f32() / expected;
+        if let Some(missing) = retreated
+            && alike(steps * (missing + 1) as f32, 1.0)
+        {
+            // The rhythm returns: both gaps were missing pulses.
+            self.advance_two(missing, rejected);
+            return self.accept(at, 1, rejected);
+        }
         let Some(suspect) = self.suspect.take() else {
             return match steps < EARLY {
                 true if plausible => self.suspect = Some(at),
@@ -316,6 +331,17 @@ impl Track {
         }
         rejected.missing = rejected.missing.saturating_sub(missing);
         self.missed = (self.missed >> 1).checked_shr(missing).unwrap_or(0) << 1;
+    }
+
+    /// Pulses were missing before each of the two newest marks.
+    fn advance_two(&mut self, missing: u32, rejected: &mut Rejected) {
+        for mark in self.marks.iter_mut().rev().take(2).zip([2, 1]) {
+            mark.0.index += mark.1 * missing;
+        }
+        self.miss(missing, rejected);
+        self.missed <<= 1;
+        self.miss(missing, rejected);
+        self.missed <<= 1;
     }
 
     /// The last interval, if it may have been one slow spacing as well as several with pulses missing.
