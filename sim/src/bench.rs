@@ -3,7 +3,7 @@
 use rimrate_core::machine::{Drive, Machine};
 use rimrate_core::panel::{HOLD, Knob};
 use rimrate_core::setup::Setup;
-use rimrate_core::time::{Duration, Edge, Instant};
+use rimrate_core::time::{Duration, Edge, EdgeKind, Instant};
 
 use crate::lathe::{Cut, DriveSpec, Engagement, Feed, Lathe, LatheSpec, MotorSwitch};
 use crate::rig::{Rig, Touch};
@@ -126,7 +126,8 @@ impl<R: Rig> Bench<R> {
             self.lathe.advance(to, &mut |segment| {
                 sensor.sense(segment, &mut |edge| edges.push(edge))
             });
-            self.pulses += edges.len() as u64 / 2;
+            let falls = edges.iter().filter(|e| e.kind == EdgeKind::Fall);
+            self.pulses += falls.count() as u64;
             on_edges(edges);
             self.rig.run(edges, to);
             self.now = to;

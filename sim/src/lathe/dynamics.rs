@@ -191,6 +191,10 @@ impl Lathe {
         self.pedal = if pedal > 0.0 { pedal.min(1.0) } else { 0.0 };
         if self.pedal > 0.0 && self.spec.brake_stops_motor {
             self.motor(MotorSwitch::Off);
+            // The pedal takes a drive's enable away: it would else pull against the brake on its way down.
+            if let Some(regulator) = &mut self.regulator {
+                regulator.let_go();
+            }
         }
     }
 

@@ -179,6 +179,11 @@ impl Regulator {
         self.held += (setting - self.held).clamp(-step, step);
     }
 
+    /// Lets go of the motor at once, without a ramp.
+    pub(super) fn let_go(&mut self) {
+        self.held = 0.0;
+    }
+
     /// At a speed in rad/s; a drive that holds 0 has let go of the motor.
     pub(super) fn pull(&self, speed: f64) -> Pull {
         if self.held == 0.0 {
