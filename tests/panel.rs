@@ -3,10 +3,10 @@
 use rimrate_core::advice::advise;
 use rimrate_core::machine::{Drive, Machine};
 use rimrate_core::panel::{Bench, Field, HOLD, Knob, NOTICE, Page, Panel, Wish};
-use rimrate_core::setup::{Diameter, Setup};
+use rimrate_core::setup::{Diameter, Life, Setup};
 use rimrate_core::time::{Duration, Instant};
 use rimrate_core::trade::{Coolant, Material, Operation, Tool};
-use rimrate_core::units::Rpm;
+use rimrate_core::units::{Length, Rpm};
 use rimrate_tests::{at, bar, machine, rpm};
 
 const JUST: Duration = Duration::from_nanos(1);
@@ -109,20 +109,56 @@ fn on_the_run_page_the_left_knob_chooses_material_and_the_right_one_diameter() {
 }
 
 #[test]
-fn a_press_of_either_knob_changes_the_page_and_back() {
-    for knob in [Knob::Left, Knob::Right] {
-        let mut hand = lathe();
-        hand.click(knob);
-        assert_eq!(hand.panel.page(), Page::Choose(Field::Operation));
-        hand.click(knob);
-        assert_eq!(hand.panel.page(), Page::Run);
+fn left_opens_the_choose_page_right_the_why_page_and_either_goes_back() {
+    for (knob, page) in [
+        (Knob::Left, Page::Choose(Field::Operation)),
+        (Knob::Right, Page::Why(0)),
+    ] {
+        for back in [Knob::Left, Knob::Right] {
+            let mut hand = lathe();
+            hand.click(knob);
+            assert_eq!(hand.panel.page(), page);
+            hand.click(back);
+            assert_eq!(hand.panel.page(), Page::Run);
+            assert_eq!(hand.setup, bar(25.0));
+        }
     }
+}
+
+#[test]
+fn on_the_why_page_turns_go_down_the_bounds_and_change_nothing() {
+    let mut hand = lathe();
+    hand.setup.tool = Tool::Carbide;
+    hand.setup.cap = Some(rpm(2000.0));
+    hand.setup.details.life = Some(Life::new("life", 120.0).unwrap());
+    hand.setup.details.depth = Some(Length::from_mm(2.0).unwrap());
+    let before = hand.setup;
+    hand.click(Knob::Right);
+    // Of seven bounds and the edge's account the first stands apart, five fit below it.
+    let advice = advise(&hand.setup, &hand.machine);
+    assert_eq!(advice.bounds.len(), 7);
+    for (knob, detents, first) in [
+        (Knob::Left, 1, 1),
+        (Knob::Right, 1, 2),
+        (Knob::Right, i8::MAX, 2),
+        (Knob::Left, -1, 1),
+        (Knob::Right, i8::MIN, 0),
+    ] {
+        hand.turn(knob, detents);
+        assert_eq!(hand.panel.page(), Page::Why(first));
+    }
+    assert_eq!(hand.setup, before);
+    // Holding the right knob here is for a new edge: the cap stays.
+    assert_eq!(hand.hold(Knob::Right), Some(Wish::NewEdge));
+    assert_eq!(hand.hold(Knob::Left), Some(Wish::Mute));
+    assert_eq!(hand.setup, before);
+    assert_eq!(hand.panel.page(), Page::Why(0));
 }
 
 #[test]
 fn on_the_choose_page_the_left_knob_picks_a_field_and_the_right_one_its_value() {
     let mut hand = lathe();
-    hand.click(Knob::Right);
+    hand.click(Knob::Left);
     hand.turn(Knob::Right, 1);
     assert_eq!(hand.setup.operation, Operation::ALL[1]);
     hand.turn(Knob::Left, 1);
@@ -155,7 +191,7 @@ fn on_the_choose_page_the_left_knob_picks_a_field_and_the_right_one_its_value() 
 #[test]
 fn a_cap_begins_just_above_the_best_speed_and_is_taken_away_by_holding_the_right_knob() {
     let mut hand = lathe();
-    hand.click(Knob::Right);
+    hand.click(Knob::Left);
     hand.turn(Knob::Left, 3);
     assert_eq!(hand.panel.page(), Page::Choose(Field::Cap));
     hand.turn(Knob::Right, -1);
@@ -183,7 +219,7 @@ fn the_first_detent_sets_the_mark_above_the_best_speed_and_the_others_go_on_from
     for mm in [9.0, 25.0, 33.0, 120.0, 700.0] {
         let capped = |turns: &[i8]| {
             let mut hand = Hand::new(machine("geared-lathe"), bar(mm));
-            hand.click(Knob::Right);
+            hand.click(Knob::Left);
             hand.turn(Knob::Left, 3);
             turns.iter().for_each(|&n| hand.turn(Knob::Right, n));
             hand.setup.cap.unwrap().get()
@@ -247,10 +283,10 @@ fn the_two_knobs_do_not_disturb_one_another() {
     assert!(hand.setup.cap.is_some(), "the right one not yet");
     hand.now += Duration::from_millis(100);
     hand.release(Knob::Right);
-    assert_eq!(hand.panel.page(), Page::Choose(Field::Operation));
+    assert_eq!(hand.panel.page(), Page::Why(0));
     assert!(hand.setup.cap.is_some());
     hand.release(Knob::Left);
-    assert_eq!(hand.panel.page(), Page::Choose(Field::Operation));
+    assert_eq!(hand.panel.page(), Page::Why(0));
 }
 
 #[test]

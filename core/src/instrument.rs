@@ -5,11 +5,13 @@ use embedded_graphics::prelude::DrawTarget;
 
 use crate::advice::{Advice, advise};
 use crate::beacon::{self, Outputs};
+use crate::edge_account::EdgeAccount;
 use crate::machine::Machine;
 use crate::panel::{Bench, Knob, Page, Panel, Wish};
+use crate::physics::cutting_speed::surface_speed_m_min;
 use crate::screen::{self, View};
 use crate::setup::Setup;
-use crate::tacho::{Config, Reading, Rejected, Tacho};
+use crate::tacho::{Config, Reading, Rejected, Signal, Tacho};
 use crate::time::{Duration, Edge, Instant};
 use crate::verdict::{Judge, Verdict};
 
@@ -58,6 +60,9 @@ pub struct Instrument {
     panel: Panel,
     judge: Judge,
     reading: Reading,
+    edge: EdgeAccount,
+    /// When the reading was looked at last.
+    looked: Instant,
     verdict: Verdict,
     verdict_since: Instant,
     /// Silent until the verdict changes.
@@ -74,6 +79,8 @@ struct Shown {
     page: Page,
     notice: bool,
     setup: Setup,
+    /// Percent of the edge's life that the Why page shows.
+    edge: Option<u32>,
 }
 
 impl Instrument {
@@ -93,6 +100,8 @@ impl Instrument {
         let advice = advise(&setup, &machine);
         Instrument {
             reading: Reading::NOTHING,
+            edge: EdgeAccount::default(),
+            looked: now,
             verdict: Verdict::Unconfirmed,
             verdict_since: now,
             panel: Panel::new(false),
@@ -142,6 +151,7 @@ impl Instrument {
 
         let machine = &self.machine;
         self.reading = self.tacho.reading(now, |n| machine.explains(n));
+        self.count_edge(now);
         let verdict = self
             .judge
             .verdict(now, &self.reading, &self.advice, self.panel.confirmed());
@@ -161,6 +171,7 @@ impl Instrument {
             page: self.panel.page(),
             notice: self.panel.notice().is_some(),
             setup: self.setup,
+            edge: matches!(self.panel.page(), Page::Why(_)).then(|| self.edge.percent()),
         };
         let redraw = match self.drawn {
             None => true,
@@ -218,12 +229,23 @@ impl Instrument {
             verdict: self.verdict,
             page: self.panel.page(),
             notice: self.panel.notice(),
+            edge: self.edge,
         }
     }
 
     /// What the sensor gave that was no pulse, by kind.
     pub fn rejected(&self) -> Rejected {
         self.tacho.rejected()
+    }
+
+    /// Counts the time since the last look against the edge. Nothing here tells cutting from turning free yet.
+    fn count_edge(&mut self, now: Instant) {
+        let dt = now.since(core::mem::replace(&mut self.looked, now));
+        let turning = self.reading.signal == Signal::Turning;
+        if let (true, Some(n), Some(edge)) = (turning, self.reading.speed, &self.advice.cut.edge) {
+            let v = surface_speed_m_min(n, self.setup.diameter);
+            self.edge.add(dt, v, edge, None);
+        }
     }
 
     fn bench(&mut self) -> (&mut Panel, Bench<'_>) {
@@ -241,8 +263,10 @@ impl Instrument {
             self.advice = advise(&self.setup, &self.machine);
             self.unsaved_since = Some(now);
         }
-        if wish == Some(Wish::Mute) {
-            self.muted = true;
+        match wish {
+            Some(Wish::Mute) => self.muted = true,
+            Some(Wish::NewEdge) => self.edge.renew(),
+            None => {}
         }
     }
 }

@@ -14,7 +14,7 @@
 //! Invariants:
 //! - nothing here does input or output, asks for the time, allocates, or waits;
 //! - no input panics;
-//! - mathematics comes from `libm` on every target, so that desk and chip agree to the bit (`micromath` only places pixels);
+//! - mathematics comes from `libm` on every target, so that desk and chip agree to the bit;
 //! - a bound is never applied without its reason reaching the screen;
 //! - a speed that is not believed is never shown; in doubt nothing is green;
 //! - every default has a source or the mark "common practice, no source".
@@ -33,6 +33,7 @@
 
 pub mod advice;
 pub mod beacon;
+pub mod edge_account;
 pub mod error;
 pub mod instrument;
 pub mod machine;

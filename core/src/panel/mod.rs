@@ -2,10 +2,14 @@
 //!
 //! ```text
 //!            turn left: material, turn right: diameter
-//!  Run page -- press either --> Choose page -- press either --> Run page
-//!            turn left: which field, turn right: its value
-//!            hold right (either page): the cap is taken away
-//!            hold left (either page): the buzzer is muted until the verdict changes
+//!  Run page -- press left ---> Choose page -- press either --> Run page
+//!     |      turn left: which field, turn right: its value
+//!     |
+//!     +------ press right --> Why page ----- press either --> Run page
+//!            turn either: further down the bounds
+//!
+//!            hold right: the cap is taken away; on the Why page: a new edge is in, its account starts anew
+//!            hold left (any page): the buzzer is muted until the verdict changes
 //! ```
 //!
 //! After power-up the remembered setup is unconfirmed: the first press only confirms it. What the knobs did before,
@@ -18,6 +22,7 @@ use heapless::String;
 use crate::advice::Advice;
 use crate::error::text;
 use crate::machine::Machine;
+use crate::screen::why;
 use crate::setup::Setup;
 use crate::time::{Duration, Instant};
 
@@ -46,6 +51,8 @@ pub enum Page {
     Run,
     /// The rest of the setup, with the field that the right knob changes.
     Choose(Field),
+    /// What holds the speed down, from this row on below the first.
+    Why(u8),
 }
 
 /// What a change of the setup shows for a while: `was 25, now 30 mm`.
@@ -63,6 +70,8 @@ pub struct Notice {
 pub enum Wish {
     /// Be silent until the verdict changes.
     Mute,
+    /// A new edge is in the tool.
+    NewEdge,
 }
 
 #[derive(Clone, Copy, Debug, Default)]
@@ -135,6 +144,13 @@ impl Panel {
                 return;
             }
             (Page::Choose(field), Knob::Right) => field,
+            (Page::Why(first), _) => {
+                let last = why::rows_below(bench.advice).saturating_sub(why::ROWS);
+                // Both ends fit: there are fewer rows than a byte counts.
+                let first = (i16::from(first) + i16::from(detents)).clamp(0, last as i16);
+                self.page = Page::Why(first as u8);
+                return;
+            }
         };
         let before = *bench.setup;
         field.turn(detents, bench.setup, bench.machine, bench.advice);
@@ -152,7 +168,7 @@ impl Panel {
     pub fn release(&mut self, now: Instant, knob: Knob, bench: Bench<'_>) -> Option<Wish> {
         let wish = self.settle(now, bench);
         if let Button::Down(_) = core::mem::take(self.button(knob)) {
-            self.pressed();
+            self.pressed(knob);
         }
         wish
     }
@@ -171,6 +187,7 @@ impl Panel {
                 match knob {
                     _ if !self.confirmed => self.confirmed = true,
                     Knob::Left => wish = Some(Wish::Mute),
+                    Knob::Right if matches!(self.page, Page::Why(_)) => wish = Some(Wish::NewEdge),
                     Knob::Right => {
                         let before = *bench.setup;
                         bench.setup.cap = None;
@@ -204,14 +221,15 @@ impl Panel {
         }
     }
 
-    fn pressed(&mut self) {
+    fn pressed(&mut self, knob: Knob) {
         if !self.confirmed {
             self.confirmed = true;
             return;
         }
-        self.page = match self.page {
-            Page::Run => Page::Choose(self.field),
-            Page::Choose(_) => Page::Run,
+        self.page = match (self.page, knob) {
+            (Page::Run, Knob::Left) => Page::Choose(self.field),
+            (Page::Run, Knob::Right) => Page::Why(0),
+            (Page::Choose(_) | Page::Why(_), _) => Page::Run,
         };
     }
 

@@ -2,6 +2,7 @@
 
 mod choose;
 mod run;
+pub(crate) mod why;
 
 use core::fmt;
 
@@ -13,6 +14,7 @@ use embedded_graphics::text::{Alignment, Baseline, Text, TextStyleBuilder};
 use heapless::String;
 
 use crate::advice::Advice;
+use crate::edge_account::EdgeAccount;
 use crate::error::text;
 use crate::machine::Machine;
 use crate::panel::{Notice, Page};
@@ -42,6 +44,8 @@ pub struct View<'a> {
     pub page: Page,
     /// What a knob has just changed.
     pub notice: Option<&'a Notice>,
+    /// How much of the edge is used.
+    pub edge: EdgeAccount,
 }
 
 /// Draws the view's page on a cleared target. Nothing is drawn outside of 128 x 64.
@@ -52,6 +56,7 @@ pub fn draw<D: DrawTarget<Color = BinaryColor>>(
     match view.page {
         Page::Run => run::draw(view, target),
         Page::Choose(field) => choose::draw(view, field, target),
+        Page::Why(first) => why::draw(view, first, target),
     }
 }
 
@@ -59,8 +64,8 @@ pub fn draw<D: DrawTarget<Color = BinaryColor>>(
 pub fn digits(reading: &Reading) -> Option<u32> {
     match reading.signal {
         // Rounded; an Rpm is finite and not negative.
-        Signal::Turning => reading.speed.map(|n| libm::roundf(n.get()) as u32),
-        Signal::Still | Signal::Lost | Signal::Doubtful => None,
+        Signal::Turning if !reading.overdue => reading.speed.map(|n| libm::roundf(n.get()) as u32),
+        Signal::Turning | Signal::Still | Signal::Lost | Signal::Doubtful => None,
     }
 }
 

@@ -7,7 +7,7 @@
 //!  |___               set 280     the step to choose
 //!  ____|_______|__v____|_____     where the speed lies: slow, best and fast marked, each octave the same width
 //!  best 344: cutting speed        the best speed and what holds it
-//!  A-2, back gear in              the step's label
+//!  A-2, back gear in              the step's label; when slow or fast, what to move: stop; B-2 to A-3
 //! ```
 
 use core::fmt;
@@ -20,10 +20,9 @@ use embedded_graphics::prelude::*;
 use embedded_graphics::primitives::{Line, PrimitiveStyle, Rectangle};
 use embedded_graphics::text::{Alignment, Text};
 use heapless::String;
-use micromath::F32Ext;
 
 use super::{View, WIDTH, digits, fitting, line, write};
-use crate::advice::{FAST_ABOVE, Pick};
+use crate::advice::{FAST_ABOVE, Pick, Shift};
 use crate::error::text;
 use crate::panel::Field;
 use crate::units::{Decimal, Rpm};
@@ -38,6 +37,8 @@ const DIGITS_HEIGHT: u32 = 36;
 const SCALE: i32 = 47;
 /// The two lines at the bottom.
 const LINES: [i32; 2] = [48, 56];
+/// Characters of the smaller font in a line.
+const LAST_LINE: usize = 32;
 /// The scale spans one octave to each side of the best speed.
 const OCTAVES: f32 = 1.0;
 
@@ -212,9 +213,8 @@ fn set<D: DrawTarget<Color = BinaryColor>>(rpm: Rpm, target: &mut D) -> Result<(
     )
 }
 
-/// A line with ticks at slow, best (the high one) and fast, and a pointer at the speed. Its places are logarithms by
-/// micromath: within a few percent of an octave, which is less than two pixels here, and far too coarse for anything that
-/// is computed with.
+/// A line with ticks at slow, best (the high one) and fast, and a pointer at the speed. Its places are logarithms from
+/// `libm`: those of `micromath` are up to 11 pixels off (there is a test).
 fn scale<D: DrawTarget<Color = BinaryColor>>(
     view: &View<'_>,
     target: &mut D,
@@ -229,8 +229,7 @@ fn scale<D: DrawTarget<Color = BinaryColor>>(
         .draw(target)?;
 
     let place = |n: Rpm| {
-        let octaves =
-            F32Ext::ln(n.get().max(1e-3) / best.get().max(1e-3)) / core::f32::consts::LN_2;
+        let octaves = libm::log2f(n.get().max(1e-3) / best.get().max(1e-3));
         let x = (octaves / OCTAVES + 1.0) / 2.0 * (right - left) as f32;
         // A float-to-integer cast saturates: any speed has a place.
         (x as i32).clamp(left, right)
@@ -281,14 +280,36 @@ fn advice<D: DrawTarget<Color = BinaryColor>>(
         first,
         target,
     )?;
+    let moves = matches!(
+        view.verdict,
+        Verdict::Slow | Verdict::Fast | Verdict::Danger
+    )
+    .then_some(view.reading.speed)
+    .flatten()
+    .and_then(|n| Shift::of(view.machine, advice, n));
     match &advice.pick {
-        Pick::Set(setting) => line(&setting.label, second, target),
+        Pick::Set(setting) => match moves {
+            Some(moves) => line(moves.words(LAST_LINE), second, target),
+            None => line(&setting.label, second, target),
+        },
         Pick::TooFast { over_percent, .. } => line(
             format_args!("slowest is {over_percent:.0} % too fast"),
             second,
             target,
         ),
-        Pick::NeedsCap => line("holder unrated: set a cap", second, target),
+        Pick::NeedsCap => {
+            let rated = view
+                .machine
+                .holders()
+                .get(usize::from(view.setup.holder))
+                .is_some_and(|h| h.rated.is_some());
+            let why = if rated {
+                "uneven work"
+            } else {
+                "holder unrated"
+            };
+            line(format_args!("{why}: set a cap"), second, target)
+        }
         Pick::NoBasis(_) => Ok(()),
     }
 }
