@@ -73,7 +73,7 @@ fn a_touch_takes_over_and_enter_goes_back_to_where_the_shift_was() {
     let mut app = App::new(&scenario);
     wait(&mut app, 18_000);
     let rpm = app.bench().lathe().speed_rpm();
-    let (pulses, picture) = (app.bench().pulses(), app.bench().rig.frame().clone());
+    let (pulses, picture) = (app.bench().pulses(), *app.bench().rig.frame());
     assert!(app.bench().cut().is_some());
 
     hand(&mut app, Hand::Motor(MotorTo::Off));
