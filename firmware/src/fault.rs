@@ -68,7 +68,7 @@ pub(crate) enum Cause {
     Power,
     /// It panicked.
     Panic(String<LONGEST>),
-    /// These tasks had not checked in when the watchdog's time ran out.
+    /// These tasks hung or had not checked in when the watchdog's time ran out.
     Starved(Tasks),
 }
 
@@ -95,6 +95,18 @@ static RECORD: Keep = Keep(UnsafeCell::new(Record {
 #[unsafe(link_section = ".keep")]
 static CHECKED_IN: AtomicU32 = AtomicU32::new(0);
 
+/// Who is at work at this moment: of those one hangs when the watchdog's time runs out.
+#[unsafe(link_section = ".keep")]
+static AT_WORK: AtomicU32 = AtomicU32::new(0);
+
+/// Does a piece of work that does not wait, and leaves a note who does it.
+pub(crate) fn at_work<T>(task: Task, work: impl FnOnce() -> T) -> T {
+    AT_WORK.fetch_or(task as u32, Ordering::Relaxed);
+    let done = work();
+    AT_WORK.fetch_and(!(task as u32), Ordering::Relaxed);
+    done
+}
+
 /// Says that a task is alive.
 pub(crate) fn check_in(task: Task) {
     CHECKED_IN.fetch_or(task as u32, Ordering::Relaxed);
@@ -115,8 +127,10 @@ pub(crate) fn all_checked_in() -> bool {
 pub(crate) fn last_reset(watchdog: &Watchdog) -> Cause {
     // SAFETY: no task runs yet; any bits are a `Record`.
     let record = unsafe { RECORD.0.get().read_volatile() };
-    let absent = Tasks(!CHECKED_IN.load(Ordering::Relaxed) & Tasks::ALL);
+    let absent =
+        Tasks((!CHECKED_IN.load(Ordering::Relaxed) | AT_WORK.load(Ordering::Relaxed)) & Tasks::ALL);
     CHECKED_IN.store(0, Ordering::Relaxed);
+    AT_WORK.store(0, Ordering::Relaxed);
     // SAFETY: as above.
     unsafe { (&raw mut (*RECORD.0.get()).magic).write_volatile(0) };
     match watchdog.reset_reason() {

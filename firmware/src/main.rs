@@ -32,6 +32,7 @@ use rtt_target::ChannelMode;
 use static_cell::StaticCell;
 
 use board::Board;
+use tasks::owner::Owner;
 
 /// The version in `Cargo.toml`.
 const VERSION: &str = env!("CARGO_PKG_VERSION");
@@ -39,6 +40,7 @@ const VERSION: &str = env!("CARGO_PKG_VERSION");
 const BUILD: &str = env!("RIMRATE_BUILD");
 
 static KNOBS: InterruptExecutor = InterruptExecutor::new();
+static OWNER: StaticCell<Owner> = StaticCell::new();
 static REST: StaticCell<Executor> = StaticCell::new();
 
 #[interrupt]
@@ -72,10 +74,9 @@ fn main() -> ! {
     let knobs = KNOBS.start(interrupt::SWI_IRQ_1);
     knobs.spawn(tasks::knobs::run(parts.knobs).expect("the first of its kind"));
 
+    let owner = OWNER.init_with(|| Owner::new(parts.capture, parts.signs, cause));
     REST.init(Executor::new()).run(|rest| {
-        rest.spawn(
-            tasks::owner::run(parts.capture, parts.signs, cause).expect("the first of its kind"),
-        );
+        rest.spawn(tasks::owner::run(owner).expect("the first of its kind"));
         rest.spawn(tasks::screen::run(parts.display).expect("the first of its kind"));
         rest.spawn(tasks::supervise::run(parts.watchdog).expect("the first of its kind"));
     })

@@ -170,7 +170,7 @@ impl Capture {
             "rise_word:",
             "    in null, 1",
             "    push noblock",
-            "high:",
+            "public high:",
             "    jmp x-- look_high",
             "look_high:",
             "    jmp pin high [1]",
@@ -187,7 +187,8 @@ impl Capture {
         pin.set_pull(Pull::Up);
         pin.set_schmitt(true);
         let mut config = Config::default();
-        config.use_program(&pio.common.load_program(&program.program), &[]);
+        let loaded = pio.common.load_program(&program.program);
+        config.use_program(&loaded, &[]);
         config.set_jmp_pin(&pin);
         config.fifo_join = FifoJoin::RxOnly;
         config.shift_in.direction = ShiftDirection::Left;
@@ -198,6 +199,10 @@ impl Capture {
             const SET_Y_1: u16 = 0b111_00000_010_00001;
             pio.sm0.exec_instr(SET_X_0);
             pio.sm0.exec_instr(SET_Y_1);
+            // At rest the line is high; begun as if it were low, the first look would be taken for an edge. A jump's target is
+            // its lowest bits.
+            pio.sm0
+                .exec_instr(u16::from(loaded.origin) + program.public_defines.high as u16);
         }
 
         let from = pio.sm0.rx_fifo_ptr() as u32;

@@ -10,7 +10,7 @@ use rimrate_core::panel::Knob;
 
 use super::{MESSAGES, Message};
 use crate::board::Encoder;
-use crate::fault::{Task, check_in};
+use crate::fault::{Task, at_work, check_in};
 
 /// Sampling while something moves; a hand turns at most some 200 contact changes a second (common practice, no source).
 const SAMPLE: Duration = Duration::from_millis(1);
@@ -46,10 +46,10 @@ pub(crate) async fn run(mut encoders: [Encoder; 2]) -> ! {
         let mut ticks = Ticker::every(SAMPLE);
         loop {
             let now = Instant::now();
-            let moved = knobs
-                .iter_mut()
-                .zip(&encoders)
-                .fold(false, |moved, (knob, pins)| knob.sample(now, pins) | moved);
+            let moved = at_work(Task::Knobs, || {
+                let knobs = knobs.iter_mut().zip(&encoders);
+                knobs.fold(false, |moved, (knob, pins)| knob.sample(now, pins) | moved)
+            });
             if moved {
                 last_move = now;
             } else if now - last_move >= QUIET {

@@ -7,14 +7,14 @@ use embedded_graphics::pixelcolor::BinaryColor;
 use embedded_graphics::prelude::DrawTarget;
 use rimrate_core::beacon::Outputs;
 use rimrate_core::instrument::{Event, Instrument};
-use rimrate_core::tacho::Rejected;
+use rimrate_core::tacho::{Rejected, Signal};
 use rimrate_core::time::Instant;
 use rimrate_core::verdict::Verdict;
 
 use super::sense::Sense;
 use super::{MESSAGES, Message, knobs, screen};
 use crate::board::{Capture, Signs};
-use crate::fault::{Cause, Task, check_in};
+use crate::fault::{Cause, Task, at_work, check_in};
 use crate::{notice, profile};
 
 /// Edges are fetched this often while they come. With a picture being drawn in between an over-speed is shown within 6 ms.
@@ -33,11 +33,10 @@ fn now() -> Instant {
 
 /// Runs for ever.
 #[embassy_executor::task]
-pub(crate) async fn run(capture: Capture, signs: Signs, cause: Cause) -> ! {
-    let mut owner = Owner::new(capture, signs, cause);
+pub(crate) async fn run(owner: &'static mut Owner) -> ! {
     loop {
         check_in(Task::Owner);
-        let more = owner.step();
+        let more = at_work(Task::Owner, || owner.step());
         if more {
             yield_now().await;
         } else if let Either::First(message) =
@@ -51,7 +50,8 @@ pub(crate) async fn run(capture: Capture, signs: Signs, cause: Cause) -> ! {
     }
 }
 
-struct Owner {
+/// The instrument and everything around it. A few kilobytes: it lives in a static of its own.
+pub(crate) struct Owner {
     instrument: Instrument,
     sense: Sense,
     signs: Signs,
@@ -64,6 +64,7 @@ struct Owner {
     next_poll: Now,
     last_edge: Now,
     verdict: Verdict,
+    signal: Signal,
     next_log: Now,
     next_count: Now,
     counted: Counts,
@@ -80,7 +81,9 @@ struct Counts {
 }
 
 impl Owner {
-    fn new(capture: Capture, signs: Signs, cause: Cause) -> Self {
+    /// Loads the machine's profile and starts the instrument on it.
+    #[inline(never)]
+    pub(crate) fn new(capture: Capture, signs: Signs, cause: Cause) -> Self {
         let (machine, chosen) = profile::load();
         defmt::info!(
             "machine {=str} pulses {=u16}",
@@ -101,6 +104,7 @@ impl Owner {
             stuck: false,
             next_poll: start,
             last_edge: start,
+            signal: Signal::Still,
             next_log: start,
             next_count: start + LOG_COUNTS,
             counted: Counts::default(),
@@ -119,6 +123,7 @@ impl Owner {
     }
 
     /// Fetches edges, and where anything is due lets the instrument say what to do. Says whether more edges wait.
+    #[inline(never)]
     fn step(&mut self) -> bool {
         let instrument = &mut self.instrument;
         let taken = self
@@ -132,11 +137,12 @@ impl Owner {
             self.last_edge = time;
         }
         if taken.edges > 0 || time >= self.next_poll || self.repaint {
-            self.poll();
+            // While edges wait the instrument lives in their time: silence that is none would look like a stop.
+            self.poll(taken.more.unwrap_or_else(now));
         }
         self.status(time);
         self.log(time);
-        taken.more
+        taken.more.is_some()
     }
 
     fn hear(&mut self, message: Message) {
@@ -163,8 +169,8 @@ impl Owner {
         self.next_poll = Now::now();
     }
 
-    fn poll(&mut self) {
-        let poll = self.instrument.poll(now());
+    fn poll(&mut self, now: Instant) {
+        let poll = self.instrument.poll(now);
         // Rounded up: woken before its time the instrument would only say so again.
         self.next_poll = Now::from_micros(poll.next.nanos().div_ceil(1000));
         let mut outputs = poll.outputs;
@@ -180,13 +186,19 @@ impl Owner {
         }
         if poll.redraw || self.repaint {
             self.repaint = false;
-            screen::draw(|frame| {
-                let Ok(()) = frame.clear(BinaryColor::Off);
-                if notice::draw(&self.cause, frame).is_none() {
-                    let Ok(()) = self.instrument.draw(frame);
-                }
-            });
+            self.paint();
         }
+    }
+
+    /// Draws the whole picture. The dearest step of all, a function of its own so that it can be measured.
+    #[inline(never)]
+    fn paint(&self) {
+        screen::draw(|frame| {
+            let Ok(()) = frame.clear(BinaryColor::Off);
+            if notice::draw(&self.cause, frame).is_none() {
+                let Ok(()) = self.instrument.draw(frame);
+            }
+        });
     }
 
     /// The board's own lamp: short and seldom while all is well.
@@ -205,15 +217,17 @@ impl Owner {
     }
 
     fn log(&mut self, time: Now) {
-        if time >= self.next_log {
+        let reading = self.instrument.view().reading;
+        if time >= self.next_log || reading.signal != self.signal {
             self.next_log = time + LOG;
-            let reading = self.instrument.view().reading;
-            if reading.is_running() {
+            if reading.is_running() || reading.signal != self.signal {
+                self.signal = reading.signal;
                 defmt::info!(
-                    "reading {} calm {=f32} quick {=f32}",
+                    "reading {} calm {=f32} quick {=f32} overdue {=bool}",
                     reading.signal,
                     reading.speed.map_or(-1.0, |n| n.get()),
-                    reading.quick.map_or(-1.0, |n| n.get())
+                    reading.quick.map_or(-1.0, |n| n.get()),
+                    reading.overdue
                 );
             }
         }

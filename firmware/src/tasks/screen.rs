@@ -24,8 +24,9 @@ static CHANGED: Signal<ThreadModeRawMutex, ()> = Signal::new();
 
 /// Everything is sent anew this often.
 const REFRESH: Duration = Duration::from_secs(10);
-/// A full page takes 135 bytes of 22.5 us, 3.04 ms; a bus that needs much longer is stuck.
-const PATIENCE: Duration = Duration::from_millis(25);
+/// A full page takes 135 bytes of 22.5 us, 3.04 ms, and ten turns of this task, each of which may wait for a step of the
+/// owner; a bus that needs much longer is stuck.
+const PATIENCE: Duration = Duration::from_millis(100);
 /// A display that does not answer is tried this often.
 const RETRY: Duration = Duration::from_millis(200);
 /// Longest time without a check-in.

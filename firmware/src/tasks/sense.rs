@@ -1,15 +1,15 @@
 //! The capture's words to the instrument's edges.
 
-use embassy_time::Instant as Now;
+use embassy_time::{Duration, Instant as Now};
 use heapless::Vec;
 use rimrate_core::time::{Edge, Instant};
 
 use crate::board::Capture;
 
 /// Edges that are handed on at once.
-const BATCH: usize = 32;
-/// Edges taken in one step; with the dearest edges it stays well below 5 ms.
-const STEP: u32 = 256;
+const BATCH: usize = 16;
+/// A step ends with the batch in which this time runs out; a picture may be due after it, and both stay below 5 ms.
+const STEP: Duration = Duration::from_micros(1000);
 const MASK: u32 = (1 << Capture::BITS) - 1;
 /// The count is taken to begin this long before it wraps, so that every power-up passes the wrap (51.5 s apart
 /// otherwise) and no build can get by without it.
@@ -31,8 +31,8 @@ pub(crate) struct Taken {
     pub(crate) edges: u32,
     /// A window was lost before them.
     pub(crate) lost: bool,
-    /// There is more already.
-    pub(crate) more: bool,
+    /// There is more already: the instrument must not be told a later time than this, the last edge's.
+    pub(crate) more: Option<Instant>,
 }
 
 impl Sense {
@@ -69,42 +69,63 @@ impl Sense {
         }
         // Timer and PIO run from the same crystal: the timer tells which turn of the 31-bit count it is, the count the rest.
         let ticks_now = FIRST + now.saturating_sub(self.started) / Capture::TICK_NS;
-        let count = fresh.count.min(STEP);
+        let enough = Now::now() + STEP;
+        let mut left = fresh.count;
+        let mut reached = Instant::ZERO;
         let mut batch: Vec<Edge, BATCH> = Vec::new();
-        for _ in 0..count {
-            let word = self.capture.pull();
-            let fall = word & 1 == 1;
-            // X counts down from 0.
-            let elapsed = 0_u32.wrapping_sub(word >> 1).wrapping_sub(if fall {
-                Capture::FALL_LATE
-            } else {
-                0
-            });
-            let tick = elapsed.wrapping_add(FIRST as u32) & MASK;
-            let age = (ticks_now as u32).wrapping_sub(tick) & MASK;
-            // The timer counts microseconds, the PIO less: the newest edge may seem to lie ahead.
-            let age = if age > MASK / 2 { 0 } else { age };
-            let ticks = ticks_now - u64::from(age) - FIRST;
-            let at = Instant::from_nanos(self.started + ticks * Capture::TICK_NS);
-            let fall = self.wiring.straighten(tick, fall);
-            let edge = if fall { Edge::fall(at) } else { Edge::rise(at) };
-            if batch.push(edge).is_err() {
-                hand_on(&batch);
-                batch.clear();
-                let _ = batch.push(edge);
+        while left > 0 {
+            batch.clear();
+            while left > 0 && !batch.is_full() {
+                let edge = self.edge(ticks_now, &mut reached);
+                if let Some(edge) = edge {
+                    // Room was just seen.
+                    let _ = batch.push(edge);
+                }
+                left -= 1;
+            }
+            hand_on(&batch);
+            if Now::now() >= enough {
+                break;
             }
         }
-        hand_on(&batch);
-        self.edges = self.edges.wrapping_add(count);
+        let edges = fresh.count - left;
+        self.edges = self.edges.wrapping_add(edges);
         Taken {
-            edges: count,
+            edges,
             lost: fresh.lost,
-            more: fresh.count > count,
+            more: (left > 0).then_some(reached),
         }
+    }
+
+    /// The next word as an edge, if it is worth one, and its time.
+    fn edge(&mut self, ticks_now: u64, at: &mut Instant) -> Option<Edge> {
+        let word = self.capture.pull();
+        let fall = word & 1 == 1;
+        // X counts down from 0.
+        let elapsed =
+            0_u32
+                .wrapping_sub(word >> 1)
+                .wrapping_sub(if fall { Capture::FALL_LATE } else { 0 });
+        let tick = elapsed.wrapping_add(FIRST as u32) & MASK;
+        let age = (ticks_now as u32).wrapping_sub(tick) & MASK;
+        // The timer counts microseconds, the PIO less: the newest edge may seem to lie ahead.
+        let age = if age > MASK / 2 { 0 } else { age };
+        let ticks = (ticks_now - FIRST).saturating_sub(u64::from(age));
+        *at = Instant::from_nanos(self.started + ticks * Capture::TICK_NS);
+        self.wiring.straighten(tick, fall).map(|fall| {
+            if fall {
+                Edge::fall(*at)
+            } else {
+                Edge::rise(*at)
+            }
+        })
     }
 }
 
 /// Notices a sensor that is wired the other way round: low all the time but at the magnet.
+///
+/// Lows that fill more than three quarters of their circle are no magnet's. What is handed on of them is little, so that the
+/// instrument is not left with one endless passage when the notion changes.
 struct Wiring {
     /// Teeth are as wide as their gaps: nothing can be told.
     ambiguous: bool,
@@ -112,13 +133,16 @@ struct Wiring {
     last_fall: Option<u32>,
     last_rise: Option<u32>,
     last_period: Option<u32>,
-    /// Regular periods in a row that speak against the present notion.
-    against: u8,
+    /// Periods in a row that are mostly low, and how many of those were regular.
+    wide: u8,
+    regular: u8,
 }
 
 impl Wiring {
     /// As in core's tacho: from here on it is a toothed wheel.
     const MANY_PULSES: u16 = 8;
+    /// One wide low may be a magnet that was parked at the sensor.
+    const MAY_BE_PARKED: u8 = 1;
     /// A magnet that is parked at its switching point and shakes is not this regular for this long
     /// (common practice, no source).
     const SURE: u8 = 16;
@@ -130,53 +154,53 @@ impl Wiring {
             last_fall: None,
             last_rise: None,
             last_period: None,
-            against: 0,
+            wide: 0,
+            regular: 0,
         }
     }
 
     fn forget(&mut self) {
-        self.last_fall = None;
-        self.last_rise = None;
-        self.last_period = None;
-        self.against = 0;
+        *self = Wiring {
+            inverted: self.inverted,
+            ambiguous: self.ambiguous,
+            ..Self::new(1)
+        };
     }
 
-    /// Takes an edge as the line shows it and says whether it is a fall as the instrument means it: a magnet arrives.
-    fn straighten(&mut self, tick: u32, fall: bool) -> bool {
+    /// Takes an edge as the line shows it and says whether it is a fall as the instrument means it, a magnet that arrives;
+    /// `None` where it is better not handed on.
+    fn straighten(&mut self, tick: u32, fall: bool) -> Option<bool> {
         if self.ambiguous {
-            return fall;
+            return Some(fall);
         }
+        let fall = fall != self.inverted;
         if !fall {
             self.last_rise = Some(tick);
-            return self.inverted;
+            return (self.wide <= Self::MAY_BE_PARKED).then_some(false);
         }
         if let (Some(fell), Some(rose)) = (self.last_fall, self.last_rise) {
             let period = tick.wrapping_sub(fell) & MASK;
             let low = rose.wrapping_sub(fell) & MASK;
+            // Within 0.7 and 1.4 of the one before, as core's tacho asks of a start.
             let regular = self
                 .last_period
-                .is_some_and(|last| period / 10 > last / 14 && period / 14 < last / 10);
-            // Magnets cover a small part of their circle: less than a quarter.
-            let mostly_low = low > period / 4 * 3;
-            let mostly_high = low < period / 4;
-            let against = if self.inverted {
-                mostly_high
-            } else {
-                mostly_low
-            };
-            self.against = if regular && against {
-                self.against + 1
-            } else {
-                0
-            };
+                .is_some_and(|last| period / 14 < last / 10 && last / 14 < period / 10);
             self.last_period = Some(period);
-            if self.against >= Self::SURE {
-                self.against = 0;
-                self.inverted = !self.inverted;
-                defmt::warn!("sensor: inverted {=bool}", self.inverted);
+            if low > period / 4 * 3 {
+                self.wide = self.wide.saturating_add(1);
+                self.regular = if regular { self.regular + 1 } else { 0 };
+            } else {
+                self.wide = 0;
+                self.regular = 0;
             }
         }
         self.last_fall = Some(tick);
-        !self.inverted
+        if self.regular >= Self::SURE {
+            self.inverted = !self.inverted;
+            defmt::warn!("sensor: inverted {=bool}", self.inverted);
+            self.forget();
+            return None;
+        }
+        (self.wide <= Self::MAY_BE_PARKED).then_some(true)
     }
 }

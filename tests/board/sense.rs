@@ -1,0 +1,217 @@
+//! What the board measures, against what was put in.
+
+use rimrate_core::tacho::Signal;
+use rimrate_sim::rig::Rig;
+
+use crate::rig::{Emulator, Start};
+use crate::support::{STARTED_MS, inverted, setup, spin, wide_board, wide_machine};
+
+/// Largest error of a steady speed, as a share: 200 ppm. Crystals of this class are within 30 ppm (Raspberry Pi Pico data
+/// sheet, appendix B); the emulator's is exact, so all of this is the method's.
+const STEADY: f64 = 2e-4;
+
+/// Runs at a steady speed and gives the last reading.
+fn read(board: &mut Emulator, rpm: f64, pulses: u32, ms: u64) -> (Signal, f64) {
+    let from = board.now() + 3_000_000;
+    board.edges(&spin(rpm, pulses, from, from + ms * 1_000_000));
+    board.run_ms(ms);
+    let reading = board.reading();
+    let speed = reading.speed.map_or(-1.0, |n| f64::from(n.get()));
+    (reading.signal, speed)
+}
+
+fn steady(pulses: u32) {
+    for (rpm, ms) in [(20.0, 6), (97.3, 6), (640.0, 8), (3000.0, 30), (6000.0, 60)] {
+        // Revolutions enough for a start and a calm reading, and at least 1.2 s.
+        let turns = ms as f64;
+        let ms = (turns * 60e3 / rpm).max(1200.0) as u64;
+        let mut board = wide_board(pulses, 25.0);
+        let (signal, speed) = read(&mut board, rpm, pulses, ms);
+        let error = speed / rpm - 1.0;
+        println!(
+            "{rpm} rpm, {pulses} pulses: read {speed}, error {:.1} ppm",
+            error * 1e6
+        );
+        assert_eq!(signal, Signal::Turning, "{rpm} rpm with {pulses} pulses");
+        assert!(
+            error.abs() <= STEADY,
+            "{rpm} rpm with {pulses} pulses: read {speed}"
+        );
+        assert_eq!(board.count("lost"), 0);
+        assert!(board.resets.is_empty());
+    }
+}
+
+#[test]
+fn steady_speed_with_one_pulse() {
+    steady(1);
+}
+
+#[test]
+fn steady_speed_with_two_pulses() {
+    steady(2);
+}
+
+#[test]
+fn steady_speed_with_six_pulses() {
+    steady(6);
+}
+
+#[test]
+fn steady_speed_with_sixty_pulses() {
+    steady(60);
+}
+
+/// 20,000 pulses/s, the limit: every edge arrives, while the picture is drawn and a knob turns.
+#[test]
+fn no_edge_is_lost_at_the_limit() {
+    const SECONDS: u64 = 3;
+    let pulses = 200;
+    let rpm = 20_000.0 * 60.0 / f64::from(pulses);
+    let mut board = wide_board(pulses, 25.0);
+    let from = board.now() + 10_000_000;
+    let edges = spin(rpm, pulses, from, from + SECONDS * 1_000_000_000);
+    board.edges(&edges);
+    for _ in 0..SECONDS {
+        board.touch(rimrate_sim::rig::Touch::Turn(
+            rimrate_core::panel::Knob::Right,
+            5,
+        ));
+        board.run_ms(1000);
+    }
+    board.run_ms(1200);
+    println!(
+        "{} of {} edges, {} windows lost",
+        board.count("edges"),
+        edges.len(),
+        board.count("lost")
+    );
+    assert_eq!(board.count("edges"), edges.len() as u64);
+    assert_eq!(board.count("lost"), 0);
+    let reading = board
+        .lines("reading Turning")
+        .last()
+        .expect("was turning")
+        .text
+        .clone();
+    assert!(reading.contains(&format!("calm {rpm}")), "{reading}");
+}
+
+/// The capture's count wraps 5 s after every start, and the chip's timer passes 2^32 us (71.6 min) at the same moment.
+#[test]
+fn speed_is_right_across_both_wraps() {
+    let rpm = 640.0;
+    let mut board = Emulator::start(Start {
+        machine: Some((wide_machine(2), Some(setup(25.0)))),
+        timer_us: (1 << 32) - 5_000_000,
+        ..Start::default()
+    });
+    board.run_ms(STARTED_MS);
+    let from = board.now();
+    board.edges(&spin(rpm, 2, from, 8_000_000_000));
+    board.run_until(8_000_000_000);
+    let readings: Vec<f32> = board
+        .lines("reading Turning")
+        .map(|l| {
+            l.text
+                .split_whitespace()
+                .nth(3)
+                .expect("a speed")
+                .parse()
+                .expect("a number")
+        })
+        .collect();
+    assert!(readings.len() > 20, "{} readings", readings.len());
+    for speed in readings {
+        assert!((f64::from(speed) / rpm - 1.0).abs() <= STEADY, "{speed}");
+    }
+    assert_eq!(
+        board.lines("reading Lost").count() + board.lines("reading Doubtful").count(),
+        0
+    );
+    assert_eq!(board.count("lost"), 0);
+}
+
+/// The DMA's first count ends in the middle of a run, as it does every 56 minutes at the limit.
+#[test]
+fn the_capture_goes_on_when_the_dma_count_ends() {
+    let mut board = Emulator::start(Start {
+        machine: Some((wide_machine(60), Some(setup(25.0)))),
+        first_count: 4096,
+        ..Start::default()
+    });
+    board.run_ms(STARTED_MS);
+    let from = board.now() + 10_000_000;
+    let edges = spin(3000.0, 60, from, from + 1_500_000_000);
+    assert!(edges.len() > 4096 + 1000);
+    board.edges(&edges);
+    board.run_ms(2600);
+    assert_eq!(board.count("edges"), edges.len() as u64);
+    assert_eq!(board.count("lost"), 0);
+    assert_eq!(board.lines("reading Lost").count(), 0);
+}
+
+/// More than the ring can hold while the owner does not look: the window is dropped and counted, and no wrong speed is read.
+#[test]
+fn an_overrun_is_counted_and_shows_no_wrong_speed() {
+    let rpm = 640.0;
+    let mut board = wide_board(2, 25.0);
+    let from = board.now() + 3_000_000;
+    board.edges(&spin(rpm, 2, from, from + 1_500_000_000));
+    board.run_ms(1600);
+    // A storm of 1 MHz on the line, as from a broken shield: 5 ms of it are 10,000 edges.
+    let start = board.now();
+    for i in 0..5_000 {
+        board.pin_in(i * 1000, "sensor", false);
+        board.pin_in(i * 1000 + 400, "sensor", true);
+    }
+    let from = start + 20_000_000;
+    board.edges(&spin(rpm, 2, from, from + 2_000_000_000));
+    board.run_ms(3300);
+    println!("{} windows lost", board.count("lost"));
+    assert!(board.count("lost") >= 1);
+    // A start has no calm speed yet, written -1.
+    let end = from + 2_000_000_000;
+    let known = board
+        .lines("reading Turning")
+        .filter(|l| l.at < end && !l.text.contains("calm -1"));
+    for line in known {
+        let speed: f64 = line
+            .text
+            .split_whitespace()
+            .nth(3)
+            .expect("a speed")
+            .parse()
+            .expect("a number");
+        assert!((speed / rpm - 1.0).abs() <= 0.01, "{}", line.text);
+    }
+    assert!(board.resets.is_empty());
+}
+
+/// A sensor that is high at the magnet is noticed and read all the same.
+#[test]
+fn a_sensor_wired_inverted_is_reported_and_read() {
+    let rpm = 640.0;
+    let mut board = wide_board(2, 25.0);
+    let from = board.now() + 3_000_000;
+    board.edges(&inverted(&spin(rpm, 2, from, from + 2_500_000_000)));
+    board.run_ms(2500);
+    assert_eq!(board.lines("sensor: inverted true").count(), 1);
+    let reading = board.reading();
+    assert_eq!(reading.signal, Signal::Turning);
+    let speed = f64::from(reading.speed.expect("is turning").get());
+    assert!((speed / rpm - 1.0).abs() <= STEADY, "{speed}");
+}
+
+/// A line that never moves, high or low, through a wrap of the count: no pulses, no reset.
+#[test]
+fn a_line_that_never_moves_reads_as_no_pulses() {
+    for level in [true, false] {
+        let mut board = wide_board(1, 25.0);
+        board.pin_in(1_000_000, "sensor", level);
+        board.run_ms(56_000);
+        assert_eq!(board.reading().signal, Signal::Still, "level {level}");
+        assert!(board.count("edges") <= 1);
+        assert!(board.resets.is_empty());
+    }
+}

@@ -1,0 +1,84 @@
+//! Machines, spindles and what several checks share.
+
+use rimrate_core::machine::MachineSpec;
+use rimrate_core::setup::Setup;
+use rimrate_core::time::{Edge, Instant};
+use rimrate_tests::bar;
+
+use crate::rig::{Emulator, Start};
+
+/// The chip has started and the display shows something after this time, ms.
+pub(crate) const STARTED_MS: u64 = 150;
+
+/// A lathe whose drive reaches from 20 to 6000 rev/min, with some pulses in a revolution.
+pub(crate) fn wide_machine(pulses: u32) -> MachineSpec {
+    toml::from_str(&format!(
+        "name = \"Wide-range lathe\"
+kind = \"lathe\"
+sensor = {{ pulses = {pulses} }}
+[[range]]
+label = \"one belt\"
+low_rpm = 20.0
+high_rpm = 6000.0
+[[holder]]
+kind = \"collet\"
+rated_rpm = 8000.0"
+    ))
+    .expect("is a profile")
+}
+
+/// A board on that lathe, set up for a bar of mild steel, with its setup confirmed.
+pub(crate) fn wide_board(pulses: u32, mm: f32) -> Emulator {
+    confirmed(Start {
+        machine: Some((wide_machine(pulses), Some(bar(mm)))),
+        ..Start::default()
+    })
+}
+
+/// A board whose setup has been confirmed with the left knob. 0.4 s have passed.
+pub(crate) fn confirmed(start: Start) -> Emulator {
+    let mut board = Emulator::start(start);
+    board.run_ms(STARTED_MS);
+    board.press(rimrate_core::panel::Knob::Left);
+    board.run_ms(400 - STARTED_MS);
+    board
+}
+
+/// Edges of an even spindle, ns: the line is low for a twelfth of the spacing with few pulses, for half with teeth.
+pub(crate) fn spin(rpm: f64, pulses: u32, from: u64, until: u64) -> Vec<Edge> {
+    let spacing = 60e9 / rpm / f64::from(pulses);
+    let low = if pulses < 8 { 1.0 / 12.0 } else { 0.5 };
+    let at = |t: f64| Instant::from_nanos(from + t.round() as u64);
+    (0..)
+        .map(|i| spacing * f64::from(i))
+        .take_while(|t| from as f64 + t < until as f64)
+        .flat_map(|t| [Edge::fall(at(t)), Edge::rise(at(t + low * spacing))])
+        .filter(|e| e.at.nanos() < until)
+        .collect()
+}
+
+/// The same, with every edge turned round: a sensor that is high at the magnet.
+pub(crate) fn inverted(edges: &[Edge]) -> Vec<Edge> {
+    use rimrate_core::time::EdgeKind::{Fall, Rise};
+    edges
+        .iter()
+        .map(|e| Edge {
+            at: e.at,
+            kind: if e.kind == Fall { Rise } else { Fall },
+        })
+        .collect()
+}
+
+/// A machine that comes with Rimrate, as its profile is written.
+pub(crate) fn profile(name: &str) -> MachineSpec {
+    let (_, text) = rimrate_sim::profile::BUILT_IN
+        .iter()
+        .find(|(n, _)| *n == name)
+        .unwrap_or_else(|| panic!("no machine {name}"));
+    toml::from_str(text).expect("is a profile")
+}
+
+/// A bar on the wide lathe, for a desk beside the board.
+pub(crate) fn setup(mm: f32) -> Setup {
+    bar(mm)
+}
