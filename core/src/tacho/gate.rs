@@ -20,7 +20,9 @@ const THINNEST: u64 = 80;
 const NARROW_IS_USUAL: u8 = 6;
 /// A longer low is no passage but a magnet that was parked at the sensor: it says nothing about the next one.
 const PARKED: Duration = Duration::from_secs(1);
-/// The input's electrical limit, 20,000 pulses a second, with a tenth for jitter. Never derived from the machine's top speed: a runaway must be seen.
+/// The input's electrical limit, pulses a second,
+pub(super) const HIGHEST_RATE: f32 = 20_000.0;
+/// as a period, with a tenth for jitter. Never derived from the machine's top speed: a runaway must be seen.
 pub(super) const SHORTEST_PERIOD: Duration = Duration::from_micros(45);
 
 /// One passage of a magnet.
@@ -28,6 +30,8 @@ pub(super) const SHORTEST_PERIOD: Duration = Duration::from_micros(45);
 pub(super) struct Pulse {
     /// Its first fall.
     pub(super) at: Instant,
+    /// Fall of the piece that proved it wide enough: what came before may have been noise.
+    pub(super) proven: Instant,
     /// From its first fall to its last rise as known when it was reported.
     pub(super) width: Duration,
 }
@@ -44,8 +48,16 @@ pub struct Rejected {
     pub too_close: u32,
     /// Edges that repeat the line's state or go back in time.
     pub disordered: u32,
-    /// Pulses between two expected ones.
+    /// Pieces of noise that ran into a passage and were told from it by their time.
+    pub noise: u32,
+    /// Pulses close behind a passage, which were that passage again.
+    pub doubled: u32,
+    /// Other pulses between two expected ones.
     pub extra: u32,
+    /// Passages that ran into the next one.
+    pub merged: u32,
+    /// Passages of a magnet that stands at the sensor and shakes.
+    pub shaken: u32,
     /// Expected pulses that did not come.
     pub missing: u32,
 }
@@ -175,6 +187,7 @@ impl Gate {
             self.proven_at = Some(fell);
             Pulse {
                 at: passage.first,
+                proven: fell,
                 width,
             }
         })

@@ -1,9 +1,12 @@
 //! Edges to a [`Reading`].
 //!
-//! [`gate`](self) decides what a pulse is, `track` which magnet it belongs to and how fast they pass, `signal` what may be
-//! said. Time comes in with the edges and with [`Tacho::reading`]; a reading uses no later edge.
+//! [`gate`](self) decides what a pulse is, `track` which magnet it belongs to, `calm` and `placement` fit a line and the
+//! magnets' places, `signal` says what may be said. Time comes in with the edges and with [`Tacho::reading`]; a reading uses
+//! no later edge.
 
+mod calm;
 mod gate;
+mod marks;
 mod placement;
 mod signal;
 mod track;
@@ -18,7 +21,7 @@ use crate::units::Rpm;
 pub use gate::Rejected;
 pub use signal::Signal;
 
-use gate::{Gate, Pulse};
+use gate::{Gate, HIGHEST_RATE, Pulse};
 use track::{Span, Track};
 
 /// A speed is doubted only after it has been steady for this long.
@@ -48,7 +51,15 @@ pub struct Reading {
     pub quick: Option<Rpm>,
     /// Pulses are overdue by more than a missing one explains: the speeds are upper bounds and nothing more.
     pub overdue: bool,
+    /// Standard uncertainty of the calm speed, as a share of it: scatter about the line, and the [`CLOCK`].
+    pub uncertainty: f32,
+    /// Silence alone lowers the calm speed: the next pulse, or one that is missing, decides.
+    pub bounded: bool,
 }
+
+/// Tolerance of the clock that stamps the edges: a common crystal's 50 parts in a million (catalogue tolerances are 20, 50 and
+/// 100). Nothing measured against it is more exact, however many edges there are.
+pub const CLOCK: f32 = 50e-6;
 
 impl Reading {
     /// No pulses yet.
@@ -57,12 +68,32 @@ impl Reading {
         speed: Some(Rpm::ZERO),
         quick: Some(Rpm::ZERO),
         overdue: false,
+        uncertainty: 0.0,
+        bounded: false,
     };
 
     /// Whether the spindle may be turning.
     pub fn is_running(&self) -> bool {
         self.signal != Signal::Still
     }
+}
+
+/// How well the sensor works: for whoever sets it up.
+#[derive(Clone, Copy, Debug, PartialEq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
+pub struct Health {
+    /// Pulses in one revolution, as set.
+    pub pulses: NonZeroU16,
+    /// Pulses counted since the start.
+    pub counted: u32,
+    /// What was not counted, by kind.
+    pub rejected: Rejected,
+    /// How far the worst magnet sits from its even place, degrees of the spindle; `None` until learned.
+    pub placement: Option<f32>,
+    /// Standard deviation of a pulse's time, s, ripple included; `None` until known.
+    pub jitter: Option<f32>,
+    /// The highest speed that can be measured with so many pulses: 20,000 of them in a second.
+    pub highest: Rpm,
 }
 
 /// From the sensor's edges to the spindle's speed.
@@ -74,10 +105,15 @@ pub struct Tacho {
     state: State,
     /// The last pulses, oldest first: a start must agree with itself.
     latest: Deque<Pulse, START_PULSES>,
+    counted: u32,
     /// How many pulses in a row were too wide for a spindle that turns.
     too_wide: u8,
     /// Low share of the pulse spacing as seen while turning; it tells turning from a parked magnet that shakes.
     low_share: Option<f32>,
+    /// The widest low share at which a spindle may turn, in 1/[`SHARE`].
+    widest: u64,
+    /// A silence shorter than this never means anything.
+    patience: Duration,
 }
 
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -158,19 +194,31 @@ const OVERDUE: f32 = 1.005;
 /// Later than this factor on its time, not even a missing pulse explains a silence.
 const LATE: f32 = 1.25;
 const JITTER: Duration = Duration::from_micros(5);
+/// So many standard deviations of the jitter as measured may stand between two pulses.
+const JITTERS: f32 = 6.0;
+/// What shares are counted in.
+const SHARE: u64 = 1 << 10;
+/// Silences are cut here where they are multiplied, ns (18 minutes).
+const LONG_SILENCE: u64 = 1 << 40;
 
 impl Tacho {
     /// Starts without knowing anything of the spindle.
     pub fn new(config: Config) -> Self {
-        Tacho {
+        let mut tacho = Tacho {
             gate: Gate::default(),
             track: Track::new(config.pulses.get(), config.brake_rpm_per_s),
             state: State::Still,
             latest: Deque::new(),
+            counted: 0,
             too_wide: 0,
             low_share: None,
+            widest: 0,
+            patience: Duration::ZERO,
             config,
-        }
+        };
+        tacho.widest = (tacho.widest_share() * SHARE as f32) as u64;
+        tacho.patience = tacho.longest_gap().min(signal::LOST_AFTER);
+        tacho
     }
 
     /// What was not counted as a pulse, by kind.
@@ -178,17 +226,33 @@ impl Tacho {
         self.gate.rejected
     }
 
-    /// Takes one edge of the sensor's line. O(1).
+    /// How well the sensor works.
+    pub fn health(&self) -> Health {
+        let pulses = self.config.pulses;
+        Health {
+            pulses,
+            counted: self.counted,
+            rejected: self.gate.rejected,
+            placement: self.track.placement.error(),
+            jitter: self.track.jitter(),
+            highest: Rpm::saturating(60.0 * HIGHEST_RATE / f32::from(pulses.get())),
+        }
+    }
+
+    /// Takes one edge of the sensor's line. O(1), but for the end of a turn, which is O(pulses).
     pub fn push(&mut self, edge: Edge) {
         self.settle(edge.at);
         let Some(pulse) = self.gate.push(edge) else {
             return;
         };
+        self.counted = self.counted.wrapping_add(1);
         let interval = self
             .latest
             .back()
-            .map(|before| pulse.at.since(before.at).secs_f32());
-        let plausible = interval.is_none_or(|i| pulse.width.secs_f32() / i <= self.widest_share());
+            .map_or(LONG_SILENCE, |before| pulse.at.since(before.at).nanos());
+        // Share by share, without a division.
+        let plausible = pulse.width.nanos().min(LONG_SILENCE) * SHARE
+            <= interval.min(LONG_SILENCE) * self.widest;
         self.too_wide = if plausible {
             0
         } else {
@@ -201,21 +265,27 @@ impl Tacho {
         let _ = self.latest.push_back(pulse);
         match self.state {
             State::Turning if self.too_wide < TOO_WIDE_IS_STILL => {
-                self.learn(pulse);
-                self.track
-                    .push(pulse.at, plausible, &mut self.gate.rejected);
+                self.track.push(pulse, plausible, &mut self.gate.rejected);
+                if let Some(share) = self.track.take_low_share() {
+                    self.learn(share);
+                }
             }
-            State::Turning => self.stand_still(),
+            State::Turning => {
+                self.gate.rejected.shaken += u32::from(TOO_WIDE_IS_STILL);
+                self.stand_still();
+            }
             State::Still if plausible && self.track.goes_on(pulse.at) => {
                 self.state = State::Turning;
-                self.track
-                    .push(pulse.at, plausible, &mut self.gate.rejected);
+                self.track.push(pulse, plausible, &mut self.gate.rejected);
             }
             State::Still | State::Lost(_) => {
                 if let Some(count) = self.starts() {
                     let skip = self.latest.len().saturating_sub(count);
-                    self.track.start(self.latest.iter().skip(skip));
+                    let pulses = self.latest.iter().skip(skip);
+                    self.track.start(pulses, &mut self.gate.rejected);
                     self.state = State::Turning;
+                } else if !plausible {
+                    self.gate.rejected.shaken = self.gate.rejected.shaken.saturating_add(1);
                 }
             }
         }
@@ -231,6 +301,8 @@ impl Tacho {
                 speed: None,
                 quick: None,
                 overdue: true,
+                uncertainty: 0.0,
+                bounded: false,
             },
             State::Turning => self.turning(now, explains),
         }
@@ -240,14 +312,18 @@ impl Tacho {
         let rpm = |n: f32| Rpm::saturating(60.0 * n);
         let bound = self.silence_bound(now);
         let (calm, quick) = (self.track.calm(), self.track.quick());
+        // Rounded once, at the very end.
+        let speed = calm.map(|(n, _)| Rpm::saturating((60.0 * n) as f32));
+        let scatter = calm.map_or(0.0, |(_, error)| error);
         // Judged by the pulses as they came: silence lowers what may be said, not what a step must explain.
         let unexplained = self.track.steady_for(DOUBT_AFTER)
-            && calm.is_some_and(|n| rpm(n) > self.config.slowest && !explains(rpm(n)));
+            && speed.is_some_and(|n| n > self.config.slowest && !explains(n));
         // One missing pulse is no slower spindle, and where magnets are gone silence proves even less: the verdict assumes
         // the higher speed.
         let missing = 1.0 + self.track.longest_missing().max(1) as f32;
         let quick = quick.map(|n| rpm(n.min(bound * missing)));
         let due = self.track.expected().unwrap_or(f32::MAX) * missing * LATE;
+        let bounded = calm.is_some_and(|(n, _)| n as f32 > bound);
         Reading {
             overdue: self.silence(now).secs_f32() > due,
             signal: if unexplained || self.track.often_missing() {
@@ -255,12 +331,16 @@ impl Tacho {
             } else {
                 Signal::Turning
             },
-            speed: calm.map(|n| rpm(n.min(bound))),
+            speed: if bounded { Some(rpm(bound)) } else { speed },
             quick: if unexplained {
                 quick.map(|n| self.with_a_magnet_gone(n, explains))
             } else {
                 quick
             },
+            // A tolerance with all values alike likely has the standard uncertainty of its half width over sqrt(3)
+            // (JCGM 100:2008, 4.3.7).
+            uncertainty: libm::sqrtf(scatter * scatter + CLOCK * CLOCK / 3.0),
+            bounded,
         }
     }
 
@@ -281,7 +361,7 @@ impl Tacho {
 
     /// Lets silence up to `now` change the state.
     fn settle(&mut self, now: Instant) {
-        if self.state != State::Turning {
+        if self.state != State::Turning || self.is_recent(now) {
             return;
         }
         if let Some(at) = self.lost_at(now) {
@@ -292,6 +372,13 @@ impl Tacho {
         } else if self.still_at(now).is_some_and(|at| now >= at) {
             self.stand_still();
         }
+    }
+
+    /// Whether the last pulse is so recent that silence cannot mean anything yet.
+    fn is_recent(&self, now: Instant) -> bool {
+        self.track
+            .last()
+            .is_some_and(|last| now.since(last) < self.patience)
     }
 
     /// The last pulses stay: where the slowest speed was only just missed, the next one goes on with them.
@@ -317,9 +404,14 @@ impl Tacho {
     }
 
     fn still_at(&self, now: Instant) -> Option<Instant> {
+        Some(self.last_sign(now)? + self.longest_gap())
+    }
+
+    /// The longest silence of a spindle at its slowest speed.
+    fn longest_gap(&self) -> Duration {
         let slowest = self.config.slowest.rev_per_s();
         let longest = self.track.placement.largest(1.0) / slowest * signal::STILL_MARGIN;
-        Some(self.last_sign(now)? + Duration::from_secs_f32(longest))
+        Duration::from_secs_f32(longest)
     }
 
     fn lost_at(&self, now: Instant) -> Option<Instant> {
@@ -368,9 +460,18 @@ impl Tacho {
 
     /// The fastest that the silence allows, rev/s. A pulse that is only just overdue proves little: see [`OVERDUE`].
     fn silence_bound(&self, now: Instant) -> f32 {
-        let proven = self.silence(now).nanos().saturating_sub(JITTER.nanos());
-        if proven > 0 {
-            self.track.placement.largest(1.0) * OVERDUE / Duration::from_nanos(proven).secs_f32()
+        let gap = self.track.placement.largest(1.0);
+        let silence = self.silence(now).secs_f32();
+        // Jitter as measured counts as far as a tenth of an even gap: that is what placement may be off before it
+        // is known. A single magnet has none.
+        let jitter = JITTERS * self.track.jitter().unwrap_or(0.0);
+        let most = match self.config.pulses.get() {
+            1 => 0.0,
+            _ => silence * (UNKNOWN_GAP - 1.0),
+        };
+        let proven = silence - jitter.min(most).max(JITTER.secs_f32());
+        if proven > 0.0 {
+            gap * OVERDUE / proven
         } else {
             f32::INFINITY
         }
@@ -429,15 +530,8 @@ impl Tacho {
         (span > 0.0).then(|| (count - 1) as f32 / f32::from(self.config.pulses.get()) / span)
     }
 
-    /// Learns the low share slowly, from pulses of a steady spindle.
-    fn learn(&mut self, pulse: Pulse) {
-        if !self.track.steady_for(Duration::ZERO) {
-            return;
-        }
-        let Some(speed) = self.track.quick() else {
-            return;
-        };
-        let share = pulse.width.secs_f32() * speed * f32::from(self.config.pulses.get());
+    /// Learns the low share slowly, from turns of a steady spindle.
+    fn learn(&mut self, share: f32) {
         // One odd pulse must not spoil what the next start will be judged by.
         self.low_share = Some(match self.low_share {
             Some(known) => {
@@ -446,5 +540,7 @@ impl Tacho {
             }
             None => share,
         });
+        self.widest = (self.widest_share() * SHARE as f32) as u64;
+        self.patience = self.longest_gap().min(signal::LOST_AFTER);
     }
 }

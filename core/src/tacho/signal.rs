@@ -9,7 +9,7 @@ use super::track::Span;
 use crate::time::{Duration, Instant};
 
 /// A lost signal is said after this long at the earliest,
-const LOST_AFTER: Duration = Duration::from_millis(500);
+pub(super) const LOST_AFTER: Duration = Duration::from_millis(500);
 /// and after this many expected pulses.
 const LOST_AFTER_PULSES: f32 = 4.0;
 /// How closely two turns at the same speed agree: ripple of belt and gears is 0.1 to 0.5 % (common practice, no source).

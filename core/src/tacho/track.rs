@@ -1,39 +1,42 @@
-//! Which magnet each pulse belongs to: an index for every pulse, with missing and extra pulses accounted for.
+//! Which magnet each pulse belongs to: a place for every pulse, with missing and extra pulses accounted for.
 //!
 //! Speed is then the angle between two pulses over the time between them. Over whole revolutions the angle is exact, for a
 //! span starts and ends at the same magnet; over parts of one it is as exact as the placement learned so far.
+//!
+//! A pulse costs whole numbers only. Single precision comes in where a pulse is early or late, and where something is read.
 
-use heapless::Deque;
+use heapless::Vec;
 
+use super::calm::Calm;
 use super::gate::{Pulse, Rejected};
-use super::placement::Placement;
+use super::marks::Marks;
+use super::placement::{Placement, REV, rev};
 use crate::time::{Duration, Instant};
 
-/// Pulses remembered: more than the most pulses in a revolution, so that a whole turn always fits. Placement is learned
-/// from two turns; wheels of more than 127 teeth are taken as evenly cut.
-const MARKS: usize = 256;
-/// The calm view looks back over this long, or over this many revolutions, whichever is longer.
-const CALM: Duration = Duration::from_millis(500);
-const CALM_TURNS: u32 = 3;
-/// A turn that differs from the window by more begins a new window: the speed is changing.
-const STEADY_SHARE: f32 = 0.015;
-/// Placement is learned only while turns agree this closely.
-const LEARN_SHARE: f32 = 0.004;
+/// Placement is learned only while two turns agree to 1/256.
+const LEARN_SHIFT: u32 = 8;
 /// A pulse earlier than this share of the expected spacing is suspected to be an extra one.
 const EARLY: f32 = 0.75;
 /// A pulse later than this share may mean that pulses are missing.
 const LATE: f32 = 1.5;
 /// A whole number of spacings must be met this closely, in spacings, to say that pulses are missing.
 const MISSING_WITHIN: f32 = 0.25;
-/// Indices are counted anew from here, long before they overflow.
-const RENUMBER: u32 = 1 << 31;
-
-/// A pulse and its place in the count of magnets.
-#[derive(Clone, Copy, Debug)]
-struct Mark {
-    at: Instant,
-    index: u32,
-}
+/// A spindle that slows down is not late by whole spacings time and again: so closely,
+const EXACT: f32 = 0.1;
+/// nor this often in a row.
+const LATE_IN_A_ROW: usize = 2;
+/// Intervals are cut here, ns (a minute): what is slower is no speed.
+const LONGEST: u64 = 1 << 36;
+/// New turns weigh 2^-4 in the mean scatter.
+const SCATTER_SHIFT: u32 = 4;
+/// Mean size of the third difference of four times with white noise, over the noise's standard deviation:
+/// sqrt(20) sqrt(2 / pi). A steady acceleration is not in it.
+const SCATTER: f32 = 3.568_2;
+/// The fast view is carried on to its newest pulse by at most this share: where an acceleration ends, it is then still
+/// no more than 0.8 % beyond the truth.
+const CARRY: f32 = 0.008;
+/// Only a change by more is an acceleration and no ripple.
+const RIPPLE: f32 = 0.006;
 
 /// A stretch of motion: an angle in revolutions and the time that it took in seconds.
 #[derive(Clone, Copy, Debug)]
@@ -55,103 +58,112 @@ pub(super) struct Track {
     pulses: u32,
     /// Braking limit, rev/s in a second.
     brake: f32,
-    marks: Deque<Mark, MARKS>,
-    /// Index at which the present window begins.
-    window: u32,
+    marks: Marks,
+    /// Magnet of the newest mark, counted within the turn.
+    magnet: u32,
+    /// Time between the two newest pulses, ns, and their angle, 1/[`REV`]; per magnet where some were missing between.
+    interval: u64,
+    gap: u32,
+    /// When the last two turns began, that is ended at magnet 0, and how many pulses have come since without one missing.
+    turns_began: [Instant; 2],
+    unbroken: u32,
+    /// Time for which the line was low in the turn under way, ns.
+    low: u64,
+    /// Low share of the last steady turn, until it is taken.
+    low_share: Option<f32>,
+    /// By how much the last turn was longer than the one before, ns, and the mean size of how much that changes.
+    longer: i64,
+    scatter: u64,
     /// A pulse that came too early to be believed yet.
-    suspect: Option<Instant>,
-    /// So many pulses are taken as missing before the newest one, though braking might explain the gap.
-    late: Option<u32>,
-    /// So many had been taken as missing before a pulse that was late again: the rhythm may yet return.
-    retreated: Option<u32>,
+    suspect: Option<Pulse>,
+    /// Before each of so many newest pulses others are taken as missing, though braking might explain the gap.
+    late: usize,
     /// The last pulses that were dropped as extra stood in the middle.
     extra_in_a_row: u8,
     /// One bit a magnet, newest lowest, set where its pulse was missing.
     missed: u32,
+    /// Width of the newest pulse, ns.
+    width: u64,
+    pub(super) calm: Calm,
     pub(super) placement: Placement,
 }
 
 impl Track {
     pub(super) fn new(pulses: u16, brake_rpm_per_s: f32) -> Self {
+        let pulses = u32::from(pulses.max(1));
         Track {
-            pulses: u32::from(pulses.max(1)),
+            pulses,
             brake: brake_rpm_per_s / 60.0,
-            marks: Deque::new(),
-            window: 0,
+            marks: Marks::new(),
+            magnet: 0,
+            interval: 0,
+            gap: REV / pulses,
+            turns_began: [Instant::ZERO; 2],
+            unbroken: 0,
+            low: 0,
+            low_share: None,
+            longer: 0,
+            scatter: 0,
             suspect: None,
-            late: None,
-            retreated: None,
+            late: 0,
             extra_in_a_row: 0,
             missed: 0,
+            width: 0,
+            calm: Calm::new(pulses),
             placement: Placement::new(pulses),
         }
     }
 
     /// Starts anew from pulses that agree, oldest first. Which magnet is which is not known any more.
-    pub(super) fn start<'a>(&mut self, pulses: impl Iterator<Item = &'a Pulse>) {
+    pub(super) fn start<'a>(
+        &mut self,
+        pulses: impl Iterator<Item = &'a Pulse>,
+        rejected: &mut Rejected,
+    ) {
         self.marks.clear();
-        self.window = 0;
+        self.magnet = 0;
+        self.interval = 0;
+        self.unbroken = 0;
         self.suspect = None;
-        self.late = None;
-        self.retreated = None;
+        self.late = 0;
         self.extra_in_a_row = 0;
         self.missed = 0;
+        self.scatter = 0;
         self.placement.forget();
-        for (index, pulse) in (0..).zip(pulses) {
-            self.remember(Mark {
-                at: pulse.at,
-                index,
-            });
+        self.calm.clear();
+        for &pulse in pulses {
+            self.accept(pulse, 1, rejected);
         }
     }
 
     /// When the last believed pulse came.
     pub(super) fn last(&self) -> Option<Instant> {
-        self.marks.back().map(|m| m.at)
+        self.marks.last()
     }
 
-    fn remember(&mut self, mark: Mark) {
-        if self.marks.is_full() {
-            self.marks.pop_front();
+    fn next_magnet(&self) -> u32 {
+        if self.magnet + 1 >= self.pulses {
+            0
+        } else {
+            self.magnet + 1
         }
-        // Room was just made.
-        let _ = self.marks.push_back(mark);
-    }
-
-    /// The mark `back` magnets before the newest one, if that magnet's pulse is remembered. O(missing pulses).
-    fn back(&self, back: u32) -> Option<Mark> {
-        let wanted = self.marks.back()?.index.checked_sub(back)?;
-        // Without a missing pulse the place is exact; each missing one moves it towards the newest.
-        let mut place = (self.marks.len() - 1).saturating_sub(back as usize);
-        loop {
-            let mark = *self.marks.get(place)?;
-            if mark.index >= wanted {
-                // Places before this one hold older magnets only.
-                return (mark.index == wanted).then_some(mark).or_else(|| {
-                    let before = *self.marks.get(place.checked_sub(1)?)?;
-                    (before.index == wanted).then_some(before)
-                });
-            }
-            place += 1;
-        }
-    }
-
-    fn between(&self, from: Mark, to: Mark) -> Option<Span> {
-        let time = to.at.since(from.at).secs_f32();
-        let angle = self.placement.angle(from.index, to.index);
-        (time > 0.0 && angle > 0.0).then_some(Span { angle, time })
     }
 
     /// The stretch between the pulses `from` and `to` magnets before the newest one.
     pub(super) fn span(&self, from: u32, to: u32) -> Option<Span> {
-        self.between(self.back(from)?, self.back(to)?)
+        let time = self
+            .marks
+            .back(to)?
+            .since(self.marks.back(from)?)
+            .secs_f32();
+        let angle = self.placement.angle(self.magnet, from, to);
+        (time > 0.0 && angle > 0.0).then_some(Span { angle, time })
     }
 
     /// The stretch from the newest pulse to one that may be coming at `at`; where placement is unknown it may be shorter than
     /// an even one by the factor `unknown`.
     pub(super) fn next_span(&self, at: Instant, unknown: f32) -> Span {
-        let index = self.marks.back().map_or(0, |m| m.index);
-        let even = self.placement.angle(index, index + 1);
+        let even = rev(self.placement.gap(self.next_magnet()));
         let angle = if self.placement.known() {
             even
         } else {
@@ -167,54 +179,71 @@ impl Track {
         }
     }
 
-    /// The last interval between two pulses, however many magnets it spans.
-    pub(super) fn last_interval(&self) -> Option<Span> {
-        let newest = *self.marks.back()?;
-        let before = *self.marks.get(self.marks.len().checked_sub(2)?)?;
-        self.between(before, newest)
-    }
-
     /// The last whole turn, or all that is known where that is less.
     pub(super) fn turn(&self) -> Option<Span> {
-        let newest = *self.marks.back()?;
-        let reach = newest.index.saturating_sub(self.pulses);
-        let from = self
-            .back(self.pulses)
-            .or_else(|| self.marks.iter().find(|m| m.index >= reach).copied())?;
-        self.between(from, newest)
+        (1..=self.pulses)
+            .rev()
+            .find_map(|back| self.span(back, 0))
+            .or_else(|| (self.pulses..self.marks.held()).find_map(|back| self.span(back, 0)))
     }
 
-    /// The fast view, rev/s: a quarter of a turn where placement is known, a whole one before.
+    /// The fast view, rev/s: a quarter of a turn where placement is known, a whole one before. While the speed changes it
+    /// is carried on from the middle of that stretch to its end, as far as it is safe.
     pub(super) fn quick(&self) -> Option<f32> {
-        let part = if self.placement.known() {
-            self.span(self.pulses.div_ceil(4), 0)
-        } else {
-            None
+        let part = self.pulses.div_ceil(4);
+        let (speed, back) = match self.span(part, 0).filter(|_| self.placement.known()) {
+            Some(span) => (span.speed(), part),
+            None => (self.turn()?.speed(), self.pulses),
         };
-        part.or_else(|| self.turn()).map(Span::speed)
+        let Some(before) = self.span(2 * back, back).map(Span::speed) else {
+            return Some(speed);
+        };
+        let gain = (speed - before) / 2.0;
+        if gain.abs() < RIPPLE * speed || self.calm.is_steady() {
+            return Some(speed);
+        }
+        Some(speed + gain.clamp(-CARRY * speed, CARRY * speed))
     }
 
-    /// The calm view, rev/s: whole turns of the present window, at most [`CALM_TURNS`] or [`CALM`], whichever is longer.
-    pub(super) fn calm(&self) -> Option<f32> {
-        let newest = *self.marks.back()?;
-        let turn = self.turn()?.speed();
-        let known = newest.index.saturating_sub(self.window) / self.pulses;
-        // A float-to-integer cast saturates.
-        let wanted = CALM_TURNS.max((CALM.secs_f32() * turn) as u32);
-        let most = known.min(wanted).min((MARKS as u32 - 1) / self.pulses);
-        (1..=most)
+    /// The calm view, rev/s, and its standard error as a share of it: the line through the window, or whole turns from
+    /// end to end where there is none yet.
+    pub(super) fn calm(&self) -> Option<(f64, f32)> {
+        if let Some(speed) = self.calm.speed() {
+            return Some(speed);
+        }
+        let turns = self
+            .calm
+            .steady_turns()
+            .min(self.marks.held() / self.pulses);
+        let span = (1..=turns)
             .rev()
             .find_map(|turns| self.span(turns * self.pulses, 0))
-            .map_or(Some(turn), |span| Some(span.speed()))
+            .or_else(|| self.turn())?;
+        let speed = span.speed();
+        // Nothing is known of the scatter about a line yet: what the last two turns differ by stands for it.
+        let before = self.span(2 * self.pulses, self.pulses).map(Span::speed);
+        let last = self.span(self.pulses, 0).map_or(speed, Span::speed);
+        let error = before.map_or(UNKNOWN, |before| (before / last - 1.0).abs());
+        Some((
+            f64::from(speed),
+            error.max(self.jitter().unwrap_or(0.0) / span.time),
+        ))
     }
 
-    /// Whether one speed has explained the pulses for this long and for [`CALM_TURNS`] turns.
+    /// Whether one speed has explained the pulses for this long and for three turns.
     pub(super) fn steady_for(&self, time: Duration) -> bool {
-        let Some((newest, turn)) = self.marks.back().zip(self.turn()) else {
-            return false;
-        };
-        let turns = newest.index.saturating_sub(self.window) / self.pulses;
-        turns >= CALM_TURNS && turns as f32 / turn.speed() >= time.secs_f32()
+        let last = self.last().unwrap_or(Instant::ZERO);
+        self.calm.is_steady() && last.since(self.calm.since()) >= time
+    }
+
+    /// Standard deviation of a pulse's time, s, from how much turns differ; ripple is in it. `None` before it is known.
+    pub(super) fn jitter(&self) -> Option<f32> {
+        (self.scatter > 0).then(|| Duration::from_nanos(self.scatter).secs_f32() / SCATTER)
+    }
+
+    /// Low share of the spacing over the last steady turn, once.
+    pub(super) fn take_low_share(&mut self) -> Option<f32> {
+        self.low_share.take()
     }
 
     /// More than a quarter of the last 32 magnets gave no pulse.
@@ -235,8 +264,9 @@ impl Track {
 
     /// When the next pulse is expected after the newest one, s.
     pub(super) fn expected(&self) -> Option<f32> {
-        let newest = self.marks.back()?;
-        Some(self.placement.angle(newest.index, newest.index + 1) / self.last_interval()?.speed())
+        let next = self.placement.gap(self.next_magnet()) as f32;
+        (self.interval > 0)
+            .then(|| Duration::from_nanos(self.interval).secs_f32() * next / self.gap as f32)
     }
 
     /// Whether a pulse at this time keeps the rhythm of those before.
@@ -245,112 +275,190 @@ impl Track {
             .last()
             .zip(self.expected())
             .map(|(last, expected)| at.since(last).secs_f32() / expected);
-        self.marks.len() > 2 && steps.is_some_and(|steps| (EARLY..1.0 / EARLY).contains(&steps))
+        self.marks.held() > 2 && steps.is_some_and(|steps| (EARLY..1.0 / EARLY).contains(&steps))
     }
 
-    /// Takes the next pulse; O(1).
+    /// Takes the next pulse; O(1), but for the end of a turn.
     ///
     /// An early pulse with an implausible width never makes the spindle faster: a magnet parked at its switching point
     /// shakes.
-    pub(super) fn push(&mut self, at: Instant, plausible: bool, rejected: &mut Rejected) {
-        let late = self.late.take();
-        let overdue =
-            |track: &Track| Some(at.since(track.last()?).secs_f32() >= LATE * track.expected()?);
-        if let Some(missing) = late
-            && overdue(self) == Some(true)
-        {
-            // Late again: the spindle has become slower, and none was missing.
-            self.retreat(missing, rejected);
-            self.accept(at, 1, rejected);
-            self.retreated = Some(missing);
-            return;
+    pub(super) fn push(&mut self, pulse: Pulse, plausible: bool, rejected: &mut Rejected) {
+        let pulse = self.without_noise(pulse, rejected);
+        let Some(newest) = self.last().filter(|_| self.interval > 0) else {
+            return self.accept(pulse, 1, rejected);
+        };
+        // The rhythm kept, as nearly every pulse keeps it: 3/4 and 3/2 of what is expected, without a division.
+        let interval = pulse.at.since(newest).nanos().min(LONGEST);
+        let come = interval * u64::from(self.gap);
+        let due = self.interval * u64::from(self.placement.gap(self.next_magnet()));
+        let in_time = 4 * come >= 3 * due && 2 * come < 3 * due;
+        if in_time && self.suspect.is_none() {
+            self.late = 0;
+            self.accept(pulse, 1, rejected);
+        } else {
+            self.out_of_time(pulse, newest, plausible, rejected);
         }
-        let retreated = self.retreated.take();
-        let (Some(newest), Some(expected)) = (self.last(), self.expected()) else {
-            return self.accept(at, 1, rejected);
+    }
+
+    /// A piece of noise just before a passage looks like its beginning. The beginning that one expects is believed.
+    fn without_noise(&self, pulse: Pulse, rejected: &mut Rejected) -> Pulse {
+        if pulse.proven == pulse.at || !self.calm.is_steady() {
+            return pulse;
+        }
+        let expected = self
+            .marks
+            .back(self.pulses - 1)
+            .zip(self.calm.period())
+            .map(|(turn_ago, period)| turn_ago + Duration::from_nanos(period));
+        let off = |at: Instant, from: Instant| at.since(from).max(from.since(at));
+        match expected {
+            Some(expected) if off(pulse.proven, expected) < off(pulse.at, expected) => {
+                rejected.noise += 1;
+                Pulse {
+                    at: pulse.proven,
+                    ..pulse
+                }
+            }
+            _ => pulse,
+        }
+    }
+
+    /// Takes a pulse that is early or late, or one that decides about those before it.
+    fn out_of_time(
+        &mut self,
+        pulse: Pulse,
+        newest: Instant,
+        plausible: bool,
+        rejected: &mut Rejected,
+    ) {
+        let at = pulse.at;
+        let Some(expected) = self.expected() else {
+            return self.accept(pulse, 1, rejected);
         };
         let steps = at.since(newest).secs_f32() / expected;
-        if let Some(missing) = retreated
-            && alike(steps * (missing + 1) as f32, 1.0)
-        {
-            // The rhythm returns: both gaps were missing pulses.
-            self.advance_two(missing, rejected);
-            return self.accept(at, 1, rejected);
+        if self.late > 0 && steps >= LATE {
+            let odd = (steps - libm::roundf(steps)).abs();
+            if odd > EXACT || self.late >= LATE_IN_A_ROW {
+                // Late again: the spindle has become slower, and none was missing.
+                self.retreat(rejected);
+                return self.accept(pulse, 1, rejected);
+            }
+        } else {
+            self.late = 0;
         }
         let Some(suspect) = self.suspect.take() else {
             return match steps < EARLY {
-                true if plausible => self.suspect = Some(at),
-                true => rejected.extra += 1,
-                false => self.accept_late(at, steps, expected, rejected),
+                true if plausible => self.suspect = Some(pulse),
+                true => self.extra(pulse, newest, rejected),
+                false => self.accept_late(pulse, steps, expected, rejected),
             };
         };
         let halves_alike = alike(
-            suspect.since(newest).secs_f32(),
-            at.since(suspect).secs_f32(),
+            suspect.at.since(newest).secs_f32(),
+            at.since(suspect.at).secs_f32(),
         );
         if halves_alike && plausible && (steps < EARLY || self.extra_in_a_row > 0) {
             // Two early intervals that agree, within one spacing or time and again: the spindle is faster.
             self.extra_in_a_row = 0;
             self.accept(suspect, 1, rejected);
-            self.accept(at, 1, rejected);
+            self.accept(pulse, 1, rejected);
             return;
         }
-        rejected.extra += 1;
+        self.extra(suspect, newest, rejected);
         if steps < EARLY {
-            self.suspect = Some(at);
+            self.suspect = Some(pulse);
         } else {
             self.extra_in_a_row = u8::from(halves_alike);
-            self.accept_late(at, steps, expected, rejected);
+            self.accept_late(pulse, steps, expected, rejected);
+        }
+    }
+
+    /// Drops a pulse between two expected ones; close behind a passage it is that passage, doubled.
+    fn extra(&self, pulse: Pulse, newest: Instant, rejected: &mut Rejected) {
+        let behind = pulse.at.since(newest).nanos().saturating_sub(self.width);
+        if behind < self.width / 2 {
+            rejected.doubled += 1;
+        } else {
+            rejected.extra += 1;
         }
     }
 
     /// Takes a pulse that is not early. Whole spacings late, it is taken as a sign of missing pulses, which is the higher
     /// speed; where braking might explain the gap as well, the next pulse tells.
-    fn accept_late(&mut self, at: Instant, steps: f32, expected: f32, rejected: &mut Rejected) {
+    fn accept_late(&mut self, pulse: Pulse, steps: f32, expected: f32, rejected: &mut Rejected) {
         let whole = libm::roundf(steps);
         if steps < LATE || (steps - whole).abs() > MISSING_WITHIN {
-            return self.accept(at, 1, rejected);
+            return self.accept(pulse, 1, rejected);
         }
-        let missing = whole as u32 - 1;
         let interval = expected * steps;
         // Braking may have begun with the interval before.
         let speed = 1.0 / (expected * self.pulses as f32) - self.brake * expected / 2.0;
         let braked = (self.brake * interval).min(speed);
         let least = interval * (speed - braked / 2.0) * self.pulses as f32;
-        self.accept(at, 1 + missing, rejected);
-        if least < 1.0 + MISSING_WITHIN {
-            self.late = Some(missing);
+        let spacing = Duration::from_secs_f32(expected).nanos();
+        if self.width > spacing - spacing / 4 {
+            rejected.merged = rejected.merged.saturating_add(1);
         }
+        self.accept(pulse, whole as u32, rejected);
+        self.late = if least < 1.0 + MISSING_WITHIN {
+            self.late + 1
+        } else {
+            0
+        };
     }
 
-    /// No pulses were missing before the newest mark after all.
-    fn retreat(&mut self, missing: u32, rejected: &mut Rejected) {
-        if let Some(newest) = self.marks.back_mut() {
-            newest.index -= missing;
-            self.window = self.window.min(newest.index);
+    /// No pulses were missing before the newest marks after all.
+    fn retreat(&mut self, rejected: &mut Rejected) {
+        let mut late: Vec<Instant, LATE_IN_A_ROW> = Vec::new();
+        let mut missing = 0;
+        for _ in 0..core::mem::take(&mut self.late) {
+            if let Some((at, before)) = self.marks.pop() {
+                missing += before;
+                // There are never more of them.
+                let _ = late.push(at);
+            }
         }
+        let count = late.len() as u32;
+        while let Some(at) = late.pop() {
+            self.marks.push(at);
+        }
+        self.turn_back(missing);
         rejected.missing = rejected.missing.saturating_sub(missing);
-        self.missed = (self.missed >> 1).checked_shr(missing).unwrap_or(0) << 1;
+        self.missed = self.missed.checked_shr(missing + count).unwrap_or(0) << count;
+        if let Some((newest, before)) = self.last().zip(self.marks.back(1)) {
+            self.paced(newest.since(before).nanos(), 1);
+        }
+        self.begin_anew();
     }
 
-    /// Pulses were missing before each of the two newest marks.
-    fn advance_two(&mut self, missing: u32, rejected: &mut Rejected) {
-        for mark in self.marks.iter_mut().rev().take(2).zip([2, 1]) {
-            mark.0.index += mark.1 * missing;
-        }
-        self.miss(missing, rejected);
-        self.missed <<= 1;
-        self.miss(missing, rejected);
-        self.missed <<= 1;
+    /// The count of magnets was too high by so many.
+    fn turn_back(&mut self, magnets: u32) {
+        self.magnet = (self.magnet + self.pulses - magnets % self.pulses) % self.pulses;
+    }
+
+    /// The count of magnets has been corrected: no window goes through that.
+    fn begin_anew(&mut self) {
+        self.unbroken = 0;
+        let turn = self.span(self.pulses, 0).map(|turn| turn.time);
+        let turn = turn.map_or(0, |time| Duration::from_secs_f32(time).nanos());
+        let since = self.marks.back(self.pulses).unwrap_or(Instant::ZERO);
+        self.calm.restart(turn, since);
     }
 
     /// The last interval, if it may have been one slow spacing as well as several with pulses missing.
     pub(super) fn doubtful_interval(&self, unknown: f32) -> Option<Span> {
-        self.late?;
-        let newest = self.marks.back()?;
-        let before = self.marks.get(self.marks.len().checked_sub(2)?)?;
-        let time = newest.at.since(before.at).secs_f32();
-        let angle = self.placement.angle(before.index, before.index + 1) / unknown;
+        if self.late == 0 {
+            return None;
+        }
+        let missing = (1..self.marks.held()).find(|&back| self.marks.back(back).is_some())? - 1;
+        let time = self
+            .marks
+            .last()?
+            .since(self.marks.back(missing + 1)?)
+            .secs_f32();
+        // The first of those magnets.
+        let first = (self.magnet + self.pulses - missing % self.pulses) % self.pulses;
+        let angle = rev(self.placement.gap(first)) / unknown;
         (time > 0.0).then_some(Span { angle, time })
     }
 
@@ -360,45 +468,95 @@ impl Track {
         self.missed = self.missed.checked_shl(missing).unwrap_or(0) | ones;
     }
 
-    /// Takes a pulse as the `steps`-th magnet after the newest one.
-    fn accept(&mut self, at: Instant, steps: u32, rejected: &mut Rejected) {
-        let before = self.calm();
-        self.miss(steps - 1, rejected);
-        self.missed <<= 1;
-        let index = self.marks.back().map_or(0, |m| m.index + steps);
-        self.remember(Mark { at, index });
-        let turn = self.span(self.pulses, 0);
-        let change = before
-            .zip(turn)
-            .map_or(0.0, |(before, turn)| (turn.speed() / before - 1.0).abs());
-        if change > STEADY_SHARE {
-            // A turn that the window's speed does not explain begins a new window.
-            self.window = index.saturating_sub(self.pulses);
-        }
-        let turns = turn.zip(self.span(2 * self.pulses, self.pulses));
-        match (turns, self.last_interval()) {
-            (Some((turn, before)), Some(interval))
-                if (turn.time / before.time - 1.0).abs() < LEARN_SHARE && steps == 1 =>
-            {
-                self.placement.learn(index, interval.time / turn.time);
-            }
-            _ => self.placement.interrupt(),
-        }
-        if index >= RENUMBER {
-            self.renumber();
+    /// The pace of the newest pulse: its interval over `steps` magnets.
+    fn paced(&mut self, interval: u64, steps: u32) {
+        let interval = interval.clamp(1, LONGEST);
+        if steps == 1 {
+            self.interval = interval;
+            self.gap = self.placement.gap(self.magnet);
+        } else {
+            self.interval = (interval / u64::from(steps)).max(1);
+            let angle = self.placement.angle(self.magnet, steps, 0);
+            self.gap = ((angle * REV as f32 / steps as f32) as u32).max(1);
         }
     }
 
-    /// Keeps indices small: 2^31 pulses come in a month at full rate.
-    fn renumber(&mut self) {
-        let oldest = self.marks.front().map_or(0, |m| m.index);
-        let shift = oldest - oldest % self.pulses;
-        self.window = self.window.saturating_sub(shift);
-        for mark in self.marks.iter_mut() {
-            mark.index -= shift;
+    /// Takes a pulse as the `steps`-th magnet after the newest one.
+    fn accept(&mut self, pulse: Pulse, steps: u32, rejected: &mut Rejected) {
+        let before = self.last();
+        self.width = pulse.width.nanos();
+        if steps > 1 {
+            self.skip(pulse.at, steps - 1, rejected);
+        }
+        self.missed <<= 1;
+        self.magnet = self.next_magnet();
+        self.marks.push(pulse.at);
+        if let Some(before) = before {
+            self.paced(pulse.at.since(before).nanos(), steps);
+        }
+        self.low = self.low.wrapping_add(self.width);
+        self.unbroken = self.unbroken.saturating_add(1);
+        if let Some(turn_ago) = self.marks.back(self.pulses) {
+            self.calm.check(pulse.at.since(turn_ago).nanos(), turn_ago);
+        }
+        self.calm.pulse(pulse.at);
+        self.turned(pulse.at);
+    }
+
+    /// Passes magnets whose pulses are missing before the one at `at`; their times are filled in evenly by angle.
+    fn skip(&mut self, at: Instant, missing: u32, rejected: &mut Rejected) {
+        self.miss(missing, rejected);
+        let before = self.last().unwrap_or(at);
+        let interval = at.since(before).secs_f32();
+        self.unbroken = 0;
+        let fill = missing < self.pulses.max(2);
+        let next = (self.magnet + missing + 1) % self.pulses;
+        let whole = self.placement.angle(next, missing + 1, 0);
+        for skipped in 1..=missing.min(u32::from(u8::MAX)) {
+            self.marks.push_missing();
+            if fill {
+                self.magnet = self.next_magnet();
+                let part = self.placement.angle(self.magnet, skipped, 0) / whole;
+                self.calm
+                    .pulse(before + Duration::from_secs_f32(interval * part));
+            }
+        }
+        if !fill {
+            self.magnet = (self.magnet + missing) % self.pulses;
+            self.calm.clear();
         }
     }
+
+    /// At the end of a turn that was steady like the one before it: learns from it. O(pulses).
+    fn turned(&mut self, at: Instant) {
+        if self.magnet != 0 {
+            return;
+        }
+        let low = core::mem::take(&mut self.low);
+        let [first, second] = self.turns_began;
+        self.turns_began = [second, at];
+        if self.unbroken <= 2 * self.pulses {
+            return;
+        }
+        let (before, turn) = (second.since(first).nanos(), at.since(second).nanos());
+        let differ = turn.abs_diff(before);
+        if differ > turn >> LEARN_SHIFT {
+            return;
+        }
+        // Both are turns that agree: far less than 2^63 ns.
+        let longer = turn.wrapping_sub(before) as i64;
+        let change = longer.abs_diff(core::mem::replace(&mut self.longer, longer));
+        self.scatter = match self.scatter {
+            0 => change.max(1),
+            known => known - (known >> SCATTER_SHIFT) + (change >> SCATTER_SHIFT),
+        };
+        self.placement.learn(&self.marks, turn);
+        self.low_share = Some(low as f32 / turn as f32);
+    }
 }
+
+/// The error of a speed of which nothing but one turn is known: the largest error that placement makes (see the start).
+const UNKNOWN: f32 = 0.1;
 
 /// Within 30 % of each other.
 fn alike(a: f32, b: f32) -> bool {
