@@ -6,7 +6,8 @@ use std::io::{self, Write};
 use std::path::PathBuf;
 use std::process::ExitCode;
 
-use clap::{Parser, Subcommand};
+use clap::{CommandFactory, FromArgMatches, Parser, Subcommand};
+use rimrate_core::error::{Rejected, text};
 use rimrate_core::machine;
 use rimrate_core::tacho::Config;
 use rimrate_sim::advise::Advise;
@@ -80,11 +81,11 @@ enum Command {
         #[arg(long, value_name = "NAME")]
         signal: Option<String>,
         /// Hardest stop of the machine, rpm per second.
-        #[arg(long, value_name = "RPM_PER_S", default_value_t = machine::DEFAULT_BRAKE_RPM_PER_S)]
-        brake: f32,
+        #[arg(long, value_name = "RPM_PER_S", default_value_t = machine::DEFAULT_BRAKE_RPM_PER_S.to_string())]
+        brake: String,
         /// Slowest speed worth reading, rpm.
-        #[arg(long, value_name = "RPM", default_value_t = machine::DEFAULT_SLOWEST_RPM)]
-        slowest: f32,
+        #[arg(long, value_name = "RPM", default_value_t = machine::DEFAULT_SLOWEST_RPM.to_string())]
+        slowest: String,
         /// Keep the readings as CSV: time_s, rpm, signal.
         #[arg(long, value_name = "FILE")]
         csv: Option<PathBuf>,
@@ -92,7 +93,7 @@ enum Command {
 }
 
 fn main() -> ExitCode {
-    let result = match Cli::parse().command {
+    let result = match parse().command {
         None => shift(),
         Some(Command::Advise(advise)) => advise.run(&mut io::stdout().lock()),
         Some(Command::Play {
@@ -108,7 +109,7 @@ fn main() -> ExitCode {
             brake,
             slowest,
             csv,
-        }) => config(&pulses, brake, slowest).and_then(|config| {
+        }) => config(&pulses, &brake, &slowest).and_then(|config| {
             let outcome = replay::replay(&capture, config, signal.as_deref(), csv.as_deref())?;
             print(|out| outcome.report(out))
         }),
@@ -116,10 +117,22 @@ fn main() -> ExitCode {
     match result {
         Ok(()) => ExitCode::SUCCESS,
         Err(fail) => {
-            eprintln!("error: {fail}");
+            // One line, whatever was typed.
+            eprintln!("error: {}", fail.to_string().replace(['\n', '\r'], " "));
             ExitCode::from(fail.status())
         }
     }
+}
+
+/// Reads the command line. A value may begin with a minus sign: it is then refused by name and range, not as an option.
+fn parse() -> Cli {
+    let command = Cli::command().mut_subcommands(|command| {
+        command.mut_args(|arg| {
+            let value = !arg.is_positional() && arg.get_action().takes_values();
+            arg.allow_hyphen_values(value)
+        })
+    });
+    Cli::from_arg_matches(&command.get_matches()).unwrap_or_else(|e| e.exit())
 }
 
 fn shift() -> Result<(), Fail> {
@@ -146,18 +159,34 @@ fn finish(scenario: &Scenario, keep: &Keep) -> Result<(), Fail> {
     }
 }
 
-fn config(pulses: &str, brake: f32, slowest: f32) -> Result<Config, Fail> {
-    let allowed = || {
-        Fail::input(format!(
-            "pulses: `{pulses}` is no whole number; allowed: 1 to {} in a revolution",
-            machine::MAX_PULSES
-        ))
-    };
-    let pulses: u64 = pulses.parse().map_err(|_| allowed())?;
+fn config(pulses: &str, brake: &str, slowest: &str) -> Result<Config, Fail> {
     Ok(Config {
-        pulses: machine::pulses(u16::try_from(pulses).unwrap_or(u16::MAX)).map_err(Fail::input)?,
-        brake_rpm_per_s: machine::braking(brake).map_err(Fail::input)?,
-        slowest: machine::slowest(slowest).map_err(Fail::input)?,
+        pulses: option("pulses", pulses, machine::pulses, machine::pulses(0))?,
+        brake_rpm_per_s: option("brake", brake, machine::braking, machine::braking(0.0))?,
+        slowest: option("slowest", slowest, machine::slowest, machine::slowest(0.0))?,
+    })
+}
+
+/// Reads an option's number and checks it. `zero` is what the check says of 0: it knows what is allowed.
+fn option<N: std::str::FromStr, T>(
+    name: &str,
+    word: &str,
+    check: impl Fn(N) -> Result<T, Rejected>,
+    zero: Result<T, Rejected>,
+) -> Result<T, Fail> {
+    let checked = match word.parse() {
+        Ok(number) => check(number),
+        Err(_) => zero.map_err(|e| Rejected {
+            problem: "is not allowed",
+            ..e
+        }),
+    };
+    checked.map_err(|e| {
+        Fail::input(Rejected {
+            field: text(name),
+            value: text(word),
+            ..e
+        })
     })
 }
 

@@ -153,12 +153,9 @@ fn read(
     let mut now = Instant::ZERO;
     let mut counts: Option<u64> = None;
     let mut level: Option<bool> = None;
-    loop {
-        // Asked before the command is read, the line is the one on which it stands.
+    while let Some(command) = parser.next().transpose().map_err(|e| Fail::file(path, e))? {
+        // The parser has not yet gone beyond the end of the command's line.
         let line = parser.line();
-        let Some(command) = parser.next().transpose().map_err(|e| Fail::file(path, e))? else {
-            break;
-        };
         match command {
             Command::Timestamp(count) => {
                 if let Some(before) = counts.filter(|&before| count < before) {
