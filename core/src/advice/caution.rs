@@ -231,7 +231,7 @@ impl fmt::Display for Caution {
                 );
             }
             Caution::Overload { depth_mm } => {
-                f.write_str("The motor is the limit: it would slow down or stall at the speed that the edge allows.")?;
+                f.write_str("The motor is the limit: it would slow down or stall at the setting that all else allows.")?;
                 return match depth_mm {
                     Some(depth) => write!(
                         f,

@@ -30,6 +30,8 @@ pub struct Cut {
     pub load: Option<Load>,
     /// The largest depth, mm, that the motor pulls at this feed and at the fastest setting that all other bounds allow.
     pub depth_limit_mm: Option<f32>,
+    /// The motor does not pull the cut at that setting: it has to run slower, or the cut be smaller.
+    pub overloaded: bool,
     /// Roughness that feed and nose leave at best.
     pub finish: Option<Finish>,
     /// Time of one pass at the advised setting, min.

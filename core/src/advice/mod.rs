@@ -170,6 +170,10 @@ pub fn advise(setup: &Setup, machine: &Machine) -> Advice {
         let depth = demand?.depth_of(torque)?;
         Some(to_centre.map_or(depth, |radius| depth.min(radius)))
     });
+    cut.overloaded = cut
+        .load
+        .zip(answer.pick.setting())
+        .is_some_and(|(load, set)| !machine.pulls(Some(load.torque_nm), &set.label, set.rpm));
     if let Some(torque) = cut.load.map(|l| l.torque_nm) {
         let power = machine
             .power_limit(torque)
@@ -322,11 +326,7 @@ fn cautions(setup: &Setup, machine: &Machine, advice: &Advice) -> Vec<Caution, M
     if setup.material.caution().is_some() {
         mind(Caution::Material(setup.material));
     }
-    let stalls = cut
-        .load
-        .zip(advice.pick.setting())
-        .is_some_and(|(load, set)| !machine.pulls(Some(load.torque_nm), &set.label, set.rpm));
-    if stalls || matches!(advice.window.high.reason, Reason::Power | Reason::Torque) {
+    if cut.overloaded {
         mind(Caution::Overload {
             depth_mm: cut.depth_limit_mm,
         });

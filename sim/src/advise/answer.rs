@@ -140,6 +140,7 @@ impl Answer<'_> {
                 "power_kw": set.map(|n| round(l.power_kw(n))),
                 "in_range": l.in_range,
             })),
+            "overloaded": cut.overloaded,
             "depth_limit_mm": cut.depth_limit_mm.map(round),
             "finish": cut.finish.map(|f| json!({
                 "ra_um": round(f.ra_um),
@@ -388,7 +389,7 @@ impl Answer<'_> {
         power.extend(cut.thrust_n.map(|t| format!("thrust {} N", n(t, 0))));
         power.extend(cut.depth_limit_mm.map(|d| {
             format!(
-                "pulls {} mm of depth at the speed that all else allows",
+                "pulls {} mm of depth at the setting that all else allows",
                 n(d, 2)
             )
         }));
