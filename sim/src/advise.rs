@@ -47,14 +47,14 @@ pub struct Advise {
     /// Cutting fluid at the edge: flood or dry.
     #[arg(long, default_value = "flood")]
     coolant: String,
-    #[command(flatten)]
-    details: DetailOptions,
     /// Machine: geared-lathe, variable-lathe, drill-press, or a profile file.
     #[arg(long, default_value = "geared-lathe")]
     machine: PathBuf,
     /// Print JSON instead of text.
     #[arg(long)]
     json: bool,
+    #[command(flatten)]
+    details: DetailOptions,
 }
 
 impl Advise {

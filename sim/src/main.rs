@@ -46,6 +46,9 @@ enum Command {
         rimrate advise --material mild-steel --tool hss --operation rough-turning --diameter \"25 mm\"\n  \
         rimrate advise --material brass --tool hss --operation drilling --diameter \"1/8 in\" --machine drill-press --json\n  \
         rimrate advise --material grey-cast-iron --tool carbide --operation facing --diameter \"150 mm\" --holder faceplate --cap 400\n  \
+        rimrate advise --material low-alloy-steel --tool carbide --operation rough-turning --diameter \"50 mm\" --depth \"4 mm\"\n  \
+        rimrate advise --material mild-steel --tool coated-carbide --operation finish-turning --diameter \"50 mm\" --box-speed \"250 m/min\" --life \"2 h\" --ra \"1.6 um\"\n  \
+        rimrate advise --material mild-steel --tool hss --operation threading --diameter \"12 mm\" --lead \"1.75 mm\" --runout \"6 mm\"\n  \
         rimrate advise --list")]
     Advise(Box<Advise>),
     /// Play a scenario file without a face, as fast as it goes.
