@@ -147,9 +147,11 @@ impl Gate {
     /// One stretch of low, from `fell` to `rose`.
     fn low(&mut self, fell: Instant, rose: Instant) -> Option<Pulse> {
         let piece = rose.since(fell).nanos();
+        // A magnet that was parked at the sensor, or a short circuit, is no passage: against it every gap is short.
+        let passing = |width: u64| if width > PARKED.nanos() { 0 } else { width };
         let joins = |p: &Passage| {
             let gap = fell.since(p.last_rise).nanos();
-            gap.saturating_mul(JOIN_SHARE) < piece.max(p.width().nanos())
+            gap.saturating_mul(JOIN_SHARE) < passing(piece).max(passing(p.width().nanos()))
         };
         let mut passage = match self.passage.take() {
             Some(p) if joins(&p) => {

@@ -536,7 +536,9 @@ impl Tacho {
         self.low_share = Some(match self.low_share {
             Some(known) => {
                 let believed = share.clamp(known / LOW_SHARE_AGREES, known * LOW_SHARE_AGREES);
-                known + (believed - known) / 16.0
+                // A magnet that comes off makes the share smaller: when it is back, it must be known again.
+                let turns = if believed < known { 1024.0 } else { 16.0 };
+                known + (believed - known) / turns
             }
             None => share,
         });
