@@ -451,3 +451,50 @@ fn speeds_and_feeds_of_the_whole_table_have_a_surface() {
         }
     }
 }
+
+#[test]
+fn the_box_counts_the_edge_shows_it_on_the_why_page_and_starts_anew_after_a_hold() {
+    use rimrate_core::edge_account::Counted;
+    use rimrate_core::instrument::Event;
+    use rimrate_core::panel::{Knob, Page};
+    use rimrate_tests::Clocked;
+    let mut clocked = Clocked::new(machine("geared-lathe"), Some(bar(25.0)));
+    let press = |clocked: &mut Clocked, seconds: f64| {
+        clocked.event(Event::Press(Knob::Right));
+        clocked.rest(seconds);
+        clocked.event(Event::Release(Knob::Right));
+    };
+    press(&mut clocked, 0.1);
+    clocked.rest(20.0);
+    assert_eq!(
+        clocked.instrument.view().edge.counted(),
+        Counted::Nothing,
+        "nothing turned"
+    );
+    // Two minutes in the step of 280 rpm, less the first turns, which the tacho needs.
+    let life = clocked.instrument.view().advice.cut.edge.unwrap();
+    let minutes = life.expected_min(std::f32::consts::PI * 25.0 * 280.0 / 1000.0);
+    // (27.4 / 21.99)^(1 / 0.2) = 3.00 times the 60 min of the table.
+    assert!((minutes - 180.0).abs() < 1.0, "{minutes}");
+    clocked.spin(280.0, 120.0);
+    let edge = clocked.instrument.view().edge;
+    let want = 2.0 / minutes;
+    assert!(
+        (0.98..1.001).contains(&(edge.used() / want)),
+        "{} of {want}",
+        edge.used()
+    );
+    assert_eq!(edge.counted(), Counted::Turning);
+    // Standing still uses nothing up.
+    clocked.rest(60.0);
+    let rested = clocked.instrument.view().edge;
+    assert!((rested.used() - edge.used()) / want < 0.02);
+    press(&mut clocked, 0.1);
+    assert_eq!(clocked.instrument.view().page, Page::Why(0));
+    press(&mut clocked, 1.0);
+    let view = clocked.instrument.view();
+    assert_eq!(
+        (view.page, view.edge.percent(), view.edge.counted()),
+        (Page::Why(0), 0, Counted::Nothing)
+    );
+}

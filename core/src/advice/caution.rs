@@ -25,6 +25,11 @@ pub enum Caution {
     Interrupted,
     /// Even the slowest setting is too fast.
     SlowestTooFast,
+    /// No setting has the torque for the cut.
+    NothingPulls {
+        /// The depth, mm, that the setting pulls that all else allows.
+        depth_mm: Option<f32>,
+    },
     /// A bar too slender for its support.
     Slender {
         /// Free length over diameter.
@@ -73,8 +78,10 @@ pub enum Caution {
     LifeNotReached,
     /// The motor is the limit.
     Overload {
-        /// The depth, mm, that it pulls at the speed that everything else allows.
+        /// The depth, mm, that it pulls at the setting that everything else allows.
         depth_mm: Option<f32>,
+        /// On an inverter slower gives no more torque.
+        inverter: bool,
     },
     /// The chip is thinner or thicker than the force law is fitted for.
     ForceGuessed,
@@ -118,6 +125,7 @@ impl Caution {
             Caution::OffBalance => "off-balance",
             Caution::Interrupted => "interrupted",
             Caution::SlowestTooFast => "slowest-too-fast",
+            Caution::NothingPulls { .. } => "nothing-pulls",
             Caution::Slender { .. } => "slender",
             Caution::ChuckUnscrews => "chuck-unscrews",
             Caution::StopNotTimed { .. } => "stop-not-timed",
@@ -154,16 +162,27 @@ impl fmt::Display for Caution {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         let words = match *self {
             Caution::NeedsCap { holder, offered } => {
-                let holder = holder.map_or("holder", HolderKind::name);
+                let holder = holder.map_or("something unknown", HolderKind::name);
                 write!(
                     f,
-                    "The {holder} has no stamped speed: set none until you know what it and the work allow, then give it as a cap."
+                    "Held by {holder}, which has no stamped speed: set none until you know what it and the work allow, then give it as a cap."
                 )?;
                 if let Some(cap) = offered {
                     write!(
                         f,
-                        " At {cap} the rim of the work would run at {} m/s (assumed, no source; only for sound work).",
+                        " A rim of the work at {} m/s, n = 60 000 v / (pi D), would be {cap} (assumed, no source; for sound, balanced work only).",
                         one(crate::physics::workholding::RIM_SPEED)
+                    )?;
+                }
+                return Ok(());
+            }
+            Caution::NothingPulls { depth_mm } => {
+                f.write_str("No setting of the machine pulls this cut, and slower is no help: less depth or feed.")?;
+                if let Some(value) = depth_mm {
+                    write!(
+                        f,
+                        " It pulls {} mm of depth.",
+                        Decimal { value, decimals: 2 }
                     )?;
                 }
                 return Ok(());
@@ -230,19 +249,20 @@ impl fmt::Display for Caution {
                     "Below {at} carbide does not cut cleanly: chips weld to the edge and tear it. High-speed steel is the better tool at this speed."
                 );
             }
-            Caution::Overload { depth_mm } => {
+            Caution::Overload { depth_mm, inverter } => {
                 f.write_str("The motor is the limit: it would slow down or stall at the setting that all else allows.")?;
-                return match depth_mm {
-                    Some(depth) => write!(
+                if let Some(value) = depth_mm {
+                    write!(
                         f,
-                        " There it pulls {} mm of depth: take that, or stay slow.",
-                        Decimal {
-                            value: depth,
-                            decimals: 2
-                        }
-                    ),
-                    None => Ok(()),
-                };
+                        " There it pulls {} mm of depth: take that, or run slower.",
+                        Decimal { value, decimals: 2 }
+                    )?;
+                }
+                if inverter {
+                    " Slower on the dial gives no more torque, only a slower belt or gear does."
+                } else {
+                    ""
+                }
             }
             Caution::Peck { first_mm, then_mm } => {
                 return write!(

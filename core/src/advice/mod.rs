@@ -105,6 +105,11 @@ impl Advice {
         uppers
     }
 
+    /// No setting of the machine has the torque for this cut: slower is no help, less depth or feed is.
+    pub fn nothing_pulls(&self) -> bool {
+        matches!(self.pick, Pick::TooFast { .. }) && self.window.high.reason == Reason::Torque
+    }
+
     /// How far the advised setting stays below the best speed, percent; `None` without both.
     pub fn short_percent(&self) -> Option<f32> {
         let best = self.best()?.get();
@@ -304,7 +309,13 @@ fn cautions(setup: &Setup, machine: &Machine, advice: &Advice) -> Vec<Caution, M
         mind(Caution::Interrupted);
     }
     if let Pick::TooFast { .. } = advice.pick {
-        mind(Caution::SlowestTooFast);
+        mind(if advice.nothing_pulls() {
+            Caution::NothingPulls {
+                depth_mm: cut.depth_limit_mm,
+            }
+        } else {
+            Caution::SlowestTooFast
+        });
     }
     if let Some(bar) = cut.bar.filter(Slender::too_slender) {
         mind(Caution::Slender {
@@ -326,9 +337,12 @@ fn cautions(setup: &Setup, machine: &Machine, advice: &Advice) -> Vec<Caution, M
     if setup.material.caution().is_some() {
         mind(Caution::Material(setup.material));
     }
-    if cut.overloaded {
+    if cut.overloaded && !advice.nothing_pulls() {
         mind(Caution::Overload {
             depth_mm: cut.depth_limit_mm,
+            inverter: machine
+                .motor()
+                .is_some_and(|m| m.kind == MotorKind::Inverter),
         });
     }
     let wanted = advice
@@ -414,12 +428,8 @@ fn offered_cap(setup: &Setup, machine: &Machine, holder: Option<HolderKind>) -> 
         return None;
     }
     let n = workholding::rim_speed_cap(setup.diameter.mm(), workholding::RIM_SPEED);
-    let n = Rpm::saturating(n);
-    Some(if n < machine.top_speed() {
-        n
-    } else {
-        machine.top_speed()
-    })
+    // Where the machine does not reach it, it would hold nothing back.
+    Some(Rpm::saturating(n)).filter(|&n| n < machine.top_speed())
 }
 
 fn fastest_setting(machine: &Machine) -> Rpm {

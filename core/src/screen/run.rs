@@ -292,6 +292,9 @@ fn advice<D: DrawTarget<Color = BinaryColor>>(
             Some(moves) => line(moves.words(LAST_LINE), second, target),
             None => line(&setting.label, second, target),
         },
+        Pick::TooFast { .. } if advice.nothing_pulls() => {
+            line("no setting pulls this cut", second, target)
+        }
         Pick::TooFast { over_percent, .. } => line(
             format_args!("slowest is {over_percent:.0} % too fast"),
             second,

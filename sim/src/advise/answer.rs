@@ -299,6 +299,9 @@ impl Answer<'_> {
                     ),
                 );
             }
+            Pick::TooFast { .. } if advice.nothing_pulls() => {
+                say("set no step", "no setting pulls this cut".to_owned())
+            }
             Pick::TooFast {
                 nearest,
                 over_percent,
