@@ -233,7 +233,7 @@ fn a_deep_cut_in_alloy_steel_is_held_by_the_motor_which_says_what_it_pulls() {
         &text,
         &[
             "The motor is the limit",
-            &format!("pulls {limit:.2}").trim_end_matches('0'),
+            format!("pulls {limit:.2}").trim_end_matches('0'),
         ],
     );
     // At that depth the setting is that of all else, a little deeper it is not.
