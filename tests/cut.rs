@@ -285,13 +285,13 @@ fn milling_counts_its_teeth_and_thickens_thin_chips() {
     };
     let wide = at(mill(5.0, Some(4)), "geared-lathe");
     let feed = wide.cut.feed.unwrap();
-    assert_eq!((feed.per_tooth, feed.per_rev), (Some(0.1), Some(0.4)));
+    assert_eq!((feed.per_tooth, feed.per_rev), (Some(0.05), Some(0.2)));
     // A tenth of the diameter: 2 sqrt(0.1 x 0.9) = 0.6, so the feed rises to 1/0.6.
     let narrow = at(mill(1.0, Some(4)), "geared-lathe").cut.feed.unwrap();
-    assert!((narrow.per_tooth.unwrap() - 0.1 / 0.6).abs() < 1e-4);
-    // Removal and load follow: 5 x 2 x 0.4 mm3 a turn.
+    assert!((narrow.per_tooth.unwrap() - 0.05 / 0.6).abs() < 1e-4);
+    // Removal and load follow: 5 x 2 x 0.2 mm3 a turn.
     let n = wide.pick.setting().unwrap().rpm.get();
-    assert!((wide.cut.removal_cm3_min.unwrap() - 4.0 * n / 1000.0).abs() < 1e-3);
+    assert!((wide.cut.removal_cm3_min.unwrap() - 2.0 * n / 1000.0).abs() < 1e-3);
     assert!(wide.cut.load.is_some());
     let uncounted = at(mill(5.0, None), "geared-lathe");
     assert!(uncounted.cautions.contains(&Caution::CountTeeth));

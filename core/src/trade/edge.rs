@@ -51,7 +51,7 @@ pub const fn slowest_useful(material: Material, tool: Tool, operation: Operation
         IsoGroup::P | IsoGroup::N => 50.0,
         IsoGroup::M => 40.0,
         IsoGroup::K => 30.0,
-        IsoGroup::S => 15.0,
+        IsoGroup::S => 10.0,
         IsoGroup::H => 20.0,
     })
 }

@@ -62,9 +62,10 @@ pub fn feed(
             mm: lead?,
             source: Source::common_practice(),
         },
-        // Published for large face mills; small cutters bend and break, so a hundredth of their diameter at the most.
+        // Published for large face mills; small cutters bend and break, so a two-hundredth of their diameter at the
+        // most (common practice, no source).
         Operation::Milling => FeedRow {
-            mm: (diameter / 100.0).clamp(0.01, 0.15),
+            mm: (diameter / 200.0).clamp(0.01, 0.15),
             source: DATA_BOOK_9_8,
         },
         Operation::FlyCutting => FeedRow {

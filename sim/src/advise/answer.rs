@@ -254,9 +254,9 @@ impl Answer<'_> {
                     format!(" of {} {}", row.operation, factors.join(", "))
                 };
                 format!(
-                    "from {} to {}{by}; {}",
+                    "published {} to {} m/min{by}; {}",
                     n(row.range.0.m_min(), 1),
-                    row.range.1,
+                    n(row.range.1.m_min(), 1),
                     row.source.text
                 )
             }
