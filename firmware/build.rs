@@ -4,8 +4,8 @@ use std::path::{Path, PathBuf};
 use std::process::{Command, exit};
 use std::{env, fs};
 
-use rimrate_core::machine::Machine;
-use start::{Record, StartSpec};
+use rimrate_core::machine::{Machine, MachineSpec};
+use start::StartSpec;
 
 #[path = "src/start.rs"]
 mod start;
@@ -46,7 +46,7 @@ fn main() {
     println!("cargo::rustc-env=RIMRATE_BUILD={}", build_name(&root));
 }
 
-/// The profile as the firmware reads it: length and CRC-32 of a postcard record, the record, zeros.
+/// The profile as the firmware reads it: length and CRC-32 of the record, the record (postcard: machine, then start), zeros.
 fn packed(profile: &Path) -> Result<Vec<u8>, String> {
     let text = fs::read_to_string(profile).map_err(|e| e.to_string())?;
     let mut table: toml::Table = text.parse().map_err(|e: toml::de::Error| e.to_string())?;
@@ -54,16 +54,14 @@ fn packed(profile: &Path) -> Result<Vec<u8>, String> {
         None => None,
         Some(value) => Some(value.try_into().map_err(|e| format!("start: {e}"))?),
     };
-    let record = Record {
-        machine: table.try_into().map_err(|e| e.to_string())?,
-        start,
-    };
-    let packed = postcard::to_stdvec(&record).map_err(|e| e.to_string())?;
-    if let Some(start) = &record.start {
+    let machine: MachineSpec = table
+        .try_into()
+        .map_err(|e: toml::de::Error| e.to_string())?;
+    let record = postcard::to_stdvec(&(&machine, &start)).map_err(|e| e.to_string())?;
+    if let Some(start) = &start {
         start.check().map_err(|e| e.to_string())?;
     }
-    Machine::new(record.machine).map_err(|e| e.to_string())?;
-    let record = packed;
+    Machine::new(machine).map_err(|e| e.to_string())?;
     let length = u16::try_from(record.len()).map_err(|e| e.to_string())?;
     let crc = crc::Crc::<u32, crc::NoTable>::new(&crc::CRC_32_ISO_HDLC).checksum(&record);
     let mut bytes = Vec::with_capacity(ROOM);

@@ -53,8 +53,10 @@ unsafe fn SWI_IRQ_1() {
 fn main() -> ! {
     rtt_target::rtt_init_defmt!(ChannelMode::NoBlockSkip, 1024);
     let board = Board::start();
-    let parts = board.wire();
+    let mut parts = board.wire();
     let cause = fault::last_reset(&parts.watchdog);
+    // From here on nothing can hang for good, not even the start.
+    tasks::supervise::start(&mut parts.watchdog);
     defmt::info!(
         "rimrate {=str} build {=str} on {=str}",
         VERSION,

@@ -1,10 +1,11 @@
 //! The machine's profile as `build.rs` packed it.
 
 use crc::{CRC_32_ISO_HDLC, Crc, NoTable};
-use rimrate_core::machine::Machine;
+use rimrate_core::machine::{Machine, MachineSpec};
 use rimrate_core::setup::Setup;
+use static_cell::StaticCell;
 
-use crate::start::Record;
+use crate::start::StartSpec;
 
 /// Bytes reserved in flash.
 const ROOM: usize = 2048;
@@ -17,10 +18,28 @@ static RIMRATE_PROFILE: [u8; ROOM] = *include_bytes!(concat!(env!("OUT_DIR"), "/
 /// The machine and what is chosen at the start, checked once more by the same rules as at build time.
 ///
 /// Panics, and so restarts, where the flash does not hold what was built.
+///
+/// A machine takes three kilobytes, its unchecked form as much, and moving them takes copies: hence the statics and the
+/// functions that are not inlined. What they need on the stack they need one after the other.
 #[inline(never)]
-pub(crate) fn load() -> (Machine, Option<Setup>) {
+pub(crate) fn load() -> (&'static Machine, Option<Setup>) {
+    static MACHINE: StaticCell<Machine> = StaticCell::new();
+    let record = record();
+    let Ok((spec, rest)) = postcard::take_from_bytes::<MachineSpec>(record) else {
+        panic!("profile: no machine");
+    };
+    let machine = MACHINE.init_with(|| match Machine::new(spec) {
+        Ok(machine) => machine,
+        Err(refused) => panic!("profile: {}", refused),
+    });
+    (machine, start(rest))
+}
+
+/// The packed bytes, if they are whole.
+#[inline(never)]
+fn record() -> &'static [u8] {
     // Read as it is in flash, not as the compiler remembers it.
-    let bytes: &[u8] = core::hint::black_box(&RIMRATE_PROFILE);
+    let bytes: &'static [u8] = core::hint::black_box(&RIMRATE_PROFILE);
     let Some((&[l0, l1, c0, c1, c2, c3], rest)) = bytes.split_first_chunk::<6>() else {
         panic!("profile: no header");
     };
@@ -30,12 +49,16 @@ pub(crate) fn load() -> (Machine, Option<Setup>) {
     if crc != u32::from_le_bytes([c0, c1, c2, c3]) {
         panic!("profile: checksum differs");
     }
-    let Ok(record) = postcard::from_bytes::<Record>(record) else {
-        panic!("profile: no record of a machine");
+    record
+}
+
+#[inline(never)]
+fn start(rest: &[u8]) -> Option<Setup> {
+    let Ok(start) = postcard::from_bytes::<Option<StartSpec>>(rest) else {
+        panic!("profile: no start");
     };
-    let start = record.start.map(|s| s.check());
-    match (Machine::new(record.machine), start.transpose()) {
-        (Ok(machine), Ok(start)) => (machine, start),
-        (Err(refused), _) | (_, Err(refused)) => panic!("profile: {}", refused),
+    match start.map(|s| s.check()).transpose() {
+        Ok(setup) => setup,
+        Err(refused) => panic!("profile: {}", refused),
     }
 }

@@ -1,17 +1,9 @@
-//! What stands packed in flash: the machine and what is chosen on it at the start. Shared with `build.rs`.
+//! What is chosen on the machine at the start, as written and packed. Shared with `build.rs`.
 
 use rimrate_core::error::Rejected;
-use rimrate_core::machine::MachineSpec;
 use rimrate_core::setup::{self, Diameter, Setup};
 use rimrate_core::trade::{Coolant, Material, Operation, Tool};
 use rimrate_core::units::{Length, Rpm};
-
-/// One record, in this order.
-#[derive(serde::Serialize, serde::Deserialize)]
-pub(crate) struct Record {
-    pub(crate) machine: MachineSpec,
-    pub(crate) start: Option<StartSpec>,
-}
 
 /// The setup that the box starts with, to be confirmed by its operator like a remembered one; unchecked.
 #[derive(serde::Serialize, serde::Deserialize)]

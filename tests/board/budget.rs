@@ -86,7 +86,7 @@ fn budget_of_time_awake() {
     within(
         "stack used at most",
         board.stack_used() as f64 / 1024.0,
-        40.0,
+        28.0,
         "KiB",
     );
     // 5,000 pulses/s: everything that is not there at rest, shared out over the pulses.

@@ -5,6 +5,7 @@
 
 mod budget;
 mod display;
+mod endurance;
 mod faults;
 mod image;
 mod parity;

@@ -280,7 +280,7 @@ impl Emulator {
     }
 
     /// The lines of the log that begin like this.
-    pub(crate) fn lines<'a>(&'a self, start: &'a str) -> impl Iterator<Item = &'a Line> {
+    pub(crate) fn lines<'a>(&'a self, start: &'a str) -> impl DoubleEndedIterator<Item = &'a Line> {
         self.log.iter().filter(move |l| l.text.starts_with(start))
     }
 
@@ -471,5 +471,6 @@ fn reading_of(text: &str) -> Reading {
         speed: speed(words[2]),
         quick: speed(words[4]),
         overdue: words[6] == "true",
+        ..Reading::NOTHING
     }
 }

@@ -19,7 +19,7 @@ const QUIET: Duration = Duration::from_millis(60);
 /// Samples that have to agree before a push counts; contacts bounce up to 5 ms (common practice, no source).
 const AGREE: u8 = 8;
 /// Held longer than this it is not a hand (common practice, no source).
-const STUCK: Duration = Duration::from_secs(20);
+const STUCK: Duration = Duration::from_secs(10);
 /// Longest time without a check-in.
 const CHECK_IN: Duration = Duration::from_millis(200);
 /// Contact changes from one detent to the next.

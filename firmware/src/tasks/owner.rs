@@ -7,11 +7,14 @@ use embedded_graphics::pixelcolor::BinaryColor;
 use embedded_graphics::prelude::DrawTarget;
 use rimrate_core::beacon::Outputs;
 use rimrate_core::instrument::{Event, Instrument};
+use rimrate_core::machine::Machine;
+use rimrate_core::setup::Setup;
 use rimrate_core::tacho::{Rejected, Signal};
 use rimrate_core::time::Instant;
 use rimrate_core::verdict::Verdict;
+use static_cell::StaticCell;
 
-use super::sense::Sense;
+use super::sense::{Sense, now};
 use super::{MESSAGES, Message, knobs, screen};
 use crate::board::{Capture, Signs};
 use crate::fault::{Cause, Task, at_work, check_in};
@@ -19,17 +22,14 @@ use crate::{notice, profile};
 
 /// Edges are fetched this often while they come. With a picture being drawn in between an over-speed is shown within 6 ms.
 const FETCH: Duration = Duration::from_millis(2);
-/// And this often when none has come for [`REST`].
+/// The instrument is asked what to do at most this often on account of edges alone: a reading costs more than an edge.
+const ASK: Duration = Duration::from_millis(4);
+/// Edges are fetched this often when none has come for [`REST`].
 const FETCH_AT_REST: Duration = Duration::from_millis(10);
 const REST: Duration = Duration::from_secs(1);
 /// The reading is logged this often while the spindle may turn, the counts when they have changed.
 const LOG: Duration = Duration::from_millis(250);
 const LOG_COUNTS: Duration = Duration::from_secs(1);
-
-/// Time as the instrument means it.
-fn now() -> Instant {
-    Instant::from_nanos(Now::now().as_micros() * 1000)
-}
 
 /// Runs for ever.
 #[embassy_executor::task]
@@ -50,9 +50,9 @@ pub(crate) async fn run(owner: &'static mut Owner) -> ! {
     }
 }
 
-/// The instrument and everything around it. A few kilobytes: it lives in a static of its own.
+/// The instrument and everything around it.
 pub(crate) struct Owner {
-    instrument: Instrument,
+    instrument: &'static mut Instrument,
     sense: Sense,
     signs: Signs,
     /// Shown, and the relay held open, until a knob is pressed.
@@ -62,6 +62,7 @@ pub(crate) struct Owner {
     display: bool,
     stuck: bool,
     next_poll: Now,
+    last_poll: Now,
     last_edge: Now,
     verdict: Verdict,
     signal: Signal,
@@ -80,9 +81,15 @@ struct Counts {
     unheard: u32,
 }
 
+/// A few kilobytes: it lives in a static of its own, and nobody else's frame holds it meanwhile.
+#[inline(never)]
+fn start_instrument(machine: &Machine, chosen: Option<Setup>) -> &'static mut Instrument {
+    static INSTRUMENT: StaticCell<Instrument> = StaticCell::new();
+    INSTRUMENT.init_with(|| Instrument::new(now(), machine.clone(), chosen))
+}
+
 impl Owner {
     /// Loads the machine's profile and starts the instrument on it.
-    #[inline(never)]
     pub(crate) fn new(capture: Capture, signs: Signs, cause: Cause) -> Self {
         let (machine, chosen) = profile::load();
         defmt::info!(
@@ -92,7 +99,7 @@ impl Owner {
         );
         let sense = Sense::new(capture, machine.pulses().get());
         let start = Now::now();
-        let instrument = Instrument::new(now(), machine, chosen);
+        let instrument = start_instrument(machine, chosen);
         Owner {
             verdict: instrument.view().verdict,
             instrument,
@@ -103,6 +110,7 @@ impl Owner {
             display: true,
             stuck: false,
             next_poll: start,
+            last_poll: start,
             last_edge: start,
             signal: Signal::Still,
             next_log: start,
@@ -125,7 +133,7 @@ impl Owner {
     /// Fetches edges, and where anything is due lets the instrument say what to do. Says whether more edges wait.
     #[inline(never)]
     fn step(&mut self) -> bool {
-        let instrument = &mut self.instrument;
+        let instrument = &mut *self.instrument;
         let taken = self
             .sense
             .take(|edges| instrument.handle(Instant::ZERO, Event::Edges(edges)));
@@ -136,13 +144,15 @@ impl Owner {
         if taken.edges > 0 {
             self.last_edge = time;
         }
-        if taken.edges > 0 || time >= self.next_poll || self.repaint {
-            // While edges wait the instrument lives in their time: silence that is none would look like a stop.
-            self.poll(taken.more.unwrap_or_else(now));
+        if taken.edges > 0 {
+            self.next_poll = self.next_poll.min(self.last_poll + ASK);
+        }
+        if time >= self.next_poll || self.repaint {
+            self.poll(taken.until);
         }
         self.status(time);
         self.log(time);
-        taken.more.is_some()
+        taken.more
     }
 
     fn hear(&mut self, message: Message) {
@@ -170,6 +180,7 @@ impl Owner {
     }
 
     fn poll(&mut self, now: Instant) {
+        self.last_poll = Now::now();
         let poll = self.instrument.poll(now);
         // Rounded up: woken before its time the instrument would only say so again.
         self.next_poll = Now::from_micros(poll.next.nanos().div_ceil(1000));

@@ -15,6 +15,11 @@ const MASK: u32 = (1 << Capture::BITS) - 1;
 /// otherwise) and no build can get by without it.
 const FIRST: u64 = (1 << Capture::BITS) - 5 * 1_000_000_000 / Capture::TICK_NS;
 
+/// Time as the instrument means it.
+pub(crate) fn now() -> Instant {
+    Instant::from_nanos(Now::now().as_micros() * 1000)
+}
+
 /// Takes the edges.
 pub(crate) struct Sense {
     capture: Capture,
@@ -31,8 +36,11 @@ pub(crate) struct Taken {
     pub(crate) edges: u32,
     /// A window was lost before them.
     pub(crate) lost: bool,
-    /// There is more already: the instrument must not be told a later time than this, the last edge's.
-    pub(crate) more: Option<Instant>,
+    /// There is more already.
+    pub(crate) more: bool,
+    /// Every edge up to this time has been handed on. The instrument must not be told a later one: silence that is none
+    /// would look like a spindle that slows down.
+    pub(crate) until: Instant,
 }
 
 impl Sense {
@@ -54,6 +62,7 @@ impl Sense {
 
     /// Hands on what has come, oldest first.
     pub(crate) fn take(&mut self, mut hand_on: impl FnMut(&[Edge])) -> Taken {
+        let until = now();
         let fresh = self.capture.look();
         // After the look, so that no edge is later than now.
         let now = Now::now().as_micros() * 1000;
@@ -64,6 +73,7 @@ impl Sense {
         if fresh.count == 0 {
             return Taken {
                 lost: fresh.lost,
+                until,
                 ..Taken::default()
             };
         }
@@ -93,7 +103,12 @@ impl Sense {
         Taken {
             edges,
             lost: fresh.lost,
-            more: (left > 0).then_some(reached),
+            more: left > 0,
+            until: if left > 0 {
+                reached
+            } else {
+                until.max(reached)
+            },
         }
     }
 
