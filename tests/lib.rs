@@ -1,5 +1,7 @@
 //! What several checks share: machines, setups, a spindle's edges, and a box with a clock.
 
+pub mod capture;
+
 use std::path::Path;
 
 use rimrate_core::instrument::{Event, Instrument, Poll};

@@ -5,137 +5,11 @@
 use proptest::prelude::*;
 use rimrate_core::machine;
 use rimrate_core::tacho::{Config, Reading, Signal, Tacho};
-use rimrate_core::time::{Duration, Edge, EdgeKind, Instant};
+use rimrate_core::time::{Duration, Edge, Instant};
 use rimrate_core::units::Rpm;
-use rimrate_sim::lathe::{Ripple, Wave};
-use rimrate_sim::sensor::profile::{Piece, Profile};
-use rimrate_sim::sensor::{Fault, Sensor, SensorSpec};
-
-const BRAKE: f64 = 3000.0;
-
-/// A spindle, its sensor, and what happens to both.
-struct Capture {
-    sensor: SensorSpec,
-    seed: u64,
-    start: f64,
-    ripple: f64,
-    pieces: Vec<(Piece, Vec<(Fault, bool)>)>,
-}
-
-impl Capture {
-    fn new(pulses: u32) -> Self {
-        let sensor = SensorSpec {
-            jitter_ns: 1000.0,
-            ..SensorSpec::ideal(pulses)
-        };
-        Capture {
-            sensor,
-            seed: 1,
-            start: 0.3,
-            ripple: 0.0,
-            pieces: Vec::new(),
-        }
-    }
-    fn placed(mut self, degrees: &[f64]) -> Self {
-        self.sensor.placement = degrees.to_vec();
-        self
-    }
-    fn seeded(mut self, seed: u64, start: f64) -> Self {
-        self.seed = seed;
-        self.start = start;
-        self
-    }
-    fn rippled(mut self, share: f64) -> Self {
-        self.ripple = share;
-        self
-    }
-    fn then(self, piece: Piece) -> Self {
-        self.with(piece, &[])
-    }
-    /// A piece at whose start faults begin or end.
-    fn with(mut self, piece: Piece, faults: &[(Fault, bool)]) -> Self {
-        self.pieces.push((piece, faults.to_vec()));
-        self
-    }
-
-    fn edges(&self) -> (Vec<Edge>, Instant) {
-        let mut sensor = Sensor::new(self.sensor.clone(), self.seed);
-        let mut profile = Profile::new(self.start);
-        profile.ripple = Ripple {
-            turn: Wave {
-                share: self.ripple,
-                per_turn: 1.0,
-                phase: 0.4,
-            },
-            belt: Wave {
-                share: self.ripple,
-                per_turn: 0.37,
-                phase: 1.1,
-            },
-        };
-        let mut edges = Vec::new();
-        for (piece, faults) in &self.pieces {
-            for &(fault, on) in faults {
-                sensor.set(fault, on);
-            }
-            profile.run(piece, &mut sensor, &mut |edge| edges.push(edge));
-        }
-        (edges, profile.now)
-    }
-
-    /// True speed without ripple, rpm.
-    fn truth(&self, at: f64) -> f64 {
-        let mut start = 0.0;
-        for (piece, _) in &self.pieces {
-            if at <= start + piece.secs {
-                let share = if piece.secs > 0.0 {
-                    (at - start) / piece.secs
-                } else {
-                    1.0
-                };
-                return piece.from_rpm + (piece.to_rpm - piece.from_rpm) * share;
-            }
-            start += piece.secs;
-        }
-        0.0
-    }
-
-    fn config(&self) -> Config {
-        Config {
-            pulses: machine::pulses(self.sensor.magnets as u16).unwrap(),
-            brake_rpm_per_s: BRAKE as f32,
-            slowest: Rpm::new(10.0).unwrap(),
-        }
-    }
-
-    /// A row every 10 ms: time in s, reading, silence since the last fall of the line in s.
-    fn rows(&self) -> Vec<(f64, Reading, f64)> {
-        let (edges, end) = self.edges();
-        let mut tacho = Tacho::new(self.config());
-        let mut edges = edges.into_iter().peekable();
-        let mut rows = Vec::new();
-        let mut last_fall = None;
-        let mut at = Instant::ZERO;
-        while at <= end {
-            while let Some(edge) = edges.next_if(|e| e.at <= at) {
-                if edge.kind == EdgeKind::Fall {
-                    last_fall = Some(edge.at);
-                }
-                tacho.push(edge);
-            }
-            let silence = last_fall.map_or(f64::INFINITY, |fall: Instant| {
-                at.since(fall).nanos() as f64 / 1e9
-            });
-            rows.push((
-                at.nanos() as f64 / 1e9,
-                tacho.reading(at, |_| true),
-                silence,
-            ));
-            at += Duration::from_millis(10);
-        }
-        rows
-    }
-}
+use rimrate_sim::sensor::profile::Piece;
+use rimrate_sim::sensor::{Fault, SensorSpec};
+use rimrate_tests::capture::{BRAKE, Capture, PLACED_2, PLACED_6};
 
 fn rpm(reading: &Reading) -> f64 {
     reading.speed.map_or(f64::NAN, |n| f64::from(n.get()))
@@ -151,9 +25,6 @@ fn worst_after(capture: &Capture, from: f64) -> f64 {
     }
     worst
 }
-
-const PLACED_2: &[f64] = &[1.0, -1.0];
-const PLACED_6: &[f64] = &[0.0, 3.0, -2.0, 1.5, -3.0, 2.0];
 
 #[test]
 fn a_steady_speed_reads_within_a_thousandth() {

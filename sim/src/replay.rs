@@ -258,8 +258,17 @@ impl Outcome {
         let r = &self.rejected;
         writeln!(
             out,
-            "not counted as pulses: {} joined, {} slivers, {} too close, {} extra, {} disordered; {} missing",
-            r.joined, r.slivers, r.too_close, r.extra, r.disordered, r.missing
+            "not counted as pulses: {} joined, {} slivers, {} noise, {} doubled, {} extra, {} too close, {} shaken, {} disordered; {} missing, {} merged",
+            r.joined,
+            r.slivers,
+            r.noise,
+            r.doubled,
+            r.extra,
+            r.too_close,
+            r.shaken,
+            r.disordered,
+            r.missing,
+            r.merged
         )?;
         match (self.last.signal, self.last.speed) {
             (Signal::Turning, Some(n)) => {

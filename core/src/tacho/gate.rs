@@ -6,10 +6,14 @@
 //!
 //! A pulse is reported at the rise that proves it wide enough; later pieces of the same passage only widen it.
 
+use heapless::Vec;
+
 use crate::time::{Duration, Edge, EdgeKind, Instant};
 
 /// A gap below this share of the passage joins. A toothed wheel may be low for up to nine tenths of its pitch.
 const JOIN_SHARE: u64 = 10;
+/// Where passages and gaps are known, a gap below this share of the shorter one joins.
+const KNOWN_JOIN_SHARE: u64 = 4;
 /// A low narrower than this share of the recent passages is a sliver. Magnets of one collar differ less than that,
 /// and so do two passages that follow one another in a run-up.
 const SLIVER_SHARE: u64 = 4;
@@ -30,8 +34,6 @@ pub(super) const SHORTEST_PERIOD: Duration = Duration::from_micros(45);
 pub(super) struct Pulse {
     /// Its first fall.
     pub(super) at: Instant,
-    /// Fall of the piece that proved it wide enough: what came before may have been noise.
-    pub(super) proven: Instant,
     /// From its first fall to its last rise as known when it was reported.
     pub(super) width: Duration,
 }
@@ -67,6 +69,8 @@ pub struct Rejected {
 struct Passage {
     first: Instant,
     last_rise: Instant,
+    /// How long the line was low in it, ns: what noise adds to that is little.
+    low: u64,
     reported: bool,
 }
 
@@ -76,18 +80,31 @@ impl Passage {
     }
 }
 
+/// Pieces of a passage whose falls are remembered.
+const BEGINS: usize = 6;
+/// Times are cut here before they are multiplied, ns (two years).
+const LONG: u64 = 1 << 56;
+
+fn times(factor: u64, time: Duration) -> u64 {
+    factor * time.nanos().min(LONG)
+}
+
 #[derive(Clone, Debug, Default)]
 pub(super) struct Gate {
     last_edge: Option<Instant>,
     /// When the line fell, while it is low.
     low_since: Option<Instant>,
     passage: Option<Passage>,
+    /// Falls of its pieces until it was reported, the first and the last ones: any of them may be its beginning, and what
+    /// came before noise.
+    begins: Vec<Instant, BEGINS>,
     /// First fall of the last reported pulse.
     reported_at: Option<Instant>,
     /// Fall of the piece that proved it wide enough: what came before may have been noise.
     proven_at: Option<Instant>,
-    /// Width of the recent passages; zero where nothing is known.
+    /// Width of the last passage and the gap behind it, ns; zero where nothing is known.
     usual: u64,
+    usual_gap: u64,
     /// First fall of the last passage or sliver that is over.
     closed_at: Option<Instant>,
     /// Slivers in a row that a faster spindle could have made.
@@ -99,6 +116,7 @@ impl Gate {
     /// Forgets the usual width: after a standstill the next passages may have any.
     pub(super) fn forget_width(&mut self) {
         self.usual = 0;
+        self.usual_gap = 0;
     }
 
     /// When the pulse that began at `at` certainly had begun.
@@ -112,8 +130,8 @@ impl Gate {
     /// When a pulse began that may be under way at `now` but is not proven yet.
     pub(super) fn under_way(&self, now: Instant) -> Option<Instant> {
         let begun = self.passage.filter(|p| {
-            let pause = self.low_since.unwrap_or(now).since(p.last_rise).nanos();
-            !p.reported && pause.saturating_mul(JOIN_SHARE) < self.usual
+            let pause = self.low_since.unwrap_or(now).since(p.last_rise);
+            !p.reported && times(JOIN_SHARE, pause) < self.usual
         });
         begun.map(|p| p.first).or(self.low_since)
     }
@@ -147,33 +165,34 @@ impl Gate {
     /// One stretch of low, from `fell` to `rose`.
     fn low(&mut self, fell: Instant, rose: Instant) -> Option<Pulse> {
         let piece = rose.since(fell).nanos();
-        // A magnet that was parked at the sensor, or a short circuit, is no passage: against it every gap is short.
-        let passing = |width: u64| if width > PARKED.nanos() { 0 } else { width };
-        let joins = |p: &Passage| {
-            let gap = fell.since(p.last_rise).nanos();
-            gap.saturating_mul(JOIN_SHARE) < passing(piece).max(passing(p.width().nanos()))
-        };
         let mut passage = match self.passage.take() {
-            Some(p) if joins(&p) => {
+            Some(p) if self.joins(&p, fell, piece) => {
                 self.rejected.joined += 1;
+                if !p.reported {
+                    self.began(fell);
+                }
                 Passage {
                     last_rise: rose,
+                    low: p.low + piece,
                     ..p
                 }
             }
             before => {
                 if let Some(p) = before {
-                    self.close(p);
+                    self.close(p, fell);
                 }
+                self.begins.clear();
+                self.began(fell);
                 Passage {
                     first: fell,
                     last_rise: rose,
+                    low: piece,
                     reported: false,
                 }
             }
         };
         let width = passage.width();
-        let wide_enough = width.nanos().saturating_mul(SLIVER_SHARE) >= self.usual;
+        let wide_enough = SLIVER_SHARE * passage.low.min(LONG) >= self.usual;
         let report = !passage.reported && wide_enough;
         let too_close = report
             && self
@@ -189,27 +208,57 @@ impl Gate {
             self.proven_at = Some(fell);
             Pulse {
                 at: passage.first,
-                proven: fell,
                 width,
             }
         })
     }
 
-    /// A passage or a sliver is over: the next low is not part of it.
-    fn close(&mut self, passage: Passage) {
+    fn began(&mut self, fell: Instant) {
+        if self.begins.is_full() {
+            self.begins.remove(1);
+        }
+        // Room was just made.
+        let _ = self.begins.push(fell);
+    }
+
+    /// Where the pulse that was just reported may have begun, earliest first.
+    pub(super) fn begins(&self) -> &[Instant] {
+        &self.begins
+    }
+
+    /// Whether a piece that fell at `fell` belongs to the passage before it: by a gap that is short against the passage, or
+    /// short against both a passage and a gap as they have been.
+    fn joins(&self, p: &Passage, fell: Instant, piece: u64) -> bool {
+        let gap = fell.since(p.last_rise);
+        let begun = if p.reported { 0 } else { self.usual };
+        // A magnet that was parked at the sensor, or a short circuit, is no passage: against it every gap is short.
+        let passing = |width: u64| if width > PARKED.nanos() { 0 } else { width };
+        let widest = passing(piece).max(passing(p.width().nanos())).max(begun);
+        times(JOIN_SHARE, gap) < widest
+            || times(KNOWN_JOIN_SHARE, gap) < self.usual.min(self.usual_gap)
+    }
+
+    /// A passage or a sliver is over: the next low, from `next` on, is not part of it.
+    fn close(&mut self, passage: Passage, next: Instant) {
         let width = passage.width();
         let before = self.closed_at.replace(passage.first);
         if passage.reported {
             self.narrow = 0;
             self.usual = if width > PARKED { 0 } else { width.nanos() };
+            // Where pulses are missing, or the spindle slows down, the gap is longer than it will be: it follows slowly.
+            let gap = next.since(passage.last_rise).nanos();
+            self.usual_gap = match self.usual_gap {
+                0 => gap,
+                known => gap.min(known + known / 8),
+            };
             return;
         }
         self.rejected.slivers += 1;
         let spacing = before.map_or(Duration::MAX, |before| passage.first.since(before));
-        let could_turn = width.nanos().saturating_mul(THINNEST) >= spacing.nanos();
+        let could_turn = times(THINNEST, width) >= spacing.nanos();
         self.narrow = if could_turn { self.narrow + 1 } else { 0 };
         if self.narrow >= NARROW_IS_USUAL {
-            self.usual = 0;
+            self.forget_width();
             self.narrow = 0;
         }
     }

@@ -133,6 +133,8 @@ const LOW_SHARE_MANY: f32 = 0.85;
 const MANY_PULSES: u16 = 8;
 /// With experience: how far, as a factor, the low share may be from what was seen while turning.
 const LOW_SHARE_AGREES: f32 = 1.8;
+/// The same for a start: placement makes it differ by a fifth, and a run-up from rest by a sixth.
+const START_AGREES: f32 = 1.5;
 /// A spindle that stops may end with two wide passages; after this many in a row it is a parked magnet that shakes.
 const TOO_WIDE_IS_STILL: u8 = 3;
 /// Until the placement is known, the largest gap may be this much wider than an even one: six magnets, each 3 degrees off.
@@ -161,14 +163,14 @@ const STARTS: [Start; 4] = [
     },
     Start {
         intervals: 3,
-        interval: 1.06,
-        share: 1.12,
+        interval: 1.05,
+        share: 1.08,
         experienced: true,
     },
     Start {
         intervals: 5,
         interval: 1.40,
-        share: 1.60,
+        share: 1.40,
         experienced: true,
     },
     Start {
@@ -178,6 +180,10 @@ const STARTS: [Start; 4] = [
         experienced: false,
     },
 ];
+/// Six magnets each 3 degrees off: 66 degrees after 54.
+const LONGER: f32 = 1.23;
+/// From so many magnets on a start takes one interval more.
+const SEVERAL: u16 = 4;
 /// The longest start has this many pulses.
 const START_PULSES: usize = 8;
 /// From lost, two intervals as before are enough.
@@ -193,9 +199,12 @@ const SPEEDS_AGREE: f32 = 0.10;
 const OVERDUE: f32 = 1.005;
 /// Later than this factor on its time, not even a missing pulse explains a silence.
 const LATE: f32 = 1.25;
+/// So many pulses may be missing in a row where that takes no longer than a moment in which nobody could act.
+const MISSING_IN_A_MOMENT: f32 = 5.0;
+const MOMENT: Duration = Duration::from_millis(150);
 const JITTER: Duration = Duration::from_micros(5);
 /// So many standard deviations of the jitter as measured may stand between two pulses.
-const JITTERS: f32 = 6.0;
+const JITTERS: f32 = 8.0;
 /// What shares are counted in.
 const SHARE: u64 = 1 << 10;
 /// Silences are cut here where they are multiplied, ns (18 minutes).
@@ -242,9 +251,12 @@ impl Tacho {
     /// Takes one edge of the sensor's line. O(1), but for the end of a turn, which is O(pulses).
     pub fn push(&mut self, edge: Edge) {
         self.settle(edge.at);
-        let Some(pulse) = self.gate.push(edge) else {
+        let Some(mut pulse) = self.gate.push(edge) else {
             return;
         };
+        if let (State::Turning, begins @ [_, _, ..]) = (self.state, self.gate.begins()) {
+            pulse.at = self.track.likeliest(begins);
+        }
         self.counted = self.counted.wrapping_add(1);
         let interval = self
             .latest
@@ -320,9 +332,11 @@ impl Tacho {
             && speed.is_some_and(|n| n > self.config.slowest && !explains(n));
         // One missing pulse is no slower spindle, and where magnets are gone silence proves even less: the verdict assumes
         // the higher speed.
+        let expected = self.track.expected().unwrap_or(f32::MAX);
         let missing = 1.0 + self.track.longest_missing().max(1) as f32;
+        let missing = missing.max((MOMENT.secs_f32() / expected).min(MISSING_IN_A_MOMENT));
         let quick = quick.map(|n| rpm(n.min(bound * missing)));
-        let due = self.track.expected().unwrap_or(f32::MAX) * missing * LATE;
+        let due = expected * missing * LATE;
         let bounded = calm.is_some_and(|(n, _)| n as f32 > bound);
         Reading {
             overdue: self.silence(now).secs_f32() > due,
@@ -410,8 +424,8 @@ impl Tacho {
     /// The longest silence of a spindle at its slowest speed.
     fn longest_gap(&self) -> Duration {
         let slowest = self.config.slowest.rev_per_s();
-        let longest = self.track.placement.largest(1.0) / slowest * signal::STILL_MARGIN;
-        Duration::from_secs_f32(longest)
+        let longest = self.track.placement.largest(1.0) / slowest;
+        Duration::from_secs_f32(longest * signal::STILL_MARGIN + self.jitter(longest))
     }
 
     fn lost_at(&self, now: Instant) -> Option<Instant> {
@@ -462,14 +476,7 @@ impl Tacho {
     fn silence_bound(&self, now: Instant) -> f32 {
         let gap = self.track.placement.largest(1.0);
         let silence = self.silence(now).secs_f32();
-        // Jitter as measured counts as far as a tenth of an even gap: that is what placement may be off before it
-        // is known. A single magnet has none.
-        let jitter = JITTERS * self.track.jitter().unwrap_or(0.0);
-        let most = match self.config.pulses.get() {
-            1 => 0.0,
-            _ => silence * (UNKNOWN_GAP - 1.0),
-        };
-        let proven = silence - jitter.min(most).max(JITTER.secs_f32());
+        let proven = silence - self.jitter(silence).max(JITTER.secs_f32());
         if proven > 0.0 {
             gap * OVERDUE / proven
         } else {
@@ -477,10 +484,25 @@ impl Tacho {
         }
     }
 
+    /// What jitter may add to a silence, s. It counts as far as a tenth of the silence: that is what placement may be off
+    /// before it is known. A single magnet has none.
+    fn jitter(&self, silence: f32) -> f32 {
+        if self.config.pulses.get() == 1 {
+            return 0.0;
+        }
+        let measured = JITTERS * self.track.jitter().unwrap_or(0.0);
+        measured.min(silence * (UNKNOWN_GAP - 1.0))
+    }
+
     /// How many of the last pulses are a start.
     fn starts(&self) -> Option<usize> {
-        if let Some(start) = STARTS.iter().find(|start| self.agree(start)) {
-            return Some(start.intervals + 1);
+        // More magnets are more chances for one that shakes, and a pulse more costs less time.
+        let more = usize::from(self.config.pulses.get() >= SEVERAL);
+        for start in &STARTS {
+            let intervals = (start.intervals + more).min(START_PULSES - 1);
+            if self.agree(intervals, start) {
+                return Some(intervals + 1);
+            }
         }
         let State::Lost(speed) = self.state else {
             return None;
@@ -489,21 +511,24 @@ impl Tacho {
         let as_before = self
             .starting_speed(count)
             .is_some_and(|n| (n / speed - 1.0).abs() < SPEEDS_AGREE);
-        (as_before && self.agree(&RETURN)).then_some(count)
+        (as_before && self.agree(RETURN.intervals, &RETURN)).then_some(count)
     }
 
     /// Whether the last pulses are such a start.
-    fn agree(&self, start: &Start) -> bool {
-        let Some(skip) = self.latest.len().checked_sub(start.intervals + 1) else {
+    fn agree(&self, intervals: usize, start: &Start) -> bool {
+        let Some(skip) = self.latest.len().checked_sub(intervals + 1) else {
             return false;
         };
-        let narrowest = match (start.experienced, self.low_share) {
+        // With experience at both ends, without only at the wide one.
+        let (narrowest, widest) = match (start.experienced, self.low_share) {
             (true, None) => return false,
-            (true, Some(share)) => share / LOW_SHARE_AGREES,
-            (false, _) => 0.0,
+            (true, Some(share)) => (share / START_AGREES, share * START_AGREES),
+            (false, Some(share)) => (share / LOW_SHARE_AGREES, share * LOW_SHARE_AGREES),
+            (false, None) => (0.0, self.widest_share()),
         };
-        let widest = self.widest_share();
         let alike = |a: f32, b: f32, factor: f32| a < factor * b && b < factor * a;
+        // A spindle that starts does not slow down: longer intervals come from placement alone.
+        let longer = start.interval.min(LONGER);
         let mut pulses = self.latest.iter().skip(skip);
         let Some(mut before) = pulses.next() else {
             return false;
@@ -513,7 +538,9 @@ impl Tacho {
             let interval = pulse.at.since(before.at).secs_f32();
             let share = before.width.secs_f32() / interval;
             let as_last = last.is_none_or(|(i, s)| {
-                alike(interval, i, start.interval) && alike(share, s, start.share)
+                interval < longer * i
+                    && i < start.interval * interval
+                    && alike(share, s, start.share)
             });
             if !(narrowest..=widest).contains(&share) || !as_last {
                 return false;

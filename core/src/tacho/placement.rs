@@ -99,6 +99,18 @@ impl Placement {
         Some(360.0 * (high - mean).max(mean - low))
     }
 
+    /// Guesses the largest gap from the first turn, that is the newest one of `marks`; up to `most` of an even one.
+    pub(super) fn guess(&mut self, marks: &Marks, turn_ns: u64, most: f32) {
+        if self.largest > 0 {
+            return;
+        }
+        let interval = |back| Some(marks.back(back)?.since(marks.back(back + 1)?).nanos());
+        let widest = (0..self.pulses).filter_map(interval).max().unwrap_or(0);
+        let even = 1.0 / self.pulses as f32;
+        let share = widest as f32 / turn_ns.max(1) as f32;
+        self.largest = (share.clamp(even, most * even) * REV as f32) as u32;
+    }
+
     /// Learns from a steady turn, that is the newest one of `marks` and ends at magnet 0. O(pulses), once a turn.
     pub(super) fn learn(&mut self, marks: &Marks, turn_ns: u64) {
         if self.pulses == 1 {

@@ -12,8 +12,8 @@ use crate::time::{Duration, Instant};
 pub(super) const LOST_AFTER: Duration = Duration::from_millis(500);
 /// and after this many expected pulses.
 const LOST_AFTER_PULSES: f32 = 4.0;
-/// How closely two turns at the same speed agree: ripple of belt and gears is 0.1 to 0.5 % (common practice, no source).
-const RIPPLE: f32 = 0.003;
+/// How closely two turns at the same speed agree: belt and gears ripple by 0.1 to 0.5 % each (common practice, no source).
+const RIPPLE: f32 = 0.006;
 /// A spindle whose last turn is faster than expected by more is still speeding up.
 const SPEEDING_UP: f32 = 0.01;
 /// Ripple comes on top of the hardest braking.

@@ -7,6 +7,7 @@
 
 use heapless::Vec;
 
+use super::UNKNOWN_GAP;
 use super::calm::Calm;
 use super::gate::{Pulse, Rejected};
 use super::marks::Marks;
@@ -17,18 +18,34 @@ use crate::time::{Duration, Instant};
 const LEARN_SHIFT: u32 = 8;
 /// A pulse earlier than this share of the expected spacing is suspected to be an extra one.
 const EARLY: f32 = 0.75;
+/// A pulse after a suspected one that keeps the rhythm so closely, in spacings, makes that one an extra one.
+const IN_TIME: f32 = 0.08;
+/// The second of two early intervals may be shorter than the first by so much: a spindle that is clutched in.
+const FASTER: f32 = 0.55;
+const ALIKE: f32 = 1.3;
+/// Noise is shorter than this (common practice, no source); with few magnets passages are longer.
+const NOISE: Duration = Duration::from_micros(200);
+const MANY: u32 = 8;
 /// A pulse later than this share may mean that pulses are missing.
 const LATE: f32 = 1.5;
 /// A whole number of spacings must be met this closely, in spacings, to say that pulses are missing.
 const MISSING_WITHIN: f32 = 0.25;
 /// A spindle that slows down is not late by whole spacings time and again: so closely,
 const EXACT: f32 = 0.1;
-/// nor this often in a row.
-const LATE_IN_A_ROW: usize = 2;
+/// nor for longer than this, s, or this often in a row where that is longer.
+const LATE_FOR: f32 = 0.3;
+const LATE_OF_TWO: usize = 2;
+const LATE_OF_OTHERS: usize = 4;
+const LATE_IN_A_ROW: usize = 8;
+/// A sensor that missed a pulse among so many misses pulses now and then.
+const RESTLESS: u32 = 200;
+/// Fewer missing pulses in a row than this, or than a turn, are filled in for the calm view.
+const FILLED: u32 = 4;
 /// Intervals are cut here, ns (a minute): what is slower is no speed.
 const LONGEST: u64 = 1 << 36;
-/// New turns weigh 2^-4 in the mean scatter.
+/// New turns weigh 2^-4 in the mean scatter when there are so many.
 const SCATTER_SHIFT: u32 = 4;
+const SCATTERS: u32 = 1 + (1 << SCATTER_SHIFT);
 /// Mean size of the third difference of four times with white noise, over the noise's standard deviation:
 /// sqrt(20) sqrt(2 / pi). A steady acceleration is not in it.
 const SCATTER: f32 = 3.568_2;
@@ -67,6 +84,8 @@ pub(super) struct Track {
     /// When the last two turns began, that is ended at magnet 0, and how many pulses have come since without one missing.
     turns_began: [Instant; 2],
     unbroken: u32,
+    /// Pulses since one was missing.
+    since_missing: u32,
     /// Time for which the line was low in the turn under way, ns.
     low: u64,
     /// Low share of the last steady turn, until it is taken.
@@ -74,10 +93,19 @@ pub(super) struct Track {
     /// By how much the last turn was longer than the one before, ns, and the mean size of how much that changes.
     longer: i64,
     scatter: u64,
+    scatters: u32,
+    /// A pulse of a steady spindle is not further from its time than this.
+    usually: Duration,
+    /// Pulses since one that was.
+    since_odd: u32,
     /// A pulse that came too early to be believed yet.
     suspect: Option<Pulse>,
     /// Before each of so many newest pulses others are taken as missing, though braking might explain the gap.
     late: usize,
+    /// Others had been missing not long before those.
+    restless: bool,
+    /// The pace, interval and gap, before the last ones were taken as a slower spindle's.
+    before: Option<(u64, u32)>,
     /// The last pulses that were dropped as extra stood in the middle.
     extra_in_a_row: u8,
     /// One bit a magnet, newest lowest, set where its pulse was missing.
@@ -100,12 +128,18 @@ impl Track {
             gap: REV / pulses,
             turns_began: [Instant::ZERO; 2],
             unbroken: 0,
+            since_missing: RESTLESS,
             low: 0,
             low_share: None,
             longer: 0,
             scatter: 0,
+            scatters: 0,
+            usually: Duration::ZERO,
+            since_odd: 0,
             suspect: None,
             late: 0,
+            restless: false,
+            before: None,
             extra_in_a_row: 0,
             missed: 0,
             width: 0,
@@ -124,11 +158,14 @@ impl Track {
         self.magnet = 0;
         self.interval = 0;
         self.unbroken = 0;
+        self.since_missing = RESTLESS;
         self.suspect = None;
         self.late = 0;
+        self.before = None;
         self.extra_in_a_row = 0;
         self.missed = 0;
         self.scatter = 0;
+        self.scatters = 0;
         self.placement.forget();
         self.calm.clear();
         for &pulse in pulses {
@@ -283,7 +320,6 @@ impl Track {
     /// An early pulse with an implausible width never makes the spindle faster: a magnet parked at its switching point
     /// shakes.
     pub(super) fn push(&mut self, pulse: Pulse, plausible: bool, rejected: &mut Rejected) {
-        let pulse = self.without_noise(pulse, rejected);
         let Some(newest) = self.last().filter(|_| self.interval > 0) else {
             return self.accept(pulse, 1, rejected);
         };
@@ -294,32 +330,25 @@ impl Track {
         let in_time = 4 * come >= 3 * due && 2 * come < 3 * due;
         if in_time && self.suspect.is_none() {
             self.late = 0;
+            self.before = None;
             self.accept(pulse, 1, rejected);
         } else {
             self.out_of_time(pulse, newest, plausible, rejected);
         }
     }
 
-    /// A piece of noise just before a passage looks like its beginning. The beginning that one expects is believed.
-    fn without_noise(&self, pulse: Pulse, rejected: &mut Rejected) -> Pulse {
-        if pulse.proven == pulse.at || !self.calm.is_steady() {
-            return pulse;
-        }
-        let expected = self
-            .marks
-            .back(self.pulses - 1)
-            .zip(self.calm.period())
-            .map(|(turn_ago, period)| turn_ago + Duration::from_nanos(period));
-        let off = |at: Instant, from: Instant| at.since(from).max(from.since(at));
-        match expected {
-            Some(expected) if off(pulse.proven, expected) < off(pulse.at, expected) => {
-                rejected.noise += 1;
-                Pulse {
-                    at: pulse.proven,
-                    ..pulse
-                }
+    /// A piece of noise just before a passage looks like its beginning: of all the pieces' falls the one that a steady spindle
+    /// makes one expect, and else the first.
+    pub(super) fn likeliest(&self, begins: &[Instant]) -> Instant {
+        let first = begins.first().copied().unwrap_or(Instant::ZERO);
+        let turn_ago = self.marks.back(self.pulses - 1);
+        match turn_ago.zip(self.calm.period()) {
+            Some((turn_ago, period)) if self.calm.is_steady() => {
+                let expected = turn_ago + Duration::from_nanos(period);
+                let off = |at: &Instant| at.since(expected).max(expected.since(*at));
+                begins.iter().copied().min_by_key(off).unwrap_or(first)
             }
-            _ => pulse,
+            _ => first,
         }
     }
 
@@ -338,13 +367,29 @@ impl Track {
         let steps = at.since(newest).secs_f32() / expected;
         if self.late > 0 && steps >= LATE {
             let odd = (steps - libm::roundf(steps)).abs();
-            if odd > EXACT || self.late >= LATE_IN_A_ROW {
+            // Of two magnets one may be gone: then every other pulse is missing for good, where none was before.
+            let least = match self.pulses == 2 && !self.restless {
+                true => LATE_OF_TWO,
+                false => LATE_OF_OTHERS,
+            };
+            let enough = ((LATE_FOR / (steps * expected)) as usize).clamp(least, LATE_IN_A_ROW);
+            if odd > EXACT || self.late >= enough {
                 // Late again: the spindle has become slower, and none was missing.
+                self.before = Some((self.interval, self.gap));
                 self.retreat(rejected);
                 return self.accept(pulse, 1, rejected);
             }
         } else {
             self.late = 0;
+        }
+        if let Some((interval, gap)) = self.before.take() {
+            let come = at.since(newest).nanos().min(LONGEST) * u64::from(gap);
+            let due = interval * u64::from(self.placement.gap(self.next_magnet()));
+            if come.abs_diff(due) < due / 16 {
+                // The rhythm from before the late ones returns: they were missing pulses.
+                self.accept(pulse, 1, rejected);
+                return self.begin_anew();
+            }
         }
         let Some(suspect) = self.suspect.take() else {
             return match steps < EARLY {
@@ -353,12 +398,17 @@ impl Track {
                 false => self.accept_late(pulse, steps, expected, rejected),
             };
         };
-        let halves_alike = alike(
+        let (first, second) = (
             suspect.at.since(newest).secs_f32(),
             at.since(suspect.at).secs_f32(),
         );
-        if halves_alike && plausible && (steps < EARLY || self.extra_in_a_row > 0) {
-            // Two early intervals that agree, within one spacing or time and again: the spindle is faster.
+        let halves_alike = alike(first, second);
+        // A pulse of noise does not move the one after it.
+        let out_of_time = (steps - libm::roundf(steps)).abs() > IN_TIME;
+        let no_noise = suspect.width >= NOISE && self.pulses < MANY;
+        let faster = (FASTER * first..ALIKE * first).contains(&second) && (out_of_time || no_noise);
+        if plausible && (faster || halves_alike && self.extra_in_a_row > 0) {
+            // Early twice, out of the rhythm or time and again: the spindle is faster.
             self.extra_in_a_row = 0;
             self.accept(suspect, 1, rejected);
             self.accept(pulse, 1, rejected);
@@ -398,6 +448,9 @@ impl Track {
         let spacing = Duration::from_secs_f32(expected).nanos();
         if self.width > spacing - spacing / 4 {
             rejected.merged = rejected.merged.saturating_add(1);
+        }
+        if self.late == 0 {
+            self.restless = self.since_missing < RESTLESS;
         }
         self.accept(pulse, whole as u32, rejected);
         self.late = if least < 1.0 + MISSING_WITHIN {
@@ -496,11 +549,36 @@ impl Track {
         }
         self.low = self.low.wrapping_add(self.width);
         self.unbroken = self.unbroken.saturating_add(1);
+        self.since_missing = self.since_missing.saturating_add(1);
         if let Some(turn_ago) = self.marks.back(self.pulses) {
             self.calm.check(pulse.at.since(turn_ago).nanos(), turn_ago);
         }
-        self.calm.pulse(pulse.at);
+        let at = self.usual_time(pulse.at, rejected);
+        self.calm.pulse(at);
         self.turned(pulse.at);
+    }
+
+    /// When a steady spindle's newest pulse should have come, if it alone is far off: noise has moved it. A spindle that
+    /// changes its speed moves the next pulse as well.
+    fn usual_time(&mut self, at: Instant, rejected: &mut Rejected) -> Instant {
+        let since_odd = self.since_odd;
+        self.since_odd = since_odd.saturating_add(1);
+        // Neither the next pulse is cut nor the one that would be measured against this one.
+        if since_odd == 0 || since_odd == self.pulses - 1 || !self.calm.is_steady() {
+            return at;
+        }
+        let (Some(turn_ago), Some(period)) = (self.marks.back(self.pulses), self.calm.period())
+        else {
+            return at;
+        };
+        let expected = turn_ago + Duration::from_nanos(period);
+        let off = at.since(expected).max(expected.since(at));
+        if self.scatter == 0 || off <= self.usually {
+            return at;
+        }
+        self.since_odd = 0;
+        rejected.noise = rejected.noise.saturating_add(1);
+        expected
     }
 
     /// Passes magnets whose pulses are missing before the one at `at`; their times are filled in evenly by angle.
@@ -509,7 +587,8 @@ impl Track {
         let before = self.last().unwrap_or(at);
         let interval = at.since(before).secs_f32();
         self.unbroken = 0;
-        let fill = missing < self.pulses.max(2);
+        self.since_missing = 0;
+        let fill = missing < self.pulses.max(FILLED);
         let next = (self.magnet + missing + 1) % self.pulses;
         let whole = self.placement.angle(next, missing + 1, 0);
         for skipped in 1..=missing.min(u32::from(u8::MAX)) {
@@ -535,10 +614,13 @@ impl Track {
         let low = core::mem::take(&mut self.low);
         let [first, second] = self.turns_began;
         self.turns_began = [second, at];
+        let (before, turn) = (second.since(first).nanos(), at.since(second).nanos());
+        if self.unbroken > self.pulses {
+            self.placement.guess(&self.marks, turn, UNKNOWN_GAP);
+        }
         if self.unbroken <= 2 * self.pulses {
             return;
         }
-        let (before, turn) = (second.since(first).nanos(), at.since(second).nanos());
         let differ = turn.abs_diff(before);
         if differ > turn >> LEARN_SHIFT {
             return;
@@ -546,10 +628,16 @@ impl Track {
         // Both are turns that agree: far less than 2^63 ns.
         let longer = turn.wrapping_sub(before) as i64;
         let change = longer.abs_diff(core::mem::replace(&mut self.longer, longer));
-        self.scatter = match self.scatter {
-            0 => change.max(1),
-            known => known - (known >> SCATTER_SHIFT) + (change >> SCATTER_SHIFT),
+        // A plain mean at first.
+        self.scatters = (self.scatters + 1).min(SCATTERS);
+        self.scatter = match self.scatters {
+            1 => 0,
+            2 => change,
+            SCATTERS => self.scatter - (self.scatter >> SCATTER_SHIFT) + (change >> SCATTER_SHIFT),
+            n => (self.scatter * u64::from(n - 2) + change) / u64::from(n - 1),
         };
+        // Mean sizes are 3.6 standard deviations of a pulse: eight of them, and a microsecond.
+        self.usually = Duration::from_nanos(9 * self.scatter / 4) + Duration::from_micros(1);
         self.placement.learn(&self.marks, turn);
         self.low_share = Some(low as f32 / turn as f32);
     }
@@ -560,5 +648,5 @@ const UNKNOWN: f32 = 0.1;
 
 /// Within 30 % of each other.
 fn alike(a: f32, b: f32) -> bool {
-    a < 1.3 * b && b < 1.3 * a
+    a < ALIKE * b && b < ALIKE * a
 }
