@@ -2,7 +2,8 @@
 # Builds the image where only Debian's packages are at hand: the same sources, options and lock file as `cargo build
 # --release` with rustup, and core built from Debian's sources of it.
 #
-#   ./build.sh                   leaves target/image/rimrate-firmware.elf and .uf2
+#   ./build.sh                   leaves rimrate-firmware.elf and .uf2 in target/image, and the same with -sh1106 in their
+#                                names for a display with that controller
 #   BOARD=pico2 ./build.sh       checks that the sources compile for the Pico 2
 #   UF2=no ./build.sh            leaves the .elf only
 #
@@ -40,9 +41,12 @@ export CARGO_TARGET_THUMBV8M_MAIN_NONE_EABIHF_LINKER=/usr/bin/ld.lld
 
 case $board in
 pico)
-    /usr/bin/cargo build --locked --release -Zbuild-std=core
     mkdir -p "$image"
-    cp "$target_dir/thumbv6m-none-eabi/release/rimrate-firmware" "$image/rimrate-firmware.elf"
+    # The plain image last: it stays where cargo leaves it.
+    for display in -sh1106 ""; do
+        /usr/bin/cargo build --locked --release -Zbuild-std=core ${display:+--features sh1106}
+        cp "$target_dir/thumbv6m-none-eabi/release/rimrate-firmware" "$image/rimrate-firmware$display.elf"
+    done
     ;;
 pico2)
     /usr/bin/cargo build --locked --release -Zbuild-std=core \
@@ -60,6 +64,8 @@ if [ "${UF2:-yes}" = yes ]; then
         (unset RUSTC_BOOTSTRAP && cd / && /usr/bin/cargo install --quiet --locked --no-default-features \
             --root "$tools" --version 2.2.0 elf2uf2-rs)
     fi
-    "$tools/bin/elf2uf2-rs" "$image/rimrate-firmware.elf" "$image/rimrate-firmware.uf2"
+    for elf in "$image"/*.elf; do
+        "$tools/bin/elf2uf2-rs" "$elf" "${elf%.elf}.uf2"
+    done
 fi
 ls -l "$image"

@@ -17,7 +17,7 @@ use crate::board;
 
 /// Longest message that is kept.
 const LONGEST: usize = 200;
-const MAGIC: u32 = 0x52_49_4d_32;
+const MAGIC: u32 = 0x5249_4d52;
 const CRC: Crc<u32, NoTable> = Crc::<u32, NoTable>::new(&CRC_32_ISO_HDLC);
 
 /// The tasks that have to check in.

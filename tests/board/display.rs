@@ -19,7 +19,7 @@ fn desk_frame(rpm: f64, mm: f32, from: u64, until: u64) -> Frame {
     desk.run(&[], ms(250));
     desk.touch(Touch::Release(Knob::Left));
     desk.run(&spin(rpm, 2, from, until), Instant::from_nanos(until));
-    desk.frame().clone()
+    *desk.frame()
 }
 
 /// 640 rpm: pixel for pixel what the desk draws. The picture is left as PNG to be looked at.
@@ -43,6 +43,21 @@ fn the_picture_is_the_desks() {
 }
 
 /// The other controller has four columns more and shows the middle.
+#[test]
+fn the_picture_is_the_same_on_an_sh1106() {
+    let (rpm, mm) = (640.0, 16.0);
+    let mut board = confirmed(Start {
+        machine: Some((wide_machine(2), Some(setup(mm)))),
+        sh1106: true,
+        ..Start::default()
+    });
+    let (from, until) = (board.now() + 3_000_000, board.now() + 1_500_000_000);
+    board.edges(&spin(rpm, 2, from, until));
+    board.run_until(until);
+    assert_eq!(board.frame(), &desk_frame(rpm, mm, from, until));
+}
+
+/// What stands is not sent again, and a change alone.
 #[test]
 fn a_changed_number_is_sent_alone() {
     let mut board = wide_board(2, 16.0);
@@ -79,7 +94,7 @@ fn the_lamp_warns_without_a_display_and_the_picture_returns() {
         matches!(warning, Verdict::Fast | Verdict::Danger),
         "{warning:?}"
     );
-    let before = board.frame().clone();
+    let before = *board.frame();
     board.display("unplugged");
     // A number must change for the firmware to notice, or the refresh comes.
     board.touch(Touch::Turn(Knob::Right, 1));
@@ -158,7 +173,7 @@ fn a_stuck_bus_is_freed_by_nine_clocks() {
 fn a_corrupted_display_is_repaired_within_ten_seconds() {
     let mut board = wide_board(2, 25.0);
     board.run_ms(600);
-    let before = board.frame().clone();
+    let before = *board.frame();
     board.display("corrupt");
     board.run_ms(100);
     assert_ne!(board.frame(), &before, "the fault can be seen");

@@ -149,7 +149,7 @@ fn the_relay_is_open_at_power_up() {
 fn knobs_are_debounced_and_their_faults_counted() {
     let mut board = wide_board(2, 25.0);
     board.run_ms(500);
-    let before = board.frame().clone();
+    let before = *board.frame();
     // Both contacts at once, three times: no encoder does that.
     for i in 0..3_u64 {
         for name in ["left_a", "left_b"] {
@@ -199,7 +199,7 @@ fn a_stuck_knob_leaves_the_rest_working() {
         "{:?}",
         board.log
     );
-    let before = board.frame().clone();
+    let before = *board.frame();
     board.press(Knob::Right);
     board.run_ms(500);
     assert_ne!(board.frame(), &before, "the right knob opens the choices");

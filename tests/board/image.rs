@@ -20,7 +20,10 @@ const FLASH_END: u64 = 0x1020_0000;
 const PIN_TABLE: &str = include_str!("../../firmware/src/board/pico.rs");
 
 /// The image that all checks run.
-pub(crate) static IMAGE: LazyLock<Image> = LazyLock::new(Image::load);
+pub(crate) static IMAGE: LazyLock<Image> = LazyLock::new(|| Image::load("rimrate-firmware.elf"));
+/// The one for a display with the other controller.
+pub(crate) static IMAGE_SH1106: LazyLock<Image> =
+    LazyLock::new(|| Image::load("rimrate-firmware-sh1106.elf"));
 
 /// The firmware as it is flashed.
 pub(crate) struct Image {
@@ -32,25 +35,15 @@ pub(crate) struct Image {
 }
 
 impl Image {
-    /// Where the image is: `RIMRATE_FIRMWARE`, or where `firmware/build.sh` leaves it.
-    fn path() -> PathBuf {
-        std::env::var_os("RIMRATE_FIRMWARE").map_or_else(
-            || {
-                PathBuf::from(concat!(
-                    env!("CARGO_MANIFEST_DIR"),
-                    "/../firmware/target/image/rimrate-firmware.elf"
-                ))
-            },
-            PathBuf::from,
-        )
-    }
-
-    fn load() -> Self {
-        let path = Self::path();
+    /// From the folder `RIMRATE_IMAGES`, or where `firmware/build.sh` leaves it.
+    fn load(name: &str) -> Self {
+        let built = concat!(env!("CARGO_MANIFEST_DIR"), "/../firmware/target/image");
+        let folder = std::env::var_os("RIMRATE_IMAGES").unwrap_or_else(|| built.into());
+        let path = PathBuf::from(folder).join(name);
         let elf = std::fs::read(&path).unwrap_or_else(|e| {
             panic!(
-                "the firmware's image {} cannot be read ({e}): build it with firmware/build.sh, or name another one in \
-                 RIMRATE_FIRMWARE",
+                "the firmware's image {} cannot be read ({e}): build it with firmware/build.sh, or name the folder of \
+                 another one in RIMRATE_IMAGES",
                 path.display()
             )
         });

@@ -57,7 +57,7 @@ impl Rig for &mut Both {
             ));
         }
         if self.desk.frame() != &self.frame {
-            self.frame = self.desk.frame().clone();
+            self.frame = *self.desk.frame();
             self.frames_since = now;
         }
         if now.since(self.frames_since).millis() == STANDS_MS {

@@ -20,7 +20,7 @@ use rimrate_sim::frame::Frame;
 use rimrate_sim::rig::{Rig, Touch};
 use serde_json::{Value, json};
 
-use crate::image::{IMAGE, pins, wires};
+use crate::image::{IMAGE, IMAGE_SH1106, Image, pins, wires};
 
 /// From one contact change of a turned knob to the next, ns: faster than any hand, so that the board is not long behind a
 /// desk on which turns take no time.
@@ -62,7 +62,7 @@ pub(crate) struct Start {
     pub(crate) timer_us: u64,
     /// Transfers after which the capture's DMA is triggered anew for the first time; 0 leaves it as it is.
     pub(crate) first_count: u32,
-    /// An SH1106 instead of an SSD1306.
+    /// An SH1106 instead of an SSD1306, and the image for it.
     pub sh1106: bool,
     /// Without a display.
     pub(crate) no_display: bool,
@@ -74,6 +74,7 @@ pub(crate) struct Emulator {
     to: ChildStdin,
     from: BufReader<ChildStdout>,
     pins: BTreeMap<String, u8>,
+    image: &'static Image,
     // Before the log that it reads, in the order of dropping.
     decoder: Box<dyn StreamDecoder + Send + Sync>,
     boot: u64,
@@ -116,12 +117,13 @@ impl Emulator {
             });
         let to = process.stdin.take().expect("is piped");
         let from = BufReader::new(process.stdout.take().expect("is piped"));
-        let image = &*IMAGE;
+        let image: &Image = if start.sh1106 { &IMAGE_SH1106 } else { &IMAGE };
         let mut emulator = Emulator {
             process,
             to,
             from,
             pins: pins(),
+            image,
             decoder: image.table.new_stream_decoder(),
             boot: 0,
             now: 0,
@@ -213,7 +215,7 @@ impl Emulator {
             let (at, boot) = (number(&piece[0]), number(&piece[1]));
             if boot != self.boot {
                 self.boot = boot;
-                self.decoder = IMAGE.table.new_stream_decoder();
+                self.decoder = self.image.table.new_stream_decoder();
             }
             let bytes = BASE64.decode(word(&piece[2])).expect("is base64");
             self.decoder.received(&bytes);
@@ -325,7 +327,7 @@ impl Emulator {
     pub(crate) fn watch(&mut self, functions: &[(&str, &str)]) {
         let functions: serde_json::Map<String, Value> = functions
             .iter()
-            .map(|(name, symbol)| ((*name).to_owned(), Value::from(IMAGE.symbol(symbol).0)))
+            .map(|(name, symbol)| ((*name).to_owned(), Value::from(self.image.symbol(symbol).0)))
             .collect();
         self.ask(&json!({ "do": "watch", "functions": functions }));
     }
@@ -343,8 +345,8 @@ impl Emulator {
 
     /// Bytes of stack used at most since the last reset: how far the paint is gone.
     pub(crate) fn stack_used(&mut self) -> u64 {
-        let (end, _) = IMAGE.symbol("_stack_end");
-        let (start, _) = IMAGE.symbol("_stack_start");
+        let (end, _) = self.image.symbol("_stack_end");
+        let (start, _) = self.image.symbol("_stack_start");
         let stack = self.peek(end, start - end);
         let untouched = stack.iter().take_while(|&&b| b == 0xcc).count() as u64;
         start - end - untouched

@@ -195,8 +195,9 @@ impl Capture {
         pio.sm0.set_config(&config);
         // SAFETY: the machine stands still and these instructions only set a register.
         unsafe {
-            const SET_X_0: u16 = 0b111_00000_001_00000;
-            const SET_Y_1: u16 = 0b111_00000_010_00001;
+            // SET: 111, delay 5 bits, destination 3 bits, data 5 bits (RP2040 data sheet, 3.4.10).
+            const SET_X_0: u16 = 0xe020;
+            const SET_Y_1: u16 = 0xe041;
             pio.sm0.exec_instr(SET_X_0);
             pio.sm0.exec_instr(SET_Y_1);
             // At rest the line is high; begun as if it were low, the first look would be taken for an edge. A jump's target is
