@@ -1,6 +1,7 @@
 //! The cut: life, load, threads, bars, feeds, mills, jaws, dangerous materials, and what to move. Worked out by hand beside each.
 
 use rimrate_core::advice::{Advice, Bound, Caution, Kind, Reason, advise};
+use rimrate_core::machine::Machine;
 use rimrate_core::physics::cutting_speed::surface_speed_m_min;
 use rimrate_core::physics::power;
 use rimrate_core::setup::{
@@ -8,6 +9,7 @@ use rimrate_core::setup::{
 };
 use rimrate_core::trade::{Coolant, Material, Operation, Tool};
 use rimrate_core::units::{Length, SurfaceSpeed};
+use rimrate_sim::profile;
 use rimrate_tests::{bar, machine, rpm};
 
 fn mm(x: f32) -> Length {
@@ -110,6 +112,57 @@ fn the_motor_is_weighed_in_its_own_way() {
         lathe.torque_limit(low * 1.5).unwrap() < rpm(60.0),
         "nothing pulls it"
     );
+}
+
+/// Two gears on a motor of two speeds, 1.5 and 0.75 kW, all of it at the cut.
+fn two_speed() -> Machine {
+    let steps: String = [(100, 0.75), (200, 1.5), (400, 0.75), (800, 1.5)]
+        .iter()
+        .map(|(n, kw)| format!("[[step]]\nlabel = \"{n}\"\nrpm = {n}\nkw = {kw}\n"))
+        .collect();
+    let text = format!(
+        "name = \"two\"\nkind = \"lathe\"\n[motor]\nkind = \"two-speed\"\nkw = 1.5\nefficiency = 1.0\n\
+         [sensor]\npulses = 1\n[[holder]]\nkind = \"three-jaw\"\nrated_rpm = 3000\n{steps}"
+    );
+    profile::parse(&text, "two").unwrap_or_else(|e| panic!("{e}"))
+}
+
+#[test]
+fn the_fastest_step_that_pulls_is_picked_on_a_motor_of_two_speeds() {
+    let machine = two_speed();
+    // 9549 P / n: 71.6 N m at 100 and at 200 rev/min, 17.9 N m at 400 and 800.
+    for (share, step) in [(0.24, "800"), (0.9, "200"), (0.98, "200")] {
+        let deep = |mm_deep: f32| Setup {
+            tool: Tool::CoatedCarbide,
+            details: Details {
+                depth: Some(mm(mm_deep)),
+                ..Details::NONE
+            },
+            ..bar(50.0)
+        };
+        let one = advise(&deep(1.0), &machine).cut.load.unwrap().torque_nm;
+        let advice = advise(&deep(share * 71.6 / one), &machine);
+        let set = advice.pick.setting().unwrap_or_else(|| panic!("{share}"));
+        assert_eq!(set.label, step, "{share}");
+    }
+}
+
+#[test]
+fn where_even_the_slowest_step_has_too_little_power_less_depth_is_the_answer() {
+    // 50 mm deep at 200 mm: the slowest step of 18 rev/min is not too fast for the edge, but for the motor.
+    let deep = Setup {
+        details: Details {
+            depth: Some(mm(50.0)),
+            ..Details::NONE
+        },
+        ..bar(200.0)
+    };
+    let advice = at(deep, "geared-lathe");
+    assert_eq!(advice.window.high.reason, Reason::Power);
+    assert!(advice.nothing_pulls());
+    let says = |c: &Caution| matches!(c, Caution::NothingPulls { depth_mm: Some(d) } if *d < 50.0);
+    assert!(advice.cautions.iter().any(says), "{:?}", advice.cautions);
+    assert!(!advice.cautions.contains(&Caution::SlowestTooFast));
 }
 
 #[test]

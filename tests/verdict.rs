@@ -83,6 +83,26 @@ fn a_lower_bound_above_that_counts_instead_and_one_below_does_not() {
 }
 
 #[test]
+fn nothing_below_the_best_speed_is_slow_for_a_lower_bound_above_it() {
+    use Verdict::{Fast, Right};
+    // The upper bound wins, also where the machine has no setting for it.
+    let advice = Advice {
+        pick: Pick::TooFast {
+            nearest: Setting {
+                label: "a step".parse().unwrap(),
+                rpm: rpm(450.0),
+            },
+            over_percent: 12.5,
+        },
+        ..advice(Some(430.0))
+    };
+    assert_eq!(
+        judged(&advice, &[390.0, 410.0, 450.0]),
+        [Right, Right, Fast]
+    );
+}
+
+#[test]
 fn danger_is_above_the_hard_bound_and_nothing_less() {
     use Verdict::{Danger, Fast, Right};
     let seen = judged(

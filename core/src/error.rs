@@ -10,7 +10,7 @@ use heapless::String;
 #[derive(Clone, Debug, PartialEq, Eq)]
 #[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Rejected {
-    /// Path of the field, as the user wrote or would write it: `diameter`, `drive.steps[3].rpm`.
+    /// Path of the field, as the user wrote or would write it: `diameter`, `step[3].rpm`.
     pub field: String<48>,
     /// The value as given.
     pub value: String<40>,

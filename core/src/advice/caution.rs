@@ -177,7 +177,7 @@ impl fmt::Display for Caution {
                 return Ok(());
             }
             Caution::NothingPulls { depth_mm } => {
-                f.write_str("No setting of the machine pulls this cut, and slower is no help: less depth or feed.")?;
+                f.write_str("No setting of the machine pulls this cut: less depth or feed.")?;
                 if let Some(value) = depth_mm {
                     write!(
                         f,

@@ -73,8 +73,8 @@ impl Advice {
     }
 
     /// Below this the spindle is slow: the greater of the lower bound and 0.90 of the advised setting. A lower bound that the
-    /// advised setting, loaded, does not clear is a caution and no verdict: upper bounds win, and the advised setting reads
-    /// right.
+    /// advised setting, loaded, does not clear, or an upper bound where none is advised, is a caution and no verdict: upper
+    /// bounds win, and the advised setting reads right.
     pub fn slow_below(&self) -> Rpm {
         let set = self.pick.setting().map(|s| s.rpm);
         let step = set.map_or(Rpm::ZERO, |n| n.scaled(SLOW_BELOW));
@@ -82,7 +82,7 @@ impl Advice {
             .window
             .low
             .map(|b| b.at)
-            .filter(|&low| set.is_none_or(|n| low <= n.scaled(LOADED)));
+            .filter(|&low| low <= set.map_or(self.window.high.at, |n| n.scaled(LOADED)));
         match low {
             Some(low) if low > step => low,
             _ => step,
@@ -105,9 +105,9 @@ impl Advice {
         uppers
     }
 
-    /// No setting of the machine has the torque for this cut: slower is no help, less depth or feed is.
+    /// All else would allow a setting, but the motor pulls this cut in none: less depth or feed is the help.
     pub fn nothing_pulls(&self) -> bool {
-        matches!(self.pick, Pick::TooFast { .. }) && self.window.high.reason == Reason::Torque
+        matches!(self.pick, Pick::TooFast { .. }) && self.cut.overloaded
     }
 
     /// How far the advised setting stays below the best speed, percent; `None` without both.

@@ -1,6 +1,6 @@
 //! What the motor gives at the spindle, and whether it pulls a cut.
 
-use super::{Drive, Machine, MachineSpec, MotorKind, in_range};
+use super::{ABOVE_PLATE, Drive, Machine, MachineSpec, MotorKind, in_range};
 use crate::error::Rejected;
 use crate::physics::power;
 use crate::units::Rpm;
@@ -122,10 +122,11 @@ impl Machine {
                 let gives = |s: &super::Step| {
                     power::torque_of(s.kw.unwrap_or(motor.kw) * motor.efficiency, s.rpm.get())
                 };
+                // A step turns up to so much above its plate and shall still lie inside of its own bound.
                 let fits = steps
                     .iter()
                     .filter(|s| gives(s) >= torque)
-                    .map(|s| s.rpm.get());
+                    .map(|s| s.rpm.scaled(ABOVE_PLATE).get());
                 let first = steps.first()?;
                 (fits.reduce(f32::max), first.rpm, gives(first))
             }
