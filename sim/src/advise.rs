@@ -101,6 +101,19 @@ impl Advise {
             Some(word) => find_holder(machine, word).map_err(Fail::input)?,
             None => 0,
         };
+        let tool = known(
+            "tool",
+            &word(&self.tool),
+            Tool::from_id,
+            &Tool::ALL.map(Tool::id),
+        )?;
+        let operation = known(
+            "operation",
+            &word(&self.operation),
+            Operation::from_id,
+            &Operation::ALL.map(Operation::id),
+        )?;
+        let diameter = Diameter::parse(&word(&self.diameter)).map_err(Fail::input)?;
         Ok(Setup {
             material: known(
                 "material",
@@ -108,25 +121,15 @@ impl Advise {
                 Material::from_id,
                 &Material::ALL.map(Material::id),
             )?,
-            tool: known(
-                "tool",
-                &word(&self.tool),
-                Tool::from_id,
-                &Tool::ALL.map(Tool::id),
-            )?,
-            operation: known(
-                "operation",
-                &word(&self.operation),
-                Operation::from_id,
-                &Operation::ALL.map(Operation::id),
-            )?,
+            tool,
+            operation,
             coolant: known(
                 "coolant",
                 &self.coolant,
                 Coolant::from_id,
                 &Coolant::ALL.map(Coolant::id),
             )?,
-            diameter: Diameter::parse(&word(&self.diameter)).map_err(Fail::input)?,
+            diameter,
             holder,
             cap: self
                 .cap
@@ -134,7 +137,7 @@ impl Advise {
                 .map(parse_cap)
                 .transpose()
                 .map_err(Fail::input)?,
-            details: self.details.read(&word(&self.diameter))?,
+            details: self.details.read(diameter, tool, operation)?,
         })
     }
 }

@@ -358,6 +358,14 @@ fn bad_details_are_refused_by_name_value_and_range() {
         ),
         ("--stick-out \"100 mm\" --stock \"0 mm\"", &["stock"]),
         (
+            "--depth \"12.6 mm\"",
+            &["depth", "12.6 mm", "middle", "0.001 mm to 12.5 mm"],
+        ),
+        (
+            "--box-speed \"250 m/min\"",
+            &["box-speed", "250 m/min", "hss", "carbide or coated-carbide"],
+        ),
+        (
             "--lead \"1 mm\" --half-nut ajar",
             &["half-nut", "ajar", "opened, closed, away"],
         ),
@@ -385,6 +393,13 @@ fn bad_details_are_refused_by_name_value_and_range() {
     ] {
         refused(&advise(&format!("{sound} {line}"), &[]), words);
     }
+    // The drill's diameter does not say how thick the bar is that sticks out.
+    let drilling = sound.replace("rough-turning", "drilling");
+    let words = &["stock", "missing", "drill", "0.1 mm to 2000 mm"];
+    refused(
+        &advise(&format!("{drilling} --stick-out \"100 mm\""), &[]),
+        words,
+    );
     // What belongs to another option does not stand alone.
     for alone in [
         "--support free",

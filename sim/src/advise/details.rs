@@ -6,6 +6,7 @@ use clap::Args;
 use rimrate_core::setup::{
     self, Bar, Details, Diameter, HalfNut, InsertBox, Jaws, Life, Ra, Support, Thread,
 };
+use rimrate_core::trade::{Operation, Tool};
 use rimrate_core::units::{Length, SurfaceSpeed};
 
 use crate::fail::Fail;
@@ -87,7 +88,12 @@ pub(super) struct DetailOptions {
 
 impl DetailOptions {
     /// Checks what was typed.
-    pub(super) fn read(&self, diameter: &str) -> Result<Details, Fail> {
+    pub(super) fn read(
+        &self,
+        diameter: Diameter,
+        tool: Tool,
+        operation: Operation,
+    ) -> Result<Details, Fail> {
         let word = |field: &str, text: &str, known: &[&str]| {
             Fail::input(format!(
                 "{field}: `{text}` is unknown; allowed: {}",
@@ -113,7 +119,7 @@ impl DetailOptions {
         };
         let bar = match length("stick-out", &self.stick_out, (0.1, 10_000.0))? {
             None => None,
-            Some(out) => Some(self.bar(out, diameter)?),
+            Some(out) => Some(self.bar(out, diameter, operation)?),
         };
         let thread = match &self.lead {
             None => None,
@@ -130,8 +136,19 @@ impl DetailOptions {
                     .transpose()?,
             }),
         };
+        let depth = length("depth", &self.depth, (0.001, 100.0))?;
+        let radius = diameter.mm() / 2.0;
+        let turning = matches!(
+            operation,
+            Operation::RoughTurning | Operation::FinishTurning
+        );
+        if let Some(depth) = depth.filter(|a| turning && a.mm() > radius) {
+            return Err(Fail::input(format!(
+                "depth: `{depth}` goes beyond the middle of the work; allowed: 0.001 mm to {radius} mm, half of the diameter"
+            )));
+        }
         Ok(Details {
-            depth: length("depth", &self.depth, (0.001, 100.0))?,
+            depth,
             feed: length("feed", &self.feed, (0.001, 10.0))?,
             nose_radius: length("nose-radius", &self.nose_radius, (0.01, 20.0))?,
             ra: self
@@ -143,10 +160,17 @@ impl DetailOptions {
             life: life("life", &self.life)?,
             insert_box: match &self.box_speed {
                 None => None,
-                Some(text) => Some(InsertBox {
-                    speed: box_speed(text)?,
-                    life: life("box-life", &self.box_life)?.unwrap_or(Life::OF_BOX),
-                }),
+                Some(text) => {
+                    let speed = box_speed(text)?;
+                    let life = life("box-life", &self.box_life)?.unwrap_or(Life::OF_BOX);
+                    if !tool.is_carbide() {
+                        return Err(Fail::input(format!(
+                            "box-speed: `{text}` does not go with {}, which has no inserts; allowed: with carbide or coated-carbide",
+                            tool.id()
+                        )));
+                    }
+                    Some(InsertBox { speed, life })
+                }
             },
             bar,
             thread,
@@ -159,11 +183,17 @@ impl DetailOptions {
         })
     }
 
-    fn bar(&self, out: Length, diameter: &str) -> Result<Bar, Fail> {
+    fn bar(&self, out: Length, diameter: Diameter, operation: Operation) -> Result<Bar, Fail> {
         let stock = length("stock", &self.stock, (0.1, 2000.0))?;
         let outside = match stock {
             Some(stock) => stock.mm(),
-            None => Diameter::parse(diameter).map_err(Fail::input)?.mm(),
+            None if operation.is_outside_turning() => diameter.mm(),
+            None => {
+                return Err(Fail::input(format!(
+                    "stock: missing beside stick-out, for the diameter is that of the {}; allowed: the bar's diameter, a number with mm or in, 0.1 mm to 2000 mm",
+                    operation.diameter_word()
+                )));
+            }
         };
         let bore = length("tube-bore", &self.tube_bore, (0.01, 2000.0))?;
         if let Some(bore) = bore.filter(|b| b.mm() >= outside) {
