@@ -241,6 +241,31 @@ fn faulty_scenarios_are_refused_with_field_value_and_range() {
             "[0.0, 200.0]",
             &["sensor.placement_deg", "`200`"],
         ),
+        (
+            "[0.0, 2.0]",
+            "[0.0, nan]",
+            &["sensor.placement_deg", "`NaN`"],
+        ),
+        (
+            "[0.0, 2.0]",
+            "[0.0, 2.0, 1.0]",
+            &["sensor.placement_deg", "`1`", "each magnet"],
+        ),
+        (
+            "verdict = \"right\"",
+            "rpm = 700\nwithin_percent = -1",
+            &["expect[0].within_percent", "`-1`", "0 to 100"],
+        ),
+        (
+            "verdict = \"right\"",
+            "rpm = nan\nwithin_percent = 1",
+            &["expect[0].rpm", "`NaN`", "0 to 100000"],
+        ),
+        (
+            "do = { press = \"left\" }",
+            "do = { cut = { specific_force = 2000.0, depth_mm = 0.0, feed_mm = 0.1 } }",
+            &["at[0].do.cut.depth_mm", "`0`", "0.001 to 50"],
+        ),
         ("title", "titel", &[":2:", "titel"]),
         ("seconds = 12", "seconds = ", &[":4:", "seconds"]),
     ] {
