@@ -174,13 +174,7 @@ impl Feed {
         let d = setup.diameter.mm();
         let lead = details.thread.map(|t| t.lead.mm());
         let row = feeds::feed(setup.material, op, d, lead);
-        let turned = matches!(
-            op,
-            Operation::RoughTurning
-                | Operation::FinishTurning
-                | Operation::Facing
-                | Operation::Boring
-        );
+        let turned = op.is_turning();
         let (mut mm, from, source) = match (details.feed, details.ra) {
             _ if op.is_threading() => (lead?, FeedFrom::Lead, Source::common_practice()),
             (Some(feed), _) => (feed.mm(), FeedFrom::Typed, Source::common_practice()),
@@ -273,10 +267,7 @@ impl Demand {
         let worn = cutting_force::WORN_EDGE * hss;
         let d = setup.diameter.mm();
         let (force, torque, h, by_depth) = match setup.operation {
-            Operation::RoughTurning
-            | Operation::FinishTurning
-            | Operation::Facing
-            | Operation::Boring => {
+            op if op.is_turning() => {
                 let f = feed.per_rev?;
                 let sin = cutting_force::SIN_KAPPA;
                 let force = worn * k.force(1.0, f, sin);
@@ -430,13 +421,7 @@ impl Cut {
     pub(super) fn finish_with(&mut self, setup: &Setup, set: Option<&Setting>) {
         let (op, details, d) = (setup.operation, &setup.details, setup.diameter.mm());
         let per_rev = self.feed.and_then(|f| f.per_rev);
-        let turned = matches!(
-            op,
-            Operation::RoughTurning
-                | Operation::FinishTurning
-                | Operation::Facing
-                | Operation::Boring
-        );
+        let turned = op.is_turning();
         if let Some(f) = per_rev
             && turned
             && (details.nose_radius.is_some() || details.ra.is_some())

@@ -352,7 +352,7 @@ fn cautions(setup: &Setup, machine: &Machine, advice: &Advice) -> Vec<Caution, M
     let wanted = wanted
         .map(|b| b.at)
         .reduce(|a, b| if b < a { b } else { a });
-    let fastest = fastest_setting(machine);
+    let fastest = machine.drive().fastest();
     let too_slow = set
         .zip(wanted)
         .filter(|&(set, wanted)| set >= fastest && wanted > fastest.scaled(TOO_SLOW));
@@ -430,15 +430,4 @@ fn offered_cap(setup: &Setup, machine: &Machine, holder: Option<HolderKind>) -> 
     let n = workholding::rim_speed_cap(setup.diameter.mm(), workholding::RIM_SPEED);
     // Where the machine does not reach it, it would hold nothing back.
     Some(Rpm::saturating(n)).filter(|&n| n < machine.top_speed())
-}
-
-fn fastest_setting(machine: &Machine) -> Rpm {
-    match machine.drive() {
-        Drive::Stepped(steps) => steps.last().map(|s| s.rpm),
-        Drive::Variable(ranges) => ranges
-            .iter()
-            .map(|r| r.high)
-            .reduce(|a, b| if b > a { b } else { a }),
-    }
-    .unwrap_or(Rpm::ZERO)
 }

@@ -75,6 +75,17 @@ pub enum Drive {
     Variable(Vec<Range, MAX_RANGES>),
 }
 
+impl Drive {
+    /// The fastest step, or the top of the fastest range: both stand last.
+    pub fn fastest(&self) -> Rpm {
+        match self {
+            Drive::Stepped(steps) => steps.last().map(|s| s.rpm),
+            Drive::Variable(ranges) => ranges.last().map(|r| r.high),
+        }
+        .unwrap_or(Rpm::ZERO)
+    }
+}
+
 /// A workholder.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Holder {
@@ -110,14 +121,7 @@ impl Machine {
     /// Checks a profile. The error names the field by its path in the profile file.
     pub fn new(spec: MachineSpec) -> Result<Self, Rejected> {
         let drive = drive(&spec)?;
-        let fastest = match &drive {
-            Drive::Stepped(steps) => steps.last().map(|s| s.rpm),
-            Drive::Variable(ranges) => ranges
-                .iter()
-                .map(|r| r.high)
-                .reduce(|a, b| if a > b { a } else { b }),
-        }
-        .unwrap_or(Rpm::ZERO);
+        let fastest = drive.fastest();
         let top_speed = match spec.top_speed_rpm {
             None => fastest.scaled(ABOVE_PLATE),
             Some(n) => {

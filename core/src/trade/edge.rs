@@ -34,17 +34,7 @@ pub const fn taylor(tool: Tool) -> TaylorRange {
 /// or the edge ploughs (common practice, no source). `None` for high-speed steel, and where the hand, not the edge, sets the
 /// speed.
 pub const fn slowest_useful(material: Material, tool: Tool, operation: Operation) -> Option<f32> {
-    if !tool.is_carbide()
-        || !matches!(
-            operation,
-            Operation::RoughTurning
-                | Operation::FinishTurning
-                | Operation::Facing
-                | Operation::Boring
-                | Operation::Milling
-                | Operation::FlyCutting
-        )
-    {
+    if !tool.is_carbide() || !(operation.is_turning() || operation.is_milling()) {
         return None;
     }
     Some(match material.group() {

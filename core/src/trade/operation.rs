@@ -140,6 +140,16 @@ impl Operation {
                 | Operation::DieThreading
         )
     }
+    /// A single point takes a chip off turning work, outside, inside or across its end.
+    pub const fn is_turning(self) -> bool {
+        matches!(
+            self,
+            Operation::RoughTurning
+                | Operation::FinishTurning
+                | Operation::Facing
+                | Operation::Boring
+        )
+    }
     /// Several teeth, or one, turn with the cutter and the work is fed past them.
     pub const fn is_milling(self) -> bool {
         matches!(self, Operation::Milling | Operation::FlyCutting)
