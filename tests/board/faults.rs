@@ -152,14 +152,14 @@ fn knobs_are_debounced_and_their_faults_counted() {
     let before = *board.frame();
     // Both contacts at once, three times: no encoder does that.
     for i in 0..3_u64 {
-        for name in ["left_a", "left_b"] {
+        for name in ["knob_left_a", "knob_left_b"] {
             board.pin_in(i * 20_000_000, name, false);
             board.pin_in(i * 20_000_000 + 10_000_000, name, true);
         }
     }
     // A push switch that only chatters.
     for i in 0..20_u64 {
-        board.pin_in(100_000_000 + i * 3_000_000, "right_push", i % 2 == 1);
+        board.pin_in(100_000_000 + i * 3_000_000, "knob_right_push", i % 2 == 1);
     }
     board.run_ms(1700);
     assert_eq!(board.frame(), &before, "nothing has been turned or pressed");
@@ -170,8 +170,8 @@ fn knobs_are_debounced_and_their_faults_counted() {
     );
 
     // Half a detent and back.
-    board.pin_in(0, "right_a", false);
-    board.pin_in(20_000_000, "right_a", true);
+    board.pin_in(0, "knob_right_a", false);
+    board.pin_in(20_000_000, "knob_right_a", true);
     board.run_ms(300);
     assert_eq!(board.frame(), &before);
     // Ten detents forth and back, fast.

@@ -146,8 +146,26 @@ pub(crate) fn wires() -> Map<String, Value> {
     pins()
         .into_iter()
         .map(|(name, pin)| {
-            let name = name.strip_prefix("display_").unwrap_or(&name).to_owned();
-            (name, Value::from(pin))
+            let short = ["display_", "lamp_"]
+                .iter()
+                .find_map(|prefix| name.strip_prefix(prefix));
+            (short.unwrap_or(&name).to_owned(), Value::from(pin))
         })
         .collect()
+}
+
+/// The pin tables of firmware and hardware agree; the Pico's own lamp is wired to nothing.
+#[test]
+fn pins_are_those_that_the_hardware_is_wired_to() {
+    let path = concat!(env!("CARGO_MANIFEST_DIR"), "/../hardware/pins.csv");
+    let mut table = csv::Reader::from_path(path).expect("the pin table can be read");
+    let wired: BTreeMap<String, u8> = table
+        .deserialize::<BTreeMap<String, String>>()
+        .map(|row| row.expect("a row of the pin table"))
+        .map(|row| (row["signal"].clone(), row["gpio"].parse().expect("a pin")))
+        .collect();
+    let mut programmed = pins();
+    assert_eq!(programmed.remove("status"), Some(25));
+    assert!(wired.len() > 10, "{wired:?}");
+    assert_eq!(programmed, wired);
 }

@@ -410,12 +410,12 @@ impl Rig for Emulator {
 
 fn contact(knob: Knob, name: &str) -> &'static str {
     match (knob, name) {
-        (Knob::Left, "a") => "left_a",
-        (Knob::Left, "b") => "left_b",
-        (Knob::Left, _) => "left_push",
-        (Knob::Right, "a") => "right_a",
-        (Knob::Right, "b") => "right_b",
-        (Knob::Right, _) => "right_push",
+        (Knob::Left, "a") => "knob_left_a",
+        (Knob::Left, "b") => "knob_left_b",
+        (Knob::Left, _) => "knob_left_push",
+        (Knob::Right, "a") => "knob_right_a",
+        (Knob::Right, "b") => "knob_right_b",
+        (Knob::Right, _) => "knob_right_push",
     }
 }
 

@@ -108,7 +108,8 @@ export class Board {
     let last = 0;
     // A change of pitch takes several writes; what lies between is too short to be heard.
     const settled = this.clock.createAlarm(() => {
-      const sounding = channel.csr & 1 && channel.cc & 0xffff && gpio[this.pins.buzzer].functionSelect === 4;
+      const duty = this.pins.buzzer & 1 ? channel.cc >>> 16 : channel.cc & 0xffff;
+      const sounding = channel.csr & 1 && duty && gpio[this.pins.buzzer].functionSelect === 4;
       const hz = sounding ? Math.round(this.mcu.clkSys / channel.timer.prescaler / (channel.top + 1)) : 0;
       if (hz !== last) {
         last = hz;

@@ -23,6 +23,7 @@ embassy_rp::bind_interrupts!(pub(crate) struct Irqs {
     PIO0_IRQ_0 => embassy_rp::pio::InterruptHandler<CapturePio>;
 });
 
+// What is outside of the Pico stands in hardware/pins.csv, too, under the same names.
 parts! {
     /// Hall sensor, open collector: low while a magnet is near.
     sensor: PIN_2,
@@ -31,27 +32,27 @@ parts! {
     /// Display, I2C clock.
     display_scl: PIN_5,
     /// Left knob, first contact; closes to ground, as all of a knob's.
-    left_a: PIN_6,
+    knob_left_a: PIN_6,
     /// Left knob, second contact.
-    left_b: PIN_7,
+    knob_left_b: PIN_7,
     /// Left knob, push switch.
-    left_push: PIN_8,
+    knob_left_push: PIN_8,
     /// Right knob, first contact.
-    right_a: PIN_10,
+    knob_right_a: PIN_9,
     /// Right knob, second contact.
-    right_b: PIN_11,
+    knob_right_b: PIN_10,
     /// Right knob, push switch.
-    right_push: PIN_12,
+    knob_right_push: PIN_11,
     /// Upper lamp: over.
-    over: PIN_16,
+    lamp_over: PIN_12,
     /// Middle lamp: right.
-    right: PIN_17,
+    lamp_right: PIN_13,
     /// Lower lamp: under.
-    under: PIN_18,
+    lamp_under: PIN_14,
     /// Relay driver, closed while high; held low by a resistor during reset.
-    relay: PIN_19,
+    relay: PIN_16,
     /// Buzzer, piezo, driven by PWM.
-    buzzer: PIN_20,
+    buzzer: PIN_15,
     /// The board's own lamp: a heartbeat, hurried while something is wrong with the box.
     status: PIN_25,
     /// Times the sensor.
@@ -62,8 +63,8 @@ parts! {
     rearm_dma: DMA_CH1,
     /// Drives the display.
     display: I2C0,
-    /// Sounds the buzzer: GPIO20 is output A of slice 2 (RP2040 data sheet, 4.5.2).
-    tone: PWM_SLICE2,
+    /// Sounds the buzzer: GPIO15 is output B of slice 7 (RP2040 data sheet, 4.5.2).
+    tone: PWM_SLICE7,
     /// Restarts what hangs.
     watchdog: WATCHDOG,
 }

@@ -37,25 +37,25 @@ impl Board {
     pub(crate) fn wire(self) -> Parts {
         let signs = Signs {
             relay: Output::new(self.relay, Level::Low),
-            over: Output::new(self.over, Level::Low),
-            right: Output::new(self.right, Level::Low),
-            under: Output::new(self.under, Level::Low),
+            over: Output::new(self.lamp_over, Level::Low),
+            right: Output::new(self.lamp_right, Level::Low),
+            under: Output::new(self.lamp_under, Level::Low),
             status: Output::new(self.status, Level::Low),
-            tone: Pwm::new_output_a(self.tone, self.buzzer, tone(None)),
+            tone: Pwm::new_output_b(self.tone, self.buzzer, tone(None)),
             last: Outputs::default(),
         };
         Parts {
             capture: Capture::start(self.capture, self.sensor, self.ring_dma, self.rearm_dma),
             knobs: [
                 Encoder {
-                    a: Input::new(self.left_a, Pull::Up),
-                    b: Input::new(self.left_b, Pull::Up),
-                    push: Input::new(self.left_push, Pull::Up),
+                    a: Input::new(self.knob_left_a, Pull::Up),
+                    b: Input::new(self.knob_left_b, Pull::Up),
+                    push: Input::new(self.knob_left_push, Pull::Up),
                 },
                 Encoder {
-                    a: Input::new(self.right_a, Pull::Up),
-                    b: Input::new(self.right_b, Pull::Up),
-                    push: Input::new(self.right_push, Pull::Up),
+                    a: Input::new(self.knob_right_a, Pull::Up),
+                    b: Input::new(self.knob_right_b, Pull::Up),
+                    push: Input::new(self.knob_right_push, Pull::Up),
                 },
             ],
             display: Display {
@@ -76,9 +76,9 @@ pub(crate) fn outputs_safe() {
     core::mem::forget((
         Output::new(board.relay, Level::Low),
         Output::new(board.buzzer, Level::Low),
-        Output::new(board.over, Level::Low),
-        Output::new(board.right, Level::Low),
-        Output::new(board.under, Level::Low),
+        Output::new(board.lamp_over, Level::Low),
+        Output::new(board.lamp_right, Level::Low),
+        Output::new(board.lamp_under, Level::Low),
     ));
 }
 
@@ -381,9 +381,9 @@ fn tone(hz: Option<u16>) -> pwm::Config {
         Some(hz) => {
             let period = COUNT_HZ / hz;
             config.top = (period - 1) as u16;
-            config.compare_a = (period / 2) as u16;
+            config.compare_b = (period / 2) as u16;
         }
-        None => config.compare_a = 0,
+        None => config.compare_b = 0,
     }
     config
 }
