@@ -105,6 +105,17 @@ fn what_is_missing_has_its_stated_default() {
 }
 
 #[test]
+fn the_slowest_speed_worth_reading_lies_below_every_setting() {
+    for machine in machines() {
+        assert!(machine.slowest() < machine.drive().slowest());
+    }
+    // A back gear that crawls is read all the same: 0.85 of its 8 rev/min, not the 10 that stand where nothing is written.
+    let crawls = least("[[step]]\nlabel = \"crawl\"\nrpm = 8\n");
+    let machine = profile::parse(&crawls, "crawls").unwrap();
+    assert!((machine.slowest().get() - 6.8).abs() < 1e-3);
+}
+
+#[test]
 fn thirty_two_steps_fit_and_no_more() {
     let steps = |n: u32| -> String {
         (1..=n)

@@ -84,6 +84,15 @@ impl Drive {
         }
         .unwrap_or(Rpm::ZERO)
     }
+
+    /// The slowest step, or the bottom of the slowest range: both stand first.
+    pub fn slowest(&self) -> Rpm {
+        match self {
+            Drive::Stepped(steps) => steps.first().map(|s| s.rpm),
+            Drive::Variable(ranges) => ranges.first().map(|r| r.low),
+        }
+        .unwrap_or(Rpm::ZERO)
+    }
 }
 
 /// A workholder.
@@ -149,7 +158,7 @@ impl Machine {
             holders: holders(spec.holders)?,
             pulses: pulses(spec.sensor.pulses).map_err(|e| e.within("sensor"))?,
             brake_rpm_per_s: braking(spec.brake_rpm_per_s.unwrap_or(DEFAULT_BRAKE_RPM_PER_S))?,
-            slowest: slowest(spec.slowest_rpm.unwrap_or(DEFAULT_SLOWEST_RPM))?,
+            slowest: slowest_of(spec.slowest_rpm, &drive)?,
             motor,
             feeds: feeds(spec.feeds_mm)?,
             half_nut_stop_s: spec
@@ -291,6 +300,26 @@ pub fn braking(rpm_per_s: f32) -> Result<f32, Rejected> {
 /// Checks the slowest speed worth reading.
 pub fn slowest(rpm: f32) -> Result<Rpm, Rejected> {
     in_range("slowest_rpm", rpm, (1.0, 1000.0), "rpm").map(Rpm::saturating)
+}
+
+/// The slowest speed worth reading on a drive: what is slower counts as still, so every setting, loaded, must be above it.
+fn slowest_of(written: Option<f32>, drive: &Drive) -> Result<Rpm, Rejected> {
+    let loaded = drive.slowest().scaled(BELOW_PLATE);
+    let Some(n) = written else {
+        return Ok(Rpm::saturating(
+            DEFAULT_SLOWEST_RPM.min(loaded.get()).max(1.0),
+        ));
+    };
+    let slowest = slowest(n)?;
+    if slowest > loaded {
+        return Err(Rejected::new(
+            "slowest_rpm",
+            n,
+            "would take the slowest setting for still",
+            format_args!("at most {loaded}, 0.85 of the slowest setting"),
+        ));
+    }
+    Ok(slowest)
 }
 
 fn in_range(field: &str, value: f32, range: (f32, f32), unit: &str) -> Result<f32, Rejected> {

@@ -238,7 +238,7 @@ pub struct MachineSpec {
     /// Hardest stop that the machine can make, rev/min in a second; where missing 3000 (foot brake, plug reversal).
     #[cfg_attr(feature = "serde", serde(default))]
     pub brake_rpm_per_s: Option<f32>,
-    /// Slowest speed worth reading, rev/min; where missing 10.
+    /// Slowest speed worth reading, rev/min, below every setting; where missing 10, or less where a setting is slower.
     #[cfg_attr(feature = "serde", serde(default))]
     pub slowest_rpm: Option<f32>,
     /// The motor; without it nothing is said about power.

@@ -105,6 +105,11 @@ fn a_faulty_profile_is_refused_with_line_field_value_and_range() {
         ),
         (
             "kind = \"lathe\"",
+            "kind = \"lathe\"\nslowest_rpm = 90",
+            &[":3:", "slowest_rpm", "`90`", "still", "at most 85 rpm"],
+        ),
+        (
+            "kind = \"lathe\"",
             "kind = \"lathe\"\nslowest_rpm = nan",
             &[":3:", "slowest_rpm", "`NaN`", "1 to 1000"],
         ),
