@@ -101,6 +101,7 @@ fn any_setup() -> impl Strategy<Value = Setup> {
                 diameter: Diameter::nearest(mm),
                 holder,
                 cap: cap.map(rpm),
+                cap_is_old: false,
                 details: Details::NONE,
             },
         )

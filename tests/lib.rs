@@ -33,6 +33,7 @@ pub fn bar(mm: f32) -> Setup {
         diameter: Diameter::nearest(mm),
         holder: 0,
         cap: None,
+        cap_is_old: false,
         details: Details::NONE,
     }
 }

@@ -1,6 +1,6 @@
 //! The two push-knobs: turns, presses, holds, and what the screen says about them. Times are those of the panel's manual.
 
-use rimrate_core::advice::advise;
+use rimrate_core::advice::{Pick, advise};
 use rimrate_core::machine::{Drive, Machine};
 use rimrate_core::panel::{Bench, Field, HOLD, Knob, NOTICE, Page, Panel, Wish};
 use rimrate_core::setup::{Diameter, Life, Setup};
@@ -212,6 +212,34 @@ fn a_cap_begins_just_above_the_best_speed_and_is_taken_away_by_holding_the_right
     assert!(hand.setup.cap.is_some());
     hand.hold(Knob::Right);
     assert_eq!((hand.setup.cap, hand.panel.page()), (None, Page::Run));
+}
+
+#[test]
+fn an_unrated_holder_needs_a_cap_of_its_own_and_it_begins_slow() {
+    let mut hand = lathe();
+    let faceplate = hand.machine.holder_named("faceplate").unwrap() as i8;
+    let pick = |hand: &Hand| advise(&hand.setup, &hand.machine).pick;
+    // A cap typed for the three-jaw chuck,
+    hand.click(Knob::Left);
+    hand.turn(Knob::Left, 3);
+    hand.turn(Knob::Right, 1);
+    assert_eq!(hand.setup.cap, Some(rpm(350.0)));
+    assert!(matches!(pick(&hand), Pick::Set(_)));
+    // is none for the faceplate, though it still bounds the speed;
+    hand.turn(Knob::Left, -1);
+    hand.turn(Knob::Right, faceplate);
+    assert_eq!(pick(&hand), Pick::NeedsCap);
+    assert_eq!(hand.setup.cap, Some(rpm(350.0)));
+    // and the one for the faceplate begins just above the slowest step, 18 rpm.
+    hand.turn(Knob::Left, 1);
+    hand.turn(Knob::Right, 1);
+    assert_eq!(hand.setup.cap, Some(rpm(20.0)));
+    assert!(matches!(pick(&hand), Pick::Set(s) if s.rpm == rpm(18.0)));
+    // Back in a rated chuck nothing is asked for, and the cap stands.
+    hand.turn(Knob::Left, -1);
+    hand.turn(Knob::Right, -faceplate);
+    assert!(matches!(pick(&hand), Pick::Set(_)));
+    assert_eq!(hand.setup.cap, Some(rpm(20.0)));
 }
 
 #[test]

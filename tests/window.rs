@@ -116,6 +116,7 @@ fn any_setup() -> impl Strategy<Value = Setup> {
                 diameter: Diameter::nearest(d.mm()),
                 holder,
                 cap: cap.map(rpm),
+                cap_is_old: false,
                 details,
             },
         )

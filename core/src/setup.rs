@@ -85,6 +85,8 @@ pub struct Setup {
     pub holder: u8,
     /// The highest speed that the operator or instructor allows.
     pub cap: Option<Rpm>,
+    /// The cap was typed for another holder: it still bounds the speed, but an unrated holder needs one of its own.
+    pub cap_is_old: bool,
     /// What the operator has added: the cut, the finish, the life, the bar, the thread.
     pub details: Details,
 }
@@ -99,6 +101,7 @@ impl Setup {
         diameter: Diameter(Length::INCH),
         holder: 0,
         cap: None,
+        cap_is_old: false,
         details: Details::NONE,
     };
 }

@@ -50,6 +50,7 @@ impl StartSpec {
             diameter: Diameter::new(length).map_err(|e| e.within("start"))?,
             holder: self.holder,
             cap,
+            cap_is_old: false,
             details: setup::Details::NONE,
         })
     }

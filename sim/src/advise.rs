@@ -137,6 +137,7 @@ impl Advise {
                 .map(parse_cap)
                 .transpose()
                 .map_err(Fail::input)?,
+            cap_is_old: false,
             details: self.details.read(diameter, tool, operation)?,
         })
     }

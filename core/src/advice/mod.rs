@@ -226,7 +226,7 @@ impl Answer {
         let unknown = rated.is_none() || setup.details.off_balance || setup.details.interrupted;
         let pick = match cutting {
             Err(refusal) => Pick::NoBasis(*refusal),
-            Ok(_) if unknown && setup.cap.is_none() => Pick::NeedsCap,
+            Ok(_) if unknown && (setup.cap.is_none() || setup.cap_is_old) => Pick::NeedsCap,
             Ok(_) => pick(&window, machine, torque),
         };
         Answer { window, pick }

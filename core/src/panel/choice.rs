@@ -2,8 +2,8 @@
 
 use core::fmt;
 
-use crate::advice::Advice;
-use crate::machine::Machine;
+use crate::advice::{Advice, Pick};
+use crate::machine::{ABOVE_PLATE, Machine};
 use crate::setup::{Diameter, Setup};
 use crate::trade::{Coolant, Material, Operation, Tool};
 use crate::units::{Decimal, Length, MM_PER_INCH, Rpm, UnitSystem};
@@ -72,9 +72,14 @@ impl Field {
                 let last = machine.holders().len().saturating_sub(1) as i16;
                 let holder = (i16::from(setup.holder) + i16::from(detents)).clamp(0, last);
                 // Both ends fit: a machine has at most MAX_HOLDERS holders.
-                setup.holder = holder as u8;
+                let holder = holder as u8;
+                setup.cap_is_old |= setup.cap.is_some() && holder != setup.holder;
+                setup.holder = holder;
             }
-            Field::Cap => setup.cap = Some(turned_cap(setup.cap, detents, advice)),
+            Field::Cap => {
+                setup.cap = Some(turned_cap(setup.cap, detents, machine, advice));
+                setup.cap_is_old = false;
+            }
         }
     }
 
@@ -245,15 +250,18 @@ fn turned_diameter(diameter: Diameter, detents: i8, units: UnitSystem) -> Diamet
 }
 
 /// The first detent from no cap sets it to the scale's next mark above the best speed: a spindle that runs right is not in
-/// danger because somebody begins to type. The others move it from there.
-fn turned_cap(cap: Option<Rpm>, detents: i8, advice: &Advice) -> Rpm {
+/// danger because somebody begins to type. Where a cap is needed because nobody knows what the holder allows, it begins
+/// above the machine's slowest setting instead: no single detent makes a fast step right. The others move it from there.
+fn turned_cap(cap: Option<Rpm>, detents: i8, machine: &Machine, advice: &Advice) -> Rpm {
     let (lowest, highest) = (10.0, 10_000.0);
+    let from = |speed: Rpm| {
+        let first = turned(SCALE_RPM, speed.get(), 1);
+        turned(SCALE_RPM, first, detents - detents.signum())
+    };
     let rpm = match cap {
+        _ if advice.pick == Pick::NeedsCap => from(machine.drive().slowest().scaled(ABOVE_PLATE)),
         Some(cap) => turned(SCALE_RPM, cap.get(), detents),
-        None => {
-            let first = turned(SCALE_RPM, advice.window.best().get(), 1);
-            turned(SCALE_RPM, first, detents - detents.signum())
-        }
+        None => from(advice.window.best()),
     };
     Rpm::saturating(rpm.clamp(lowest, highest))
 }

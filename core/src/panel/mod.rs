@@ -191,6 +191,7 @@ impl Panel {
                     Knob::Right => {
                         let before = *bench.setup;
                         bench.setup.cap = None;
+                        bench.setup.cap_is_old = false;
                         if bench.running && *bench.setup != before {
                             self.announce(now, Field::Cap, before, bench.setup, bench.machine);
                         }

@@ -23,6 +23,7 @@ impl WrittenSetup {
             diameter,
             holder,
             cap,
+            cap_is_old: false,
             details: Details::NONE,
         })
     }
