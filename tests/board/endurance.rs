@@ -5,7 +5,7 @@
 use rimrate_core::panel::Knob;
 use rimrate_sim::rig::{Rig, Touch};
 
-use crate::support::{spin, wide_board};
+use crate::support::{run_up, wide_board};
 
 /// A linear congruential generator (Knuth, The Art of Computer Programming, volume 2, 3.3.4: MMIX): only to have variety.
 struct Dice(u64);
@@ -29,7 +29,7 @@ fn mixed_work(minutes: f64) {
         // A job: up to ten seconds at one speed, then up to five at rest.
         let rpm = 50.0 + dice.roll(2950) as f64;
         let (from, run) = (board.now() + 2_000_000, 2_000 + dice.roll(8_000));
-        board.edges(&spin(rpm, 6, from, from + run * 1_000_000));
+        board.edges(&run_up(rpm, 6, from, from + run * 1_000_000));
         for _ in 0..dice.roll(4) {
             let knob = if dice.roll(2) == 0 {
                 Knob::Left

@@ -56,7 +56,7 @@ impl Rig for &mut Both {
                 self.board.verdict()
             ));
         }
-        if self.desk.frame() != &self.frame {
+        if self.desk.frame() != &self.frame || !settled {
             self.frame = *self.desk.frame();
             self.frames_since = now;
         }

@@ -44,20 +44,46 @@ pub(crate) fn confirmed(start: Start) -> Emulator {
     board
 }
 
-/// Edges of an even spindle, ns: the line is low for a twelfth of the spacing with few pulses, for half with teeth.
+/// Edges of an even spindle, ns, the last pulse whole: the line is low for a twelfth of the spacing with few pulses, for half with teeth.
 pub(crate) fn spin(rpm: f64, pulses: u32, from: u64, until: u64) -> Vec<Edge> {
     let spacing = 60e9 / rpm / f64::from(pulses);
     let low = if pulses < 8 { 1.0 / 12.0 } else { 0.5 };
     let at = |t: f64| Instant::from_nanos(from + t.round() as u64);
     (0..)
         .map(|i| spacing * f64::from(i))
-        .take_while(|t| from as f64 + t < until as f64)
-        .flat_map(|t| [Edge::fall(at(t)), Edge::rise(at(t + low * spacing))])
-        .filter(|e| e.at.nanos() < until)
+        .map(|t| [Edge::fall(at(t)), Edge::rise(at(t + low * spacing))])
+        .take_while(|[_, rise]| rise.at.nanos() < until)
+        .flatten()
         .collect()
 }
 
-/// The same, with every edge turned round: a sensor that is high at the magnet.
+/// Edges of a spindle that runs up evenly within a second and then turns evenly, ns, the last pulse whole.
+pub(crate) fn run_up(rpm: f64, pulses: u32, from: u64, until: u64) -> Vec<Edge> {
+    const RUN_UP: f64 = 1.0;
+    let speed = rpm / 60.0;
+    let at = |turns: f64| {
+        let seconds = if turns < speed * RUN_UP / 2.0 {
+            (2.0 * turns * RUN_UP / speed).sqrt()
+        } else {
+            turns / speed + RUN_UP / 2.0
+        };
+        Instant::from_nanos(from + (seconds * 1e9).round() as u64)
+    };
+    let turns = |i: f64| i / f64::from(pulses);
+    (1..)
+        .map(f64::from)
+        .map(|i| {
+            [
+                Edge::fall(at(turns(i))),
+                Edge::rise(at(turns(i + 1.0 / 12.0))),
+            ]
+        })
+        .take_while(|[_, rise]| rise.at.nanos() < until)
+        .flatten()
+        .collect()
+}
+
+/// The same as [`spin`], with every edge turned round: a sensor that is high at the magnet.
 pub(crate) fn inverted(edges: &[Edge]) -> Vec<Edge> {
     use rimrate_core::time::EdgeKind::{Fall, Rise};
     edges
