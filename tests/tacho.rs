@@ -324,7 +324,11 @@ fn chatter_noise_and_missed_pulses_do_not_move_the_reading() {
                 }
                 let share = f64::from(wrong) / rows.len() as f64;
                 // Several missing pulses close together look like a slower spindle until the rhythm returns.
-                let allowed = if fault == Fault::Dropouts { 0.01 } else { 0.001 };
+                let allowed = if fault == Fault::Dropouts {
+                    0.01
+                } else {
+                    0.001
+                };
                 assert!(
                     share < allowed,
                     "{name}, {pulses} pulses, {speed} rpm: {:.2} % of rows wrong",
@@ -449,5 +453,57 @@ proptest! {
                 prop_assert!(n.get().is_finite() && n.get() >= 0.0);
             }
         }
+    }
+}
+
+#[test]
+fn a_spindle_that_becomes_much_faster_at_once_is_read() {
+    for (pulses, slow, fast) in [
+        (1, 60.0, 2500.0),
+        (2, 52.0, 2500.0),
+        (6, 52.0, 2500.0),
+        (60, 20.0, 2500.0),
+    ] {
+        let capture = Capture::new(pulses)
+            .then(Piece::steady(slow, 8.0))
+            .then(Piece::steady(0.0, 1.0))
+            .then(Piece::steady(fast, 3.0));
+        let worst = worst_after(&capture, 10.5);
+        assert!(worst < 1e-3, "{pulses} pulses: {worst:.2e}");
+    }
+}
+
+#[test]
+fn a_capture_that_ran_over_shows_no_wrong_speed() {
+    for pulses in [1, 2, 6, 60] {
+        let capture = Capture::new(pulses).then(Piece::steady(640.0, 6.0));
+        let (edges, end) = capture.edges();
+        let mut tacho = Tacho::new(capture.config());
+        // A part of the edges never arrives: 0.2 s and an odd number of them.
+        let gap = 3_000_000_000..3_201_234_567;
+        let mut told = false;
+        let mut read_again = None;
+        for edge in edges.into_iter().filter(|e| !gap.contains(&e.at.nanos())) {
+            if edge.at.nanos() >= gap.end && !told {
+                tacho.capture_lost();
+                told = true;
+                assert_eq!(tacho.reading(edge.at, |_| true).signal, Signal::Lost);
+            }
+            tacho.push(edge);
+            let reading = tacho.reading(edge.at, |_| true);
+            if told && reading.signal == Signal::Turning {
+                read_again.get_or_insert(edge.at);
+                assert!(
+                    (rpm(&reading) / 640.0 - 1.0).abs() < 5e-3,
+                    "{pulses} pulses: {reading:?}"
+                );
+            }
+        }
+        let turns = (read_again.unwrap().nanos() - gap.end) as f64 / 1e9 * 640.0 / 60.0;
+        assert!(
+            turns < 4.0,
+            "{pulses} pulses: read again after {turns} turns"
+        );
+        assert!((rpm(&tacho.reading(end, |_| true)) / 640.0 - 1.0).abs() < 1e-3);
     }
 }

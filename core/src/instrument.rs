@@ -29,6 +29,8 @@ const LOOK_AT_REST: Duration = Duration::from_millis(500);
 pub enum Event<'a> {
     /// Edges of the sensor's line, oldest first, none older than those before.
     Edges(&'a [Edge]),
+    /// Edges were lost before those that follow: the capture ran over.
+    CaptureLost,
     /// A knob was turned by some detents, clockwise positive.
     Turn(Knob, i8),
     /// A knob went down.
@@ -124,6 +126,10 @@ impl Instrument {
                 edges.iter().for_each(|&edge| self.tacho.push(edge));
                 return;
             }
+            Event::CaptureLost => {
+                self.tacho.capture_lost();
+                return;
+            }
             Event::Turn(knob, detents) => {
                 let (panel, bench) = self.bench();
                 panel.turn(now, knob, detents, bench);
@@ -203,7 +209,6 @@ impl Instrument {
         let next = [
             beacon_next,
             self.panel.next_change(),
-            self.tacho.next_change(now).filter(|&at| at > now),
             self.unsaved_since.map(|since| since + SAVE_AFTER),
         ];
         Poll {

@@ -14,6 +14,8 @@ use crate::time::{Duration, Edge, EdgeKind, Instant};
 const JOIN_SHARE: u64 = 10;
 /// Where passages and gaps are known, a gap below this share of the shorter one joins.
 const KNOWN_JOIN_SHARE: u64 = 4;
+/// All gaps of a passage together are below this share of what is low of it.
+const GAPS_SHARE: u64 = 3;
 /// A low narrower than this share of the recent passages is a sliver. Magnets of one collar differ less than that,
 /// and so do two passages that follow one another in a run-up.
 const SLIVER_SHARE: u64 = 4;
@@ -117,6 +119,14 @@ impl Gate {
     pub(super) fn forget_width(&mut self) {
         self.usual = 0;
         self.usual_gap = 0;
+    }
+
+    /// Forgets all but what was counted: edges were lost.
+    pub(super) fn forget(&mut self) {
+        *self = Gate {
+            rejected: self.rejected,
+            ..Gate::default()
+        };
     }
 
     /// When the pulse that began at `at` certainly had begun.
@@ -234,8 +244,12 @@ impl Gate {
         // A magnet that was parked at the sensor, or a short circuit, is no passage: against it every gap is short.
         let passing = |width: u64| if width > PARKED.nanos() { 0 } else { width };
         let widest = passing(piece).max(passing(p.width().nanos())).max(begun);
-        times(JOIN_SHARE, gap) < widest
-            || times(KNOWN_JOIN_SHARE, gap) < self.usual.min(self.usual_gap)
+        // All gaps together are short too: else the passages of a spindle that has become much faster would be one.
+        let low = passing(piece).max(passing(p.low)).max(begun);
+        let gaps = fell.since(p.first).nanos().saturating_sub(p.low);
+        gaps.saturating_mul(GAPS_SHARE) < low
+            && (times(JOIN_SHARE, gap) < widest
+                || times(KNOWN_JOIN_SHARE, gap) < self.usual.min(self.usual_gap))
     }
 
     /// A passage or a sliver is over: the next low, from `next` on, is not part of it.

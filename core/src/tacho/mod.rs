@@ -358,12 +358,15 @@ impl Tacho {
         }
     }
 
-    /// When the signal changes next if no edge comes.
-    pub fn next_change(&self, now: Instant) -> Option<Instant> {
-        if self.state != State::Turning {
-            return None;
+    /// Edges were lost: what came before them is dropped, and what follows must agree with itself again. A spindle that
+    /// turned still does, so the signal is lost until then.
+    pub fn capture_lost(&mut self) {
+        if self.state == State::Turning {
+            self.state = State::Lost(self.track.quick().unwrap_or(0.0));
         }
-        self.lost_at(now).or_else(|| self.still_at(now))
+        self.latest.clear();
+        self.gate.forget();
+        self.track.start([].iter(), &mut self.gate.rejected);
     }
 
     /// If one of several magnets is gone the spindle turns faster than the pulses say: assume so where that is explained.

@@ -140,6 +140,7 @@ impl Owner {
         let time = Now::now();
         if taken.lost {
             defmt::error!("capture: window lost");
+            instrument.handle(Instant::ZERO, Event::CaptureLost);
         }
         if taken.edges > 0 {
             self.last_edge = time;
