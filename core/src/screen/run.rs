@@ -252,8 +252,8 @@ fn scale<D: DrawTarget<Color = BinaryColor>>(
                 .draw(target)?;
         }
     }
-    if let (Some(_), Some(n)) = (digits(view.reading), view.reading.speed) {
-        let x = place(n).clamp(left + 2, right - 2);
+    if let Some(n) = digits(view.reading) {
+        let x = place(Rpm::saturating(n as f32)).clamp(left + 2, right - 2);
         for (half, above) in [(2, 2), (1, 1)] {
             let y = SCALE - above;
             Line::new(Point::new(x - half, y), Point::new(x + half, y))
@@ -284,9 +284,10 @@ fn advice<D: DrawTarget<Color = BinaryColor>>(
         view.verdict,
         Verdict::Slow | Verdict::Fast | Verdict::Danger
     )
-    .then_some(view.reading.speed)
+    .then(|| digits(view.reading))
     .flatten()
-    .and_then(|n| Shift::of(view.machine, advice, n));
+    // From the digits as they stand, so that the picture changes when they do.
+    .and_then(|n| Shift::of(view.machine, advice, Rpm::saturating(n as f32)));
     match &advice.pick {
         Pick::Set(setting) => match moves {
             Some(moves) => line(moves.words(LAST_LINE), second, target),

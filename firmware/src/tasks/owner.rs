@@ -22,8 +22,8 @@ use crate::{notice, profile};
 
 /// Edges are fetched this often while they come. With a picture being drawn in between an over-speed is shown within 6 ms.
 const FETCH: Duration = Duration::from_millis(2);
-/// The instrument is asked what to do at most this often on account of edges alone: a reading costs more than an edge.
-const ASK: Duration = Duration::from_millis(4);
+/// The instrument is asked what to do at most this often on account of edges alone: a reading costs as much as twenty edges.
+const ASK: Duration = Duration::from_millis(10);
 /// Edges are fetched this often when none has come for [`REST`].
 const FETCH_AT_REST: Duration = Duration::from_millis(10);
 const REST: Duration = Duration::from_secs(1);
