@@ -299,7 +299,8 @@ fn of_tool(
 ///
 /// High-speed steel softens near 600 degrees C: in steel, stainless, titanium and nickel, whose heat goes into the edge,
 /// fluid is what keeps it. Cast iron and brass are cut dry by habit, light metals and plastics do not get that hot, and
-/// carbide stands the heat better than the shock of a broken stream.
+/// carbide stands the heat better than the shock of a broken stream: but not in titanium and nickel, whose published rows
+/// are wet, whose heat stays in the edge, and of which titanium's chips burn.
 pub(super) fn coolant(material: Material, tool: Tool, coolant: Coolant) -> Option<Factor> {
     let hot = !matches!(material.group(), IsoGroup::K | IsoGroup::N);
     let (what, by) = match (coolant, tool) {
@@ -310,6 +311,14 @@ pub(super) fn coolant(material: Material, tool: Tool, coolant: Coolant) -> Optio
         ),
         (Coolant::Dry, Tool::Hss | Tool::CobaltHss) => {
             ("dry: this material is commonly cut dry", 1.0)
+        }
+        (Coolant::Dry, Tool::Carbide | Tool::CoatedCarbide)
+            if matches!(material.group(), IsoGroup::S) =>
+        {
+            (
+                "dry: the published speed is a wet one, and the heat stays in the edge and in chips that may burn",
+                0.8,
+            )
         }
         (Coolant::Dry, Tool::Carbide | Tool::CoatedCarbide) => {
             ("dry: carbide is commonly run dry", 1.0)
