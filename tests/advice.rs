@@ -523,3 +523,26 @@ fn every_demo_machine_has_an_answer_for_every_setup() {
     }
     assert!(set > 5_000 && refused > 500, "{set} set, {refused} refused");
 }
+
+#[test]
+fn an_excess_prints_in_words_where_the_figure_is_absurd() {
+    use rimrate_core::advice::Excess;
+    for (percent, words, above, short) in [
+        (0.001, "just", "just above", "+0%"),
+        (0.99, "just", "just above", "+1%"),
+        (1.0, "1 %", "+1 %", "+1%"),
+        (349.4, "349 %", "+349 %", "+349%"),
+        (900.0, "900 %", "+900 %", "+900%"),
+        (901.0, "over 10 times", "over 10 times", "+901%"),
+        (135_036.0, "over 10 times", "over 10 times", "far"),
+        (f32::MAX, "over 10 times", "over 10 times", "far"),
+    ] {
+        let excess = Excess(percent);
+        assert_eq!(excess.to_string(), words);
+        assert_eq!(excess.above().to_string(), above);
+        assert_eq!(excess.short().to_string(), short);
+        // What the screen's row holds.
+        assert!(format!("slowest {excess} too fast").len() <= 32);
+        assert!(short.len() <= 6);
+    }
+}

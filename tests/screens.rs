@@ -5,7 +5,7 @@ use std::convert::Infallible;
 
 use embedded_graphics::pixelcolor::BinaryColor;
 use embedded_graphics::prelude::*;
-use rimrate_core::advice::{Advice, Pick, advise};
+use rimrate_core::advice::{Advice, Excess, Pick, advise};
 use rimrate_core::edge_account::EdgeAccount;
 use rimrate_core::machine::{
     HolderKind, HolderSpec, Machine, MachineKind, MachineSpec, SensorSpec, StepSpec,
@@ -504,7 +504,7 @@ fn no_line_is_cut_on_any_demo_machine() {
                 shown(&format!("set {:.0}", setting.rpm.get()));
             }
             Pick::TooFast { over_percent, .. } => {
-                shown(&format!("slowest is {over_percent:.0} % too fast"))
+                shown(&format!("slowest {} too fast", Excess(*over_percent)))
             }
             Pick::NeedsCap => shown("holder unrated: set a cap"),
             // Reasons may be longer than the screen.

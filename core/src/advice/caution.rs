@@ -87,6 +87,13 @@ pub enum Caution {
     ForceGuessed,
     /// The gearbox has no feed as fine as the wanted one.
     NoFinerFeed,
+    /// The feed is more than twice the nose radius.
+    FeedBeyondNose {
+        /// The nose radius, mm.
+        nose_mm: f32,
+    },
+    /// A drill chuck takes no load from the side.
+    SideLoad,
     /// Facing: the right speed rises towards the centre.
     TowardsCentre,
     /// Parting off.
@@ -138,6 +145,8 @@ impl Caution {
             Caution::Overload { .. } => "overload",
             Caution::ForceGuessed => "force-guessed",
             Caution::NoFinerFeed => "no-finer-feed",
+            Caution::FeedBeyondNose { .. } => "feed-beyond-nose",
+            Caution::SideLoad => "side-load",
             Caution::TowardsCentre => "towards-centre",
             Caution::Parting => "parting",
             Caution::Peck { .. } => "peck",
@@ -264,6 +273,16 @@ impl fmt::Display for Caution {
                     ""
                 }
             }
+            Caution::FeedBeyondNose { nose_mm } => {
+                return write!(
+                    f,
+                    "The feed is more than twice the nose radius of {} mm: it cuts a thread, no surface, and no roughness can be given.",
+                    Decimal {
+                        value: nose_mm,
+                        decimals: 2
+                    }
+                );
+            }
             Caution::Peck { first_mm, then_mm } => {
                 return write!(
                     f,
@@ -296,6 +315,9 @@ impl fmt::Display for Caution {
             }
             Caution::NoFinerFeed => {
                 "The gearbox has no feed as fine as the wanted one: its finest is taken."
+            }
+            Caution::SideLoad => {
+                "Never mill in a drill chuck: load from the side shakes its taper loose, and chuck and cutter are thrown. Hold the cutter in a collet or on an arbor with a drawbar."
             }
             Caution::TowardsCentre => {
                 "The speed is for the outside; towards the centre a faster one would be right: do not shift in mid-cut."

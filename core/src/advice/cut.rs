@@ -34,6 +34,8 @@ pub struct Cut {
     pub overloaded: bool,
     /// Roughness that feed and nose leave at best.
     pub finish: Option<Finish>,
+    /// The nose radius, mm, that the feed is more than twice of: the marks do not meet and the roughness has no formula.
+    pub beyond_nose_mm: Option<f32>,
     /// Time of one pass at the advised setting, min.
     pub time_min: Option<f32>,
     /// Metal removed at the advised setting, cm3/min.
@@ -57,6 +59,8 @@ pub struct EdgeLife {
     pub stated_min: f32,
     /// Whether both are from the insert's box.
     pub from_box: bool,
+    /// The share of the printed speed that the operation takes ([`edge::box_share`]); 1 where nothing is from a box.
+    pub box_share: f32,
     /// Smallest and largest published exponent for the tool.
     pub n: (f32, f32),
     /// Where the exponents are from.
@@ -72,9 +76,14 @@ pub struct EdgeLife {
 
 impl EdgeLife {
     pub(super) fn of(setup: &Setup, cutting: &CuttingSpeed) -> Self {
-        let boxed = setup.details.insert_box;
-        let stated = boxed.map_or(cutting.ours, |b| b.speed);
-        let stated_min = boxed.map_or(TABLE_LIFE_MIN, |b| b.life.min());
+        // A box does not speak of every operation: where it does not, the table stands.
+        let boxed = setup
+            .details
+            .insert_box
+            .zip(edge::box_share(setup.operation));
+        let box_share = boxed.map_or(1.0, |(_, share)| share);
+        let stated = boxed.map_or(cutting.ours, |(b, share)| b.speed.scaled(share));
+        let stated_min = boxed.map_or(TABLE_LIFE_MIN, |(b, _)| b.life.min());
         let taylor = edge::taylor(setup.tool);
         let slowest_useful = edge::slowest_useful(setup.material, setup.tool, setup.operation)
             .map(|v| v.min(edge::SLOWEST_SHARE * stated.m_min()));
@@ -93,6 +102,7 @@ impl EdgeLife {
             stated,
             stated_min,
             from_box: boxed.is_some(),
+            box_share,
             n: taylor.n,
             source: taylor.source,
             wanted_min,
@@ -427,7 +437,9 @@ impl Cut {
             && (details.nose_radius.is_some() || details.ra.is_some())
         {
             let nose_mm = details.nose_radius.map_or(USUAL_NOSE_MM, |r| r.mm());
-            self.finish = Some(Finish {
+            // The rounded marks of one turn meet those of the next up to twice the radius only.
+            self.beyond_nose_mm = (f > 2.0 * nose_mm).then_some(nose_mm);
+            self.finish = self.beyond_nose_mm.is_none().then(|| Finish {
                 ra_um: 1000.0 * roughness::ra(f, nose_mm),
                 rt_um: 1000.0 * roughness::rt(f, nose_mm),
                 nose_mm,

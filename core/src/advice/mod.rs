@@ -3,13 +3,14 @@
 mod bound;
 mod caution;
 mod cut;
+mod excess;
 mod pick;
 mod shift;
 
 use heapless::Vec;
 
 use crate::machine::Drive;
-use crate::machine::{HolderKind, Machine, MotorKind, SpindleNose};
+use crate::machine::{HolderKind, Machine, MachineKind, MotorKind, SpindleNose};
 use crate::physics::cutting_speed::{spindle_speed, spindle_speed_of};
 use crate::physics::{drilling, workholding};
 use crate::setup::{HalfNut, Setup};
@@ -22,6 +23,7 @@ pub use cut::{
     Cut, EdgeLife, Feed, FeedFrom, Finish, HandFeed, Load, Slender, ThreadEnd, USUAL_NOSE_MM,
     USUAL_STOP_S,
 };
+pub use excess::Excess;
 pub use pick::{Pick, Setting};
 pub use shift::Shift;
 
@@ -42,7 +44,7 @@ const THIN_DRILL_MM: f32 = 6.0;
 /// Room for one bound of every reason.
 const MAX_BOUNDS: usize = 16;
 /// Room for every caution that can stand beside others.
-const MAX_CAUTIONS: usize = 16;
+const MAX_CAUTIONS: usize = 17;
 
 /// The answer for a setup on a machine.
 #[derive(Clone, Debug, PartialEq)]
@@ -118,11 +120,29 @@ impl Advice {
     }
 }
 
+/// Operations that a kind of machine cannot do, whatever the material.
+///
+/// # Errors
+/// [`Refusal`] for a single point, a parting blade or a knurl on a drill press.
+pub fn refuse_machine(operation: Operation, kind: MachineKind) -> Result<(), Refusal> {
+    let on_turning_work = operation.is_outside_turning() && operation != Operation::DieThreading;
+    match kind {
+        MachineKind::DrillPress if on_turning_work || operation == Operation::Boring => {
+            Err(Refusal {
+                reason: "on a drill press the work is clamped and nothing feeds a single point: its load from the side shakes the chuck off its taper; use a lathe",
+            })
+        }
+        _ => Ok(()),
+    }
+}
+
 /// Weighs every bound for `setup` on `machine` and picks what to set. Work is bounded: a few looks at each step.
 ///
 /// A holder index that the machine does not have counts as an unrated holder: never green without a cap.
 pub fn advise(setup: &Setup, machine: &Machine) -> Advice {
-    let cutting = trade::cutting_speed(setup.material, setup.tool, setup.operation, setup.coolant);
+    let cutting = refuse_machine(setup.operation, machine.kind()).and_then(|()| {
+        trade::cutting_speed(setup.material, setup.tool, setup.operation, setup.coolant)
+    });
     let holder = machine.holders().get(usize::from(setup.holder));
     let rated = holder.and_then(|h| h.rated);
     let mut cut = Cut {
@@ -308,6 +328,9 @@ fn cautions(setup: &Setup, machine: &Machine, advice: &Advice) -> Vec<Caution, M
     if details.interrupted {
         mind(Caution::Interrupted);
     }
+    if op.is_milling() && holder.is_some_and(|h| h.kind == HolderKind::DrillChuck) {
+        mind(Caution::SideLoad);
+    }
     if let Pick::TooFast { .. } = advice.pick {
         mind(if advice.nothing_pulls() {
             Caution::NothingPulls {
@@ -388,6 +411,9 @@ fn cautions(setup: &Setup, machine: &Machine, advice: &Advice) -> Vec<Caution, M
     }
     if cut.feed.is_some_and(|f| f.coarser_than_wanted) {
         mind(Caution::NoFinerFeed);
+    }
+    if let Some(nose_mm) = cut.beyond_nose_mm {
+        mind(Caution::FeedBeyondNose { nose_mm });
     }
     let of_operation = match op {
         Operation::Facing => Some(Caution::TowardsCentre),

@@ -22,7 +22,7 @@ use embedded_graphics::text::{Alignment, Text};
 use heapless::String;
 
 use super::{View, WIDTH, digits, fitting, line, write};
-use crate::advice::{FAST_ABOVE, Pick, Shift};
+use crate::advice::{Excess, FAST_ABOVE, Pick, Shift};
 use crate::error::text;
 use crate::panel::Field;
 use crate::units::{Decimal, Rpm};
@@ -297,7 +297,7 @@ fn advice<D: DrawTarget<Color = BinaryColor>>(
             line("no setting pulls this cut", second, target)
         }
         Pick::TooFast { over_percent, .. } => line(
-            format_args!("slowest is {over_percent:.0} % too fast"),
+            format_args!("slowest {} too fast", Excess(*over_percent)),
             second,
             target,
         ),

@@ -9,8 +9,6 @@
 //!  edge used, turning    34%      how much of the edge's life is used, and what was counted
 //! ```
 
-use core::fmt;
-
 use embedded_graphics::mono_font::ascii::FONT_5X8;
 use embedded_graphics::pixelcolor::BinaryColor;
 use embedded_graphics::prelude::*;
@@ -19,7 +17,7 @@ use embedded_graphics::text::Alignment;
 use heapless::{String, Vec};
 
 use super::{View, WIDTH, line, write};
-use crate::advice::{Advice, Side};
+use crate::advice::{Advice, Excess, Side};
 use crate::error::text;
 use crate::units::Decimal;
 
@@ -38,19 +36,6 @@ struct Row {
     rpm: String<8>,
     reason: &'static str,
     right: String<8>,
-}
-
-/// How far above the binding bound, so short that it always fits.
-struct Above(f32);
-
-impl fmt::Display for Above {
-    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
-        match self.0 {
-            a if a < 999.5 => write!(f, "+{a:.0}%"),
-            a if a < 98_950.0 => write!(f, "x{:.0}", a / 100.0 + 1.0),
-            _ => f.write_str("far"),
-        }
-    }
 }
 
 /// How many rows there are below the binding one.
@@ -91,7 +76,7 @@ pub(super) fn draw<D: DrawTarget<Color = BinaryColor>>(
         add(Row {
             rpm: whole(bound.at.get()),
             reason: bound.reason.short(),
-            right: text(Above(*above)),
+            right: text(Excess(*above).short()),
         });
     }
     for bound in advice.bounds.iter().filter(|b| b.side == Side::Lower) {

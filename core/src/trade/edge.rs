@@ -1,5 +1,6 @@
 //! Taylor exponents by tool, the life that our speeds are taken to be stated for, and the slowest useful speed of carbide.
 
+use super::factor::of_operation;
 use super::source::{KALPAKJIAN_21, Source};
 use super::{IsoGroup, Material, Operation, Tool};
 
@@ -49,3 +50,19 @@ pub const fn slowest_useful(material: Material, tool: Tool, operation: Operation
 /// The slowest useful speed never stands above this share of the speed advised for the combination, so that the advice does
 /// not contradict itself where hard steels run slowly anyway (our choice).
 pub const SLOWEST_SHARE: f32 = 0.75;
+
+/// The share of the speed printed on an insert's box that an operation takes; `None` where the print does not speak of the
+/// operation at all.
+///
+/// Boxes speak of turning, or of milling on a cutter's inserts (common practice, no source). Facing is the cut of turning,
+/// boring costs what it costs in the table, and finishing is not raised above the print.
+pub fn box_share(operation: Operation) -> Option<f32> {
+    match operation {
+        Operation::RoughTurning
+        | Operation::FinishTurning
+        | Operation::Facing
+        | Operation::Milling => Some(1.0),
+        Operation::Boring => of_operation(operation).map(|(_, factor)| factor.by),
+        _ => None,
+    }
+}

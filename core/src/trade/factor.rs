@@ -147,7 +147,7 @@ const UNKNOWN_STEEL: Factor = Factor {
 };
 
 /// The operation whose speed this one is taken from.
-fn of_operation(operation: Operation) -> Option<(Operation, Factor)> {
+pub(super) fn of_operation(operation: Operation) -> Option<(Operation, Factor)> {
     let (from, what, by, source) = match operation {
         Operation::RoughTurning => return None,
         Operation::FinishTurning => (
