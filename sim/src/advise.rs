@@ -8,7 +8,7 @@ use std::io::{self, Write};
 use std::path::PathBuf;
 
 use clap::Args;
-use rimrate_core::advice::advise;
+use rimrate_core::advice::{advise, refuse_machine};
 use rimrate_core::machine::Machine;
 use rimrate_core::setup::{Diameter, Setup};
 use rimrate_core::trade::{Coolant, Material, Operation, Tool};
@@ -113,6 +113,18 @@ impl Advise {
             Operation::from_id,
             &Operation::ALL.map(Operation::id),
         )?;
+        refuse_machine(operation, machine.kind()).map_err(|refusal| {
+            let allowed: Vec<&str> = Operation::ALL
+                .into_iter()
+                .filter(|&o| refuse_machine(o, machine.kind()).is_ok())
+                .map(Operation::id)
+                .collect();
+            Fail::input(format!(
+                "operation: `{}` does not go with this machine: {refusal}; allowed: {}",
+                operation.id(),
+                allowed.join(", ")
+            ))
+        })?;
         let diameter = Diameter::parse(&word(&self.diameter)).map_err(Fail::input)?;
         Ok(Setup {
             material: known(
@@ -138,7 +150,10 @@ impl Advise {
                 .transpose()
                 .map_err(Fail::input)?,
             cap_is_old: false,
-            details: self.details.read(diameter, tool, operation)?,
+            details: {
+                let holder = machine.holders().get(usize::from(holder)).map(|h| h.kind);
+                self.details.read(diameter, tool, operation, holder)?
+            },
         })
     }
 }

@@ -2,7 +2,9 @@
 
 use std::fmt::Write as _;
 
-use rimrate_core::advice::{Advice, Bound, Caution, FAST_ABOVE, FeedFrom, Pick, Setting, Side};
+use rimrate_core::advice::{
+    Advice, Bound, Caution, Excess, FAST_ABOVE, FeedFrom, Pick, Reason, Setting, Side,
+};
 use rimrate_core::machine::{Drive, Holder, Machine};
 use rimrate_core::physics::cutting_speed::surface_speed_m_min;
 use rimrate_core::setup::{HalfNut, Setup, Support};
@@ -37,6 +39,59 @@ fn wrapped(line: &str) -> Vec<String> {
         }
     }
     rows
+}
+
+/// Fewer than 20 rows.
+const MOST_ROWS: usize = 19;
+/// A bound this far above the best speed, percent, is not near enough to matter: three times it.
+const FAR_ABOVE: f32 = 200.0;
+
+/// What is left out of the text, each level with those before it.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
+enum Terse {
+    /// Nothing.
+    Full,
+    /// The sources of the cutting speed: `--list` and JSON have them.
+    NoSource,
+    /// Bounds far above the best speed, counted.
+    NearBounds,
+    /// The edge's life, unless some of it is lost.
+    NoEdgeLife,
+    /// Force, pass and bar, where the bounds and cautions say the same or nothing depends on them.
+    OnlyWhatHolds,
+}
+
+impl Terse {
+    const ALL: [Terse; 5] = [
+        Terse::Full,
+        Terse::NoSource,
+        Terse::NearBounds,
+        Terse::NoEdgeLife,
+        Terse::OnlyWhatHolds,
+    ];
+}
+
+/// Cautions about what may hurt somebody and that no other line speaks of; they are told first where not all can be.
+const fn may_hurt(caution: &Caution) -> bool {
+    matches!(
+        caution,
+        Caution::NeedsCap { .. }
+            | Caution::NeedsCapForWork
+            | Caution::OffBalance
+            | Caution::SideLoad
+            | Caution::Slender { .. }
+            | Caution::ChuckUnscrews
+            | Caution::Material(_)
+    )
+}
+
+/// A line in rows, the first of which begins with what it is about.
+fn labelled(word: &str, line: &str) -> Vec<String> {
+    let mut word = word;
+    wrapped(line)
+        .into_iter()
+        .map(|row| format!("{:<15}{row}", std::mem::take(&mut word)))
+        .collect()
 }
 
 /// A number for JSON, with three significant places behind the point.
@@ -90,6 +145,7 @@ impl Answer<'_> {
         let edge = cut.edge.as_ref().map(|e| {
             json!({
                 "from": if e.from_box { "box" } else { "table" },
+                "box_share": e.from_box.then(|| round(e.box_share)),
                 "stated_m_min": round(e.stated.m_min()),
                 "stated_min": round(e.stated_min),
                 "exponent_range": [round(e.n.0), round(e.n.1)],
@@ -172,36 +228,83 @@ impl Answer<'_> {
         })
     }
 
+    /// The answer in fewer than 20 rows: at each level of terseness what is needed least is left out, until it fits.
     pub(super) fn text(&self) -> String {
-        let mut text = String::new();
-        let mut say = |word: &str, line: String| {
-            let mut word = word;
-            for row in wrapped(&line) {
-                // Writing into a String cannot fail.
-                let _ = writeln!(text, "{word:<15}{row}");
-                word = "";
+        let mut text = Vec::new();
+        for terse in Terse::ALL {
+            text = self.body(terse);
+            let room = MOST_ROWS.saturating_sub(text.len());
+            if let Some(cautions) = self.cautions(room, terse) {
+                text.extend(cautions);
+                break;
             }
-        };
-        self.head(&mut say);
-        self.setting(&mut say);
-        self.cut(&mut say);
-        say("bounds", self.bounds());
-        let (last, mind) = match self.advice.cautions.split_last() {
-            Some((last, rest)) => (Some(last), rest),
-            None => (None, &[][..]),
-        };
-        for (i, caution) in mind.iter().enumerate() {
-            let line = match last {
-                // What is always said shares the last line.
-                Some(last) if i + 1 == mind.len() => format!("{caution} {last}"),
-                _ => caution.to_string(),
-            };
-            say("caution", line);
         }
-        text
+        text.iter().fold(String::new(), |all, row| all + row + "\n")
     }
 
-    fn head(&self, say: &mut dyn FnMut(&str, String)) {
+    /// All but the cautions.
+    fn body(&self, terse: Terse) -> Vec<String> {
+        let mut rows = Vec::new();
+        let mut say = |word: &str, line: String| rows.extend(labelled(word, &line));
+        self.head(terse, &mut say);
+        self.setting(terse, &mut say);
+        self.cut(terse, &mut say);
+        say("bounds", self.bounds(terse));
+        rows
+    }
+
+    /// The cautions, most pressing first, in this many rows; `None` where they do not fit and something else may still be
+    /// left out. What is always said comes last, and is never cut.
+    fn cautions(&self, room: usize, terse: Terse) -> Option<Vec<String>> {
+        let all: Vec<String> = self
+            .advice
+            .cautions
+            .iter()
+            .map(Caution::to_string)
+            .collect();
+        let always = all.len().saturating_sub(2);
+        let (mind, always) = all.split_at(always);
+        let always = always.join(" ");
+        let each: Vec<String> = mind
+            .iter()
+            .chain([&always])
+            .flat_map(|line| labelled("caution", line))
+            .collect();
+        if each.len() <= room {
+            return Some(each);
+        }
+        if terse < Terse::NoEdgeLife {
+            return None;
+        }
+        // In one paragraph, what may hurt somebody first, and the rest only in JSON.
+        let (hazards, others): (Vec<_>, Vec<_>) = mind
+            .iter()
+            .zip(&self.advice.cautions)
+            .partition(|(_, caution)| may_hurt(caution));
+        let pressing = hazards.len();
+        let mind: Vec<&String> = hazards
+            .iter()
+            .chain(&others)
+            .map(|(words, _)| *words)
+            .collect();
+        let fitting = |shown: usize| {
+            let mut parts: Vec<String> = mind.iter().take(shown).map(ToString::to_string).collect();
+            if shown < mind.len() {
+                parts.push(format!("And {} more in --json.", mind.len() - shown));
+            }
+            parts.push(always.clone());
+            let rows = labelled("caution", &parts.join(" "));
+            (rows.len() <= room).then_some(rows)
+        };
+        // Rather less of the cut than a hazard untold.
+        let least = match terse {
+            Terse::OnlyWhatHolds => 0,
+            _ => pressing,
+        };
+        (least..=mind.len()).rev().find_map(fitting)
+    }
+
+    fn head(&self, terse: Terse, say: &mut dyn FnMut(&str, String)) {
         let setup = self.setup;
         let coolant = match setup.coolant {
             Coolant::Flood => "with cutting fluid",
@@ -233,7 +336,15 @@ impl Answer<'_> {
         let v = self.stated();
         let from = match &self.advice.cut.edge {
             Some(e) if e.from_box => {
-                format!("from the insert's box, for {} min", n(e.stated_min, 0))
+                let share = if e.box_share < 1.0 {
+                    format!(", x {} {}", n(e.box_share, 2), setup.operation)
+                } else {
+                    String::new()
+                };
+                format!(
+                    "from the insert's box{share}, for {} min",
+                    n(e.stated_min, 0)
+                )
             }
             _ => {
                 let row = self.cutting.how.row;
@@ -251,14 +362,27 @@ impl Answer<'_> {
                 let by = if factors.is_empty() {
                     String::new()
                 } else {
-                    format!(" of {} {}", row.operation, factors.join(", "))
+                    let factors = if terse >= Terse::OnlyWhatHolds {
+                        format!("x {:.2}", self.cutting.how.factors.product())
+                    } else {
+                        factors.join(", ")
+                    };
+                    format!(" of {} {factors}", row.operation)
                 };
-                format!(
-                    "published {} to {} m/min{by}; {}",
-                    n(row.range.0.m_min(), 1),
-                    n(row.range.1.m_min(), 1),
-                    row.source.text
-                )
+                let (low, high) = (row.range.0.m_min(), row.range.1.m_min());
+                let (low, high) = (n(low, 1).to_string(), n(high, 1).to_string());
+                // A single figure, or two that print alike, stands once.
+                let range = if low == high {
+                    low
+                } else {
+                    format!("{low} to {high}")
+                };
+                let source = if terse >= Terse::NoSource {
+                    String::new()
+                } else {
+                    format!("; {}", row.source.text)
+                };
+                format!("published {range} m/min{by}{source}")
             }
         };
         say(
@@ -271,7 +395,7 @@ impl Answer<'_> {
         );
     }
 
-    fn setting(&self, say: &mut dyn FnMut(&str, String)) {
+    fn setting(&self, terse: Terse, say: &mut dyn FnMut(&str, String)) {
         let (setup, advice) = (self.setup, self.advice);
         say(
             "best speed",
@@ -308,8 +432,10 @@ impl Answer<'_> {
             } => say(
                 "set no step",
                 format!(
-                    "even the slowest, {} at {}, is {over_percent:.0} % too fast",
-                    nearest.label, nearest.rpm
+                    "even the slowest, {} at {}, is {} too fast",
+                    nearest.label,
+                    nearest.rpm,
+                    Excess(*over_percent)
                 ),
             ),
             Pick::NeedsCap => say(
@@ -323,7 +449,9 @@ impl Answer<'_> {
         };
         let set = advice.pick.setting();
         let at_set = set.map(|s| e.expected_min(surface_speed_m_min(s.rpm, setup.diameter)));
-        if let (Some(wanted), Some(v)) = (e.wanted_min, e.for_wanted) {
+        if let (Some(wanted), Some(v)) = (e.wanted_min, e.for_wanted)
+            && (terse < Terse::NoEdgeLife || e.life_given_up())
+        {
             let mut line = format!(
                 "{} min wanted: {} m/min by the largest exponent of {} to {}, from {} m/min for {} min",
                 n(wanted, 0),
@@ -343,7 +471,7 @@ impl Answer<'_> {
         }
     }
 
-    fn cut(&self, say: &mut dyn FnMut(&str, String)) {
+    fn cut(&self, terse: Terse, say: &mut dyn FnMut(&str, String)) {
         let (cut, set) = (&self.advice.cut, self.advice.pick.setting().map(|s| s.rpm));
         if let Some(f) = &cut.feed {
             let per = match (f.per_rev, f.per_tooth) {
@@ -396,7 +524,14 @@ impl Answer<'_> {
                 n(d, 2)
             )
         }));
-        if !power.is_empty() {
+        // The motor's part stays where the motor is what holds.
+        let pulls = !self.advice.cut.overloaded
+            && !matches!(
+                self.advice.window.high.reason,
+                Reason::Power | Reason::Torque
+            );
+        let short = terse >= Terse::OnlyWhatHolds;
+        if !power.is_empty() && !(short && pulls) {
             say("power", format!("{} (worn edge)", power.join(", ")));
         }
         let mut pass = Vec::new();
@@ -421,7 +556,7 @@ impl Answer<'_> {
                 n(f.nose_mm, 2)
             ));
         }
-        if !pass.is_empty() {
+        if !pass.is_empty() && !short {
             say("pass", pass.join(", "));
         }
         if let Some(t) = &cut.thread {
@@ -440,7 +575,7 @@ impl Answer<'_> {
                 ),
             );
         }
-        if let Some(b) = &cut.bar {
+        if let Some(b) = cut.bar.as_ref().filter(|_| !short) {
             let held = match b.support {
                 Support::Free => "in the chuck alone",
                 Support::Tailstock => "with the tailstock",
@@ -458,17 +593,22 @@ impl Answer<'_> {
     }
 
     /// Upper bounds, lowest first, then lower ones.
-    fn bounds(&self) -> String {
+    fn bounds(&self, terse: Terse) -> String {
         let one = |b: &Bound| format!("{} {} ({})", b.at, b.reason.short(), b.kind.code());
-        let mut all: Vec<String> = self
-            .advice
-            .ranked()
+        let ranked = self.advice.ranked();
+        let near = |above: f32| terse < Terse::NearBounds || above <= FAR_ABOVE;
+        let mut all: Vec<String> = ranked
             .iter()
+            .filter(|(_, above)| near(*above))
             .map(|(b, above)| match above {
                 a if *a < 0.05 => one(b),
-                a => format!("{} +{a:.0} %", one(b)),
+                a => format!("{} {}", one(b), Excess(*a).above()),
             })
             .collect();
+        let far = ranked.iter().filter(|(_, above)| !near(*above)).count();
+        if far > 0 {
+            all.push(format!("and {far} more"));
+        }
         all.extend(
             self.advice
                 .bounds

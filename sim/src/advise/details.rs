@@ -3,9 +3,11 @@
 use std::num::NonZeroU8;
 
 use clap::Args;
+use rimrate_core::machine::HolderKind;
 use rimrate_core::setup::{
     self, Bar, Details, Diameter, HalfNut, InsertBox, Jaws, Life, Ra, Support, Thread,
 };
+use rimrate_core::trade::edge;
 use rimrate_core::trade::{Operation, Tool};
 use rimrate_core::units::{Length, SurfaceSpeed};
 
@@ -93,6 +95,7 @@ impl DetailOptions {
         diameter: Diameter,
         tool: Tool,
         operation: Operation,
+        holder: Option<HolderKind>,
     ) -> Result<Details, Fail> {
         let word = |field: &str, text: &str, known: &[&str]| {
             Fail::input(format!(
@@ -147,7 +150,7 @@ impl DetailOptions {
                 "depth: `{depth}` goes beyond the middle of the work; allowed: 0.001 mm to {radius} mm, half of the diameter"
             )));
         }
-        Ok(Details {
+        let details = Details {
             depth,
             feed: length("feed", &self.feed, (0.001, 10.0))?,
             nose_radius: length("nose-radius", &self.nose_radius, (0.01, 20.0))?,
@@ -180,7 +183,90 @@ impl DetailOptions {
             jaws,
             off_balance: self.off_balance,
             interrupted: self.interrupted,
-        })
+        };
+        self.only_what_applies(operation, holder)?;
+        Ok(details)
+    }
+
+    /// Refuses what was typed for nothing: an option that the operation or the holder does not have.
+    fn only_what_applies(
+        &self,
+        operation: Operation,
+        holder: Option<HolderKind>,
+    ) -> Result<(), Fail> {
+        let refused = |field: &str, value: &str, with: &str, allowed: &str| {
+            Err(Fail::input(format!(
+                "{field}: `{value}` does not go with {with}; allowed: with {allowed}"
+            )))
+        };
+        // A drill, reamer or tap of so many flutes turns at its own diameter's speed: its feed is that of a turn.
+        let counts_teeth = operation == Operation::Milling;
+        let mills_or_parts = operation.is_milling() || operation == Operation::Parting;
+        let threads = operation.is_threading();
+        let to_an_end = operation == Operation::Threading;
+        let turned = operation.is_turning();
+        let has_depth = turned || operation.is_milling();
+        let own_feed = !threads;
+        let boxed = edge::box_share(operation).is_some();
+        let ids = |go: &dyn Fn(Operation) -> bool| {
+            let ids: Vec<&str> = Operation::ALL
+                .into_iter()
+                .filter(|&o| go(o))
+                .map(Operation::id)
+                .collect();
+            ids.join(", ")
+        };
+        let single_point = ids(&Operation::is_turning);
+        let all = [
+            ("lead", &self.lead, threads, ids(&Operation::is_threading)),
+            ("runout", &self.runout, to_an_end, "threading".to_owned()),
+            (
+                "half-nut",
+                &self.half_nut,
+                to_an_end,
+                "threading".to_owned(),
+            ),
+            ("teeth", &self.teeth, counts_teeth, "milling".to_owned()),
+            (
+                "width",
+                &self.width,
+                mills_or_parts,
+                "milling, fly-cutting, parting".to_owned(),
+            ),
+            ("ra", &self.ra, turned, single_point.clone()),
+            ("nose-radius", &self.nose_radius, turned, single_point),
+            (
+                "depth",
+                &self.depth,
+                has_depth,
+                ids(&|o| o.is_turning() || o.is_milling()),
+            ),
+            ("feed", &self.feed, own_feed, ids(&|o| !o.is_threading())),
+            (
+                "box-speed",
+                &self.box_speed,
+                boxed,
+                format!(
+                    "{}: the box does not speak of other cuts, whose speed the table gives",
+                    ids(&|o| edge::box_share(o).is_some())
+                ),
+            ),
+        ];
+        for (field, value, goes, allowed) in &all {
+            if let Some(value) = value.as_ref().filter(|_| !goes) {
+                return refused(field, value, operation.id(), allowed);
+            }
+        }
+        let jawed = matches!(holder, Some(HolderKind::ThreeJaw | HolderKind::FourJaw));
+        if let Some(value) = self.jaws.as_ref().filter(|_| !jawed) {
+            return refused(
+                "jaws",
+                value,
+                holder.map_or("a holder that is not known", HolderKind::name),
+                "a three-jaw or four-jaw chuck",
+            );
+        }
+        Ok(())
     }
 
     fn bar(&self, out: Length, diameter: Diameter, operation: Operation) -> Result<Bar, Fail> {
