@@ -525,13 +525,13 @@ impl Answer<'_> {
             )
         }));
         // The motor's part stays where the motor is what holds.
-        let pulls = !self.advice.cut.overloaded
-            && !matches!(
+        let motor_holds = self.advice.cut.overloaded
+            || matches!(
                 self.advice.window.high.reason,
                 Reason::Power | Reason::Torque
             );
         let short = terse >= Terse::OnlyWhatHolds;
-        if !power.is_empty() && !(short && pulls) {
+        if !power.is_empty() && (!short || motor_holds) {
             say("power", format!("{} (worn edge)", power.join(", ")));
         }
         let mut pass = Vec::new();
