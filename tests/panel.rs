@@ -109,12 +109,13 @@ fn on_the_run_page_the_left_knob_chooses_material_and_the_right_one_diameter() {
 }
 
 #[test]
-fn left_opens_the_choose_page_right_the_why_page_and_either_goes_back() {
-    for (knob, page) in [
-        (Knob::Left, Page::Choose(Field::Operation)),
-        (Knob::Right, Page::Why(0)),
+fn left_opens_the_choose_page_right_the_why_page_and_a_press_goes_back() {
+    let either = [Knob::Left, Knob::Right];
+    for (knob, page, ways_back) in [
+        (Knob::Left, Page::Choose(Field::Operation), &either[..]),
+        (Knob::Right, Page::Why(0), &either[1..]),
     ] {
-        for back in [Knob::Left, Knob::Right] {
+        for &back in ways_back {
             let mut hand = lathe();
             hand.click(knob);
             assert_eq!(hand.panel.page(), page);
@@ -570,5 +571,23 @@ fn any_cap_that_the_knob_sets_is_a_cap() {
             assert!(hand.setup.cap.unwrap() >= before);
         }
         assert!(before > fastest, "every speed of the machine can be capped");
+    }
+}
+
+#[test]
+fn the_sensor_page_lies_behind_the_why_page() {
+    let mut hand = lathe();
+    hand.click(Knob::Right);
+    hand.click(Knob::Left);
+    assert_eq!(hand.panel.page(), Page::Sensor);
+    // Nothing is turned there.
+    hand.turn(Knob::Left, 3);
+    hand.turn(Knob::Right, -3);
+    assert_eq!((hand.panel.page(), hand.setup), (Page::Sensor, bar(25.0)));
+    for knob in [Knob::Left, Knob::Right] {
+        hand.click(knob);
+        assert_eq!(hand.panel.page(), Page::Run);
+        hand.click(Knob::Right);
+        hand.click(Knob::Left);
     }
 }

@@ -13,7 +13,7 @@ use rimrate_core::machine::{
 use rimrate_core::panel::{Bench, Field, Knob, Notice, Page, Panel};
 use rimrate_core::screen::{self, HEIGHT, View, WIDTH};
 use rimrate_core::setup::{self, Details, Diameter, Life, Setup, Support};
-use rimrate_core::tacho::{Reading, Signal};
+use rimrate_core::tacho::{Health, Reading, Rejected, Signal};
 use rimrate_core::time::Duration;
 use rimrate_core::trade::{Material, Operation, Tool, cutting_speed};
 use rimrate_core::units::{Length, UnitSystem};
@@ -31,6 +31,25 @@ struct Scene {
     page: Page,
     notice: Option<Notice>,
     edge: EdgeAccount,
+    sensor: Health,
+}
+
+/// A sensor that works, with so many pulses in a revolution, and something of every kind rejected.
+fn health(pulses: u16) -> Health {
+    Health {
+        pulses: pulses.try_into().unwrap(),
+        counted: 123_456,
+        rejected: Rejected {
+            joined: 3,
+            slivers: 1234,
+            missing: 56_789,
+            noise: 999,
+            ..Rejected::default()
+        },
+        placement: Some(1.02),
+        jitter: Some(3.1e-6),
+        highest: rpm(1.2e6 / f32::from(pulses)),
+    }
 }
 
 impl Scene {
@@ -44,6 +63,7 @@ impl Scene {
             page: Page::Run,
             notice: None,
             edge: EdgeAccount::default(),
+            sensor: health(2),
         }
     }
 
@@ -100,6 +120,7 @@ impl Scene {
             page: self.page,
             notice: self.notice.as_ref(),
             edge: self.edge,
+            sensor: self.sensor,
         };
         screen::draw(&view, target)
     }
@@ -293,6 +314,33 @@ fn scenes() -> Vec<(&'static str, Scene)> {
         (
             "run-notice-in-two-lines",
             lathe().at(279.0, Verdict::Fast).turned(Knob::Left, 5),
+        ),
+        (
+            "sensor-two-magnets",
+            Scene {
+                page: Page::Sensor,
+                ..lathe()
+            },
+        ),
+        (
+            "sensor-toothed-wheel",
+            Scene {
+                page: Page::Sensor,
+                sensor: health(60),
+                ..lathe()
+            },
+        ),
+        (
+            "sensor-not-learned-yet",
+            Scene {
+                page: Page::Sensor,
+                sensor: Health {
+                    placement: None,
+                    jitter: None,
+                    ..health(240)
+                },
+                ..lathe()
+            },
         ),
         ("choose-job", choose(Field::Operation, bar(25.0))),
         (

@@ -83,6 +83,8 @@ struct Shown {
     setup: Setup,
     /// Percent of the edge's life that the Why page shows.
     edge: Option<u32>,
+    /// Pulses counted, as the Sensor page shows.
+    counted: Option<u32>,
 }
 
 impl Instrument {
@@ -178,6 +180,7 @@ impl Instrument {
             notice: self.panel.notice().is_some(),
             setup: self.setup,
             edge: matches!(self.panel.page(), Page::Why(_)).then(|| self.edge.percent()),
+            counted: (self.panel.page() == Page::Sensor).then(|| self.tacho.health().counted),
         };
         let redraw = match self.drawn {
             None => true,
@@ -185,6 +188,7 @@ impl Instrument {
             Some((at, was)) => {
                 let only_digits = Shown {
                     digits: shown.digits,
+                    counted: shown.counted,
                     ..was
                 } == shown;
                 was != shown && (!only_digits || now.since(at) >= REDRAW)
@@ -234,6 +238,7 @@ impl Instrument {
             verdict: self.verdict,
             page: self.panel.page(),
             notice: self.panel.notice(),
+            sensor: self.tacho.health(),
             edge: self.edge,
         }
     }

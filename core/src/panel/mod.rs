@@ -5,8 +5,10 @@
 //!  Run page -- press left ---> Choose page -- press either --> Run page
 //!     |      turn left: which field, turn right: its value
 //!     |
-//!     +------ press right --> Why page ----- press either --> Run page
+//!     +------ press right --> Why page ----- press right ---> Run page
 //!            turn either: further down the bounds
+//!                               |
+//!                               +----------- press left ----> Sensor page -- press either --> Run page
 //!
 //!            hold right: the cap is taken away; on the Why page: a new edge is in, its account starts anew
 //!            hold left (any page): the buzzer is muted until the verdict changes
@@ -53,6 +55,8 @@ pub enum Page {
     Choose(Field),
     /// What holds the speed down, from this row on below the first.
     Why(u8),
+    /// How well the sensor works.
+    Sensor,
 }
 
 /// What a change of the setup shows for a while: `was 25, now 30 mm`.
@@ -151,6 +155,7 @@ impl Panel {
                 self.page = Page::Why(first as u8);
                 return;
             }
+            (Page::Sensor, _) => return,
         };
         let before = *bench.setup;
         field.turn(detents, bench.setup, bench.machine, bench.advice);
@@ -230,7 +235,8 @@ impl Panel {
         self.page = match (self.page, knob) {
             (Page::Run, Knob::Left) => Page::Choose(self.field),
             (Page::Run, Knob::Right) => Page::Why(0),
-            (Page::Choose(_) | Page::Why(_), _) => Page::Run,
+            (Page::Why(_), Knob::Left) => Page::Sensor,
+            (Page::Choose(_) | Page::Why(_) | Page::Sensor, _) => Page::Run,
         };
     }
 

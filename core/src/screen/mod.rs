@@ -2,6 +2,7 @@
 
 mod choose;
 mod run;
+mod sensor;
 pub(crate) mod why;
 
 use core::fmt;
@@ -19,7 +20,7 @@ use crate::error::text;
 use crate::machine::Machine;
 use crate::panel::{Notice, Page};
 use crate::setup::Setup;
-use crate::tacho::{Reading, Signal};
+use crate::tacho::{Health, Reading, Signal};
 use crate::verdict::Verdict;
 
 /// Width of the screen in pixels.
@@ -46,6 +47,8 @@ pub struct View<'a> {
     pub notice: Option<&'a Notice>,
     /// How much of the edge is used.
     pub edge: EdgeAccount,
+    /// How well the sensor works.
+    pub sensor: Health,
 }
 
 /// Draws the view's page on a cleared target. Nothing is drawn outside of 128 x 64.
@@ -57,6 +60,7 @@ pub fn draw<D: DrawTarget<Color = BinaryColor>>(
         Page::Run => run::draw(view, target),
         Page::Choose(field) => choose::draw(view, field, target),
         Page::Why(first) => why::draw(view, first, target),
+        Page::Sensor => sensor::draw(view, target),
     }
 }
 
