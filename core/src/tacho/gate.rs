@@ -14,8 +14,6 @@ use crate::time::{Duration, Edge, EdgeKind, Instant};
 const JOIN_SHARE: u64 = 10;
 /// Where passages and gaps are known, a gap below this share of the shorter one joins.
 const KNOWN_JOIN_SHARE: u64 = 4;
-/// All gaps of a passage together are below this share of what is low of it.
-const GAPS_SHARE: u64 = 3;
 /// A low narrower than this share of the recent passages is a sliver. Magnets of one collar differ less than that,
 /// and so do two passages that follow one another in a run-up.
 const SLIVER_SHARE: u64 = 4;
@@ -244,10 +242,11 @@ impl Gate {
         // A magnet that was parked at the sensor, or a short circuit, is no passage: against it every gap is short.
         let passing = |width: u64| if width > PARKED.nanos() { 0 } else { width };
         let widest = passing(piece).max(passing(p.width().nanos())).max(begun);
-        // All gaps together are short too: else the passages of a spindle that has become much faster would be one.
-        let low = passing(piece).max(passing(p.low)).max(begun);
+        // All gaps together are shorter than what is low, or far shorter than a passage as they have been: else the passages
+        // of a spindle that has become much faster would be one.
+        let low = passing(piece).max(passing(p.low));
         let gaps = fell.since(p.first).nanos().saturating_sub(p.low);
-        gaps.saturating_mul(GAPS_SHARE) < low
+        (gaps < low || gaps < begun / 4)
             && (times(JOIN_SHARE, gap) < widest
                 || times(KNOWN_JOIN_SHARE, gap) < self.usual.min(self.usual_gap))
     }
