@@ -295,7 +295,8 @@ fn shaking_that_begins_as_the_spindle_stops_ends_in_still() {
 
 #[test]
 fn chatter_noise_and_missed_pulses_do_not_move_the_reading() {
-    let cases: [(&str, Fault, fn(&mut SensorSpec)); 3] = [
+    type Prepare = fn(&mut SensorSpec);
+    let cases: [(&str, Fault, Prepare); 3] = [
         ("chatter", Fault::Chatter, |_| {}),
         ("60 spikes a second", Fault::Spikes, |s| s.spike_rate = 60.0),
         ("3 % missing", Fault::Dropouts, |s| s.dropout = 0.03),
