@@ -1,6 +1,7 @@
 //! What several checks share: machines, setups, a spindle's edges, and a box with a clock.
 
 pub mod capture;
+pub mod methods;
 
 use std::path::Path;
 

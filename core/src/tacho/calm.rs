@@ -135,11 +135,20 @@ impl Calm {
         self.steady >= LINE * self.pulses
     }
 
-    /// The turn that ends now lasted `turn` ns and began at `since`. O(1).
-    pub(super) fn check(&mut self, turn: u64, since: Instant) {
-        if turn.abs_diff(self.period) > self.period >> CHANGE_SHIFT {
-            self.restart(turn, since);
+    /// The turn that ends now lasted `turn` ns and began at `since`. By how much it differs from the others, ns; nothing where
+    /// it begins a new window. O(1).
+    pub(super) fn check(&mut self, turn: u64, since: Instant) -> u64 {
+        if self.period == 0 {
+            // The first turn: what came with it stays.
+            self.period = turn;
+            self.since = since;
         }
+        let off = turn.abs_diff(self.period);
+        if off > self.period >> CHANGE_SHIFT {
+            self.restart(turn, since);
+            return 0;
+        }
+        off
     }
 
     /// Takes the next pulse, come or filled in. O(1), but for the one that closes a block.

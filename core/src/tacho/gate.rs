@@ -11,19 +11,21 @@ use heapless::Vec;
 use crate::time::{Duration, Edge, EdgeKind, Instant};
 
 /// A gap below this share of the passage joins. A toothed wheel may be low for up to nine tenths of its pitch.
-const JOIN_SHARE: u64 = 10;
+const JOIN_SHARE: u32 = 10;
 /// Where passages and gaps are known, a gap below this share of the shorter one joins.
-const KNOWN_JOIN_SHARE: u64 = 4;
+const KNOWN_JOIN_SHARE: u32 = 4;
+/// All gaps before a passage is proven are together below this share of what passages have been.
+const GAPS_SHARE: u32 = 4;
 /// A low narrower than this share of the recent passages is a sliver. Magnets of one collar differ less than that,
 /// and so do two passages that follow one another in a run-up.
-const SLIVER_SHARE: u64 = 4;
+const SLIVER_SHARE: u32 = 4;
 /// Slivers may be the passages of a spindle that has become much faster: not if they are thinner than this part of their
 /// spacing (4.5 degrees for one magnet),
-const THINNEST: u64 = 80;
+const THINNEST: u32 = 80;
 /// and only after this many in a row.
 const NARROW_IS_USUAL: u8 = 6;
-/// A longer low is no passage but a magnet that was parked at the sensor: it says nothing about the next one.
-const PARKED: Duration = Duration::from_secs(1);
+/// A longer low, ns, is no passage but a magnet that was parked at the sensor: it says nothing about the next one.
+const PARKED: u32 = 1_000_000_000;
 /// The input's electrical limit, pulses a second,
 pub(super) const HIGHEST_RATE: f32 = 20_000.0;
 /// as a period, with a tenth for jitter. Never derived from the machine's top speed: a runaway must be seen.
@@ -70,23 +72,21 @@ struct Passage {
     first: Instant,
     last_rise: Instant,
     /// How long the line was low in it, ns: what noise adds to that is little.
-    low: u64,
+    low: u32,
     reported: bool,
 }
 
 impl Passage {
-    fn width(&self) -> Duration {
-        self.last_rise.since(self.first)
+    fn width(&self) -> u32 {
+        short(self.last_rise.since(self.first))
     }
 }
 
 /// Pieces of a passage whose falls are remembered.
 const BEGINS: usize = 6;
-/// Times are cut here before they are multiplied, ns (two years).
-const LONG: u64 = 1 << 56;
-
-fn times(factor: u64, time: Duration) -> u64 {
-    factor * time.nanos().min(LONG)
+/// In ns; whatever is longer than four seconds is only that: 32 bits are what the chip works in.
+fn short(time: Duration) -> u32 {
+    u32::try_from(time.nanos()).unwrap_or(u32::MAX)
 }
 
 #[derive(Clone, Debug, Default)]
@@ -103,8 +103,8 @@ pub(super) struct Gate {
     /// Fall of the piece that proved it wide enough: what came before may have been noise.
     proven_at: Option<Instant>,
     /// Width of the last passage and the gap behind it, ns; zero where nothing is known.
-    usual: u64,
-    usual_gap: u64,
+    usual: u32,
+    usual_gap: u32,
     /// First fall of the last passage or sliver that is over.
     closed_at: Option<Instant>,
     /// Slivers in a row that a faster spindle could have made.
@@ -139,7 +139,7 @@ impl Gate {
     pub(super) fn under_way(&self, now: Instant) -> Option<Instant> {
         let begun = self.passage.filter(|p| {
             let pause = self.low_since.unwrap_or(now).since(p.last_rise);
-            !p.reported && times(JOIN_SHARE, pause) < self.usual
+            !p.reported && short(pause) < self.usual / JOIN_SHARE
         });
         begun.map(|p| p.first).or(self.low_since)
     }
@@ -172,52 +172,46 @@ impl Gate {
 
     /// One stretch of low, from `fell` to `rose`.
     fn low(&mut self, fell: Instant, rose: Instant) -> Option<Pulse> {
-        let piece = rose.since(fell).nanos();
-        let mut passage = match self.passage.take() {
-            Some(p) if self.joins(&p, fell, piece) => {
-                self.rejected.joined += 1;
-                if !p.reported {
-                    self.began(fell);
-                }
-                Passage {
-                    last_rise: rose,
-                    low: p.low + piece,
-                    ..p
-                }
-            }
-            before => {
-                if let Some(p) = before {
-                    self.close(p, fell);
-                }
-                self.begins.clear();
-                self.began(fell);
-                Passage {
-                    first: fell,
-                    last_rise: rose,
-                    low: piece,
-                    reported: false,
-                }
-            }
-        };
-        let width = passage.width();
-        let wide_enough = SLIVER_SHARE * passage.low.min(LONG) >= self.usual;
-        let report = !passage.reported && wide_enough;
-        let too_close = report
-            && self
-                .reported_at
-                .is_some_and(|last| passage.first.since(last) < SHORTEST_PERIOD);
-        if too_close {
-            self.rejected.too_close += 1;
+        let piece = short(rose.since(fell));
+        let joins = self
+            .passage
+            .as_ref()
+            .is_some_and(|p| self.joins(p, fell, piece));
+        if joins {
+            self.rejected.joined += 1;
+        } else {
+            self.close(fell);
+            self.begins.clear();
         }
-        passage.reported |= report;
-        self.passage = Some(passage);
-        (report && !too_close).then(|| {
-            self.reported_at = Some(passage.first);
-            self.proven_at = Some(fell);
-            Pulse {
-                at: passage.first,
-                width,
-            }
+        let new = Passage {
+            first: fell,
+            last_rise: rose,
+            low: 0,
+            reported: false,
+        };
+        let passage = self.passage.get_or_insert(new);
+        passage.last_rise = rose;
+        passage.low = passage.low.saturating_add(piece);
+        if passage.reported {
+            return None;
+        }
+        let (first, width) = (passage.first, passage.width());
+        let wide_enough = passage.low >= self.usual / SLIVER_SHARE;
+        passage.reported = wide_enough;
+        self.began(fell);
+        if !wide_enough {
+            return None;
+        }
+        let before = self.reported_at;
+        if before.is_some_and(|last| first.since(last) < SHORTEST_PERIOD) {
+            self.rejected.too_close += 1;
+            return None;
+        }
+        self.reported_at = Some(first);
+        self.proven_at = Some(fell);
+        Some(Pulse {
+            at: first,
+            width: Duration::from_nanos(u64::from(width)),
         })
     }
 
@@ -236,39 +230,45 @@ impl Gate {
 
     /// Whether a piece that fell at `fell` belongs to the passage before it: by a gap that is short against the passage, or
     /// short against both a passage and a gap as they have been.
-    fn joins(&self, p: &Passage, fell: Instant, piece: u64) -> bool {
-        let gap = fell.since(p.last_rise);
+    fn joins(&self, p: &Passage, fell: Instant, piece: u32) -> bool {
+        let (gap, width) = (short(fell.since(p.last_rise)), p.width());
+        // What nearly every gap is: the shares below are far from it.
+        if gap >= piece.max(width).max(self.usual) {
+            return false;
+        }
         let begun = if p.reported { 0 } else { self.usual };
         // A magnet that was parked at the sensor, or a short circuit, is no passage: against it every gap is short.
-        let passing = |width: u64| if width > PARKED.nanos() { 0 } else { width };
-        let widest = passing(piece).max(passing(p.width().nanos())).max(begun);
+        let passing = |width: u32| if width > PARKED { 0 } else { width };
         // All gaps together are shorter than what is low, or far shorter than a passage as they have been: else the passages
         // of a spindle that has become much faster would be one.
         let low = passing(piece).max(passing(p.low));
-        let gaps = fell.since(p.first).nanos().saturating_sub(p.low);
-        (gaps < low || gaps < begun / 4)
-            && (times(JOIN_SHARE, gap) < widest
-                || times(KNOWN_JOIN_SHARE, gap) < self.usual.min(self.usual_gap))
+        let gaps = short(fell.since(p.first)).saturating_sub(p.low);
+        (gaps < low || gaps < begun / GAPS_SHARE)
+            && (gap < passing(piece).max(passing(width)).max(begun) / JOIN_SHARE
+                || gap < self.usual.min(self.usual_gap) / KNOWN_JOIN_SHARE)
     }
 
-    /// A passage or a sliver is over: the next low, from `next` on, is not part of it.
-    fn close(&mut self, passage: Passage, next: Instant) {
+    /// The passage or sliver, if there is one, is over: the next low, from `next` on, is not part of it.
+    fn close(&mut self, next: Instant) {
+        let Some(passage) = self.passage.take() else {
+            return;
+        };
         let width = passage.width();
         let before = self.closed_at.replace(passage.first);
         if passage.reported {
             self.narrow = 0;
-            self.usual = if width > PARKED { 0 } else { width.nanos() };
+            self.usual = if width > PARKED { 0 } else { width };
             // Where pulses are missing, or the spindle slows down, the gap is longer than it will be: it follows slowly.
-            let gap = next.since(passage.last_rise).nanos();
+            let gap = short(next.since(passage.last_rise));
             self.usual_gap = match self.usual_gap {
                 0 => gap,
-                known => gap.min(known + known / 8),
+                known => gap.min(known.saturating_add(known / 8)),
             };
             return;
         }
         self.rejected.slivers += 1;
-        let spacing = before.map_or(Duration::MAX, |before| passage.first.since(before));
-        let could_turn = times(THINNEST, width) >= spacing.nanos();
+        let spacing = before.map_or(u32::MAX, |before| short(passage.first.since(before)));
+        let could_turn = width >= spacing / THINNEST;
         self.narrow = if could_turn { self.narrow + 1 } else { 0 };
         if self.narrow >= NARROW_IS_USUAL {
             self.forget_width();

@@ -114,6 +114,8 @@ pub struct Tacho {
     widest: u64,
     /// A silence shorter than this never means anything.
     patience: Duration,
+    /// Until then it means nothing.
+    quiet_until: Instant,
 }
 
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -207,6 +209,8 @@ const JITTER: Duration = Duration::from_micros(5);
 const JITTERS: f32 = 8.0;
 /// What shares are counted in.
 const SHARE: u64 = 1 << 10;
+/// A low share below 1/16 is plausible wherever more is.
+const SURELY: u64 = 16;
 /// Silences are cut here where they are multiplied, ns (18 minutes).
 const LONG_SILENCE: u64 = 1 << 40;
 
@@ -223,6 +227,7 @@ impl Tacho {
             low_share: None,
             widest: 0,
             patience: Duration::ZERO,
+            quiet_until: Instant::ZERO,
             config,
         };
         tacho.widest = (tacho.widest_share() * SHARE as f32) as u64;
@@ -262,9 +267,10 @@ impl Tacho {
             .latest
             .back()
             .map_or(LONG_SILENCE, |before| pulse.at.since(before.at).nanos());
-        // Share by share, without a division.
-        let plausible = pulse.width.nanos().min(LONG_SILENCE) * SHARE
-            <= interval.min(LONG_SILENCE) * self.widest;
+        // Share by share, without a division, and mostly without a product.
+        let (width, interval) = (pulse.width.nanos(), interval.min(LONG_SILENCE));
+        let surely = width <= interval / SURELY && self.widest >= SHARE / SURELY;
+        let plausible = surely || width * SHARE <= interval * self.widest;
         self.too_wide = if plausible {
             0
         } else {
@@ -275,12 +281,15 @@ impl Tacho {
         }
         // Room was just made.
         let _ = self.latest.push_back(pulse);
+        // It is looked at anew when an edge comes.
+        self.quiet_until = pulse.at;
         match self.state {
             State::Turning if self.too_wide < TOO_WIDE_IS_STILL => {
                 self.track.push(pulse, plausible, &mut self.gate.rejected);
                 if let Some(share) = self.track.take_low_share() {
                     self.learn(share);
                 }
+                self.quiet_until = self.track.last().unwrap_or(pulse.at) + self.patience;
             }
             State::Turning => {
                 self.gate.rejected.shaken += u32::from(TOO_WIDE_IS_STILL);
@@ -378,7 +387,7 @@ impl Tacho {
 
     /// Lets silence up to `now` change the state.
     fn settle(&mut self, now: Instant) {
-        if self.state != State::Turning || self.is_recent(now) {
+        if self.state != State::Turning || now < self.quiet_until {
             return;
         }
         if let Some(at) = self.lost_at(now) {
@@ -389,13 +398,6 @@ impl Tacho {
         } else if self.still_at(now).is_some_and(|at| now >= at) {
             self.stand_still();
         }
-    }
-
-    /// Whether the last pulse is so recent that silence cannot mean anything yet.
-    fn is_recent(&self, now: Instant) -> bool {
-        self.track
-            .last()
-            .is_some_and(|last| now.since(last) < self.patience)
     }
 
     /// The last pulses stay: where the slowest speed was only just missed, the next one goes on with them.

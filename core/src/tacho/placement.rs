@@ -128,6 +128,7 @@ impl Placement {
         }
         let Some(mut end) = marks.last() else { return };
         let (mut fits, mut widest) = (true, 0);
+        let margin = ((u64::from(FITS) * turn) >> 24) as u32;
         for back in 1..=self.pulses {
             let magnet = if back == 1 { 0 } else { self.pulses + 1 - back };
             let Some(begin) = marks.back(back) else {
@@ -138,7 +139,6 @@ impl Placement {
             widest = widest.max(interval);
             if self.known {
                 let expected = ((u64::from(self.gap(magnet)) * turn) >> 24) as u32;
-                let margin = ((u64::from(FITS) * turn) >> 24) as u32;
                 fits &= interval.abs_diff(expected) <= margin;
             }
             if let Some(sum) = self.sums.get_mut(magnet as usize) {

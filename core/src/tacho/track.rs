@@ -16,6 +16,8 @@ use crate::time::{Duration, Instant};
 
 /// Placement is learned only while two turns agree to 1/256.
 const LEARN_SHIFT: u32 = 8;
+/// And not more often than this, once it is known.
+const LEARN_EVERY: Duration = Duration::from_millis(100);
 /// A pulse earlier than this share of the expected spacing is suspected to be an extra one.
 const EARLY: f32 = 0.75;
 /// A pulse after a suspected one that keeps the rhythm so closely, in spacings, makes that one an extra one.
@@ -94,8 +96,10 @@ pub(super) struct Track {
     longer: i64,
     scatter: u64,
     scatters: u32,
-    /// A pulse of a steady spindle is not further from its time than this.
-    usually: Duration,
+    /// A pulse of a steady spindle is not further from its time than this, ns.
+    usually: u64,
+    /// When placement was learned from a turn.
+    learned_at: Instant,
     /// Pulses since one that was.
     since_odd: u32,
     /// A pulse that came too early to be believed yet.
@@ -134,7 +138,8 @@ impl Track {
             longer: 0,
             scatter: 0,
             scatters: 0,
-            usually: Duration::ZERO,
+            usually: 0,
+            learned_at: Instant::ZERO,
             since_odd: 0,
             suspect: None,
             late: 0,
@@ -327,7 +332,8 @@ impl Track {
         let interval = pulse.at.since(newest).nanos().min(LONGEST);
         let come = interval * u64::from(self.gap);
         let due = self.interval * u64::from(self.placement.gap(self.next_magnet()));
-        let in_time = 4 * come >= 3 * due && 2 * come < 3 * due;
+        let thrice = due + (due << 1);
+        let in_time = come << 2 >= thrice && come << 1 < thrice;
         if in_time && self.suspect.is_none() {
             self.late = 0;
             self.before = None;
@@ -550,35 +556,33 @@ impl Track {
         self.low = self.low.wrapping_add(self.width);
         self.unbroken = self.unbroken.saturating_add(1);
         self.since_missing = self.since_missing.saturating_add(1);
+        let mut at = pulse.at;
         if let Some(turn_ago) = self.marks.back(self.pulses) {
-            self.calm.check(pulse.at.since(turn_ago).nanos(), turn_ago);
+            let off = self.calm.check(at.since(turn_ago).nanos(), turn_ago);
+            if self.is_noise(off) {
+                rejected.noise = rejected.noise.saturating_add(1);
+                at = turn_ago + Duration::from_nanos(self.calm.period().unwrap_or(0));
+            }
         }
-        let at = self.usual_time(pulse.at, rejected);
         self.calm.pulse(at);
         self.turned(pulse.at);
     }
 
-    /// When a steady spindle's newest pulse should have come, if it alone is far off: noise has moved it. A spindle that
-    /// changes its speed moves the next pulse as well.
-    fn usual_time(&mut self, at: Instant, rejected: &mut Rejected) -> Instant {
+    /// Whether a steady spindle's newest pulse, so far off its time, was moved by noise: it alone is. A spindle that changes
+    /// its speed moves the next pulse as well.
+    fn is_noise(&mut self, off: u64) -> bool {
         let since_odd = self.since_odd;
         self.since_odd = since_odd.saturating_add(1);
-        // Neither the next pulse is cut nor the one that would be measured against this one.
-        if since_odd == 0 || since_odd == self.pulses - 1 || !self.calm.is_steady() {
-            return at;
+        if off <= self.usually || self.scatter == 0 {
+            return false;
         }
-        let (Some(turn_ago), Some(period)) = (self.marks.back(self.pulses), self.calm.period())
-        else {
-            return at;
-        };
-        let expected = turn_ago + Duration::from_nanos(period);
-        let off = at.since(expected).max(expected.since(at));
-        if self.scatter == 0 || off <= self.usually {
-            return at;
+        // Neither the next pulse is cut nor the one that is measured against this one.
+        let after_one = since_odd == 0 || since_odd == self.pulses - 1;
+        let noise = !after_one && self.calm.is_steady();
+        if noise {
+            self.since_odd = 0;
         }
-        self.since_odd = 0;
-        rejected.noise = rejected.noise.saturating_add(1);
-        expected
+        noise
     }
 
     /// Passes magnets whose pulses are missing before the one at `at`; their times are filled in evenly by angle.
@@ -637,8 +641,12 @@ impl Track {
             n => (self.scatter * u64::from(n - 2) + change) / u64::from(n - 1),
         };
         // Mean sizes are 3.6 standard deviations of a pulse: eight of them, and a microsecond.
-        self.usually = Duration::from_nanos(9 * self.scatter / 4) + Duration::from_micros(1);
-        self.placement.learn(&self.marks, turn);
+        self.usually = 9 * self.scatter / 4 + 1000;
+        // Known, it changes slowly if at all, and a turn takes a while to learn from.
+        if !self.placement.known() || at.since(self.learned_at) >= LEARN_EVERY {
+            self.learned_at = at;
+            self.placement.learn(&self.marks, turn);
+        }
         self.low_share = Some(low as f32 / turn as f32);
     }
 }
