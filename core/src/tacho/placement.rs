@@ -27,6 +27,8 @@ pub(super) struct Placement {
     shift: u32,
     turns: u32,
     known: bool,
+    /// How far the worst magnet is off, degrees.
+    error: f32,
     /// The last turn did not fit.
     misfit: bool,
     /// Largest gap ever learned: it stays, though after a standstill nobody knows which magnet it precedes.
@@ -42,6 +44,7 @@ impl Placement {
             shift: 0,
             turns: 0,
             known: false,
+            error: 0.0,
             misfit: false,
             largest: 0,
         };
@@ -82,21 +85,24 @@ impl Placement {
     }
 
     /// How far the worst magnet sits from its even place, degrees; `None` until learned.
-    ///
-    /// Places are measured from their own mean, so that no magnet has to be the right one.
     pub(super) fn error(&self) -> Option<f32> {
-        if !self.known {
-            return None;
-        }
-        let (mut off, mut sum, mut low, mut high) = (0.0_f32, 0.0_f32, f32::MAX, f32::MIN);
+        self.known.then_some(self.error)
+    }
+
+    /// The same from the gaps. Places are measured from their own mean, so that no magnet has to be the right one.
+    fn worst(&self) -> f32 {
+        let even = i64::from(REV);
+        let (mut off, mut sum, mut low, mut high) = (0_i64, 0_i64, i64::MAX, i64::MIN);
         for magnet in 0..self.pulses {
-            off += rev(self.gap(magnet)) - 1.0 / self.pulses as f32;
+            // In 1/(REV pulses), so that an even gap is a whole number.
+            off += i64::from(self.gap(magnet)) * i64::from(self.pulses) - even;
             sum += off;
             low = low.min(off);
             high = high.max(off);
         }
-        let mean = sum / self.pulses as f32;
-        Some(360.0 * (high - mean).max(mean - low))
+        let mean = sum / i64::from(self.pulses);
+        let worst = (high - mean).max(mean - low) as f32;
+        360.0 * worst / (REV as f32 * self.pulses as f32)
     }
 
     /// Guesses the largest gap from the first turn, that is the newest one of `marks`; up to `most` of an even one.
@@ -176,6 +182,7 @@ impl Placement {
             *gap = ((sum as f32 * scale + 0.5) as u32).max(1);
         }
         self.largest = self.gaps.iter().take(used).copied().max().unwrap_or(0);
+        self.error = self.worst();
         self.known = true;
     }
 
