@@ -429,3 +429,73 @@ fn the_claimed_uncertainty_is_the_error_made() {
     // From a few blocks of turns the scatter itself is known to some ten per cent.
     assert!(low > 0.8 && high < 1.25, "{low} to {high}");
 }
+
+#[test]
+fn ripple_changes_the_digits_twice_a_second_at_most_and_by_one() {
+    for pulses in [1, 2, 6, 60] {
+        for speed in [40.5, 180.5, 640.5, 640.1, 1200.5, 2799.5] {
+            let capture = Capture::new(pulses)
+                .rippled(0.003)
+                .then(Piece::steady(speed, 60.0));
+            let settled = f64::max(3.0, 6.0 * 60.0 / speed);
+            let (mut before, mut changes) = (None, 0);
+            let mut last = f64::MIN;
+            capture.watch(Duration::from_millis(20), 0.0, &mut |row| {
+                let shown = row.reading.held.map(|n| n.get());
+                if row.at > settled {
+                    let shown = shown.expect("a turning spindle has digits");
+                    assert!(
+                        (f64::from(shown) - speed).abs() < 1.5,
+                        "{pulses} pulses, {speed} rpm: {shown}"
+                    );
+                    if before != Some(shown) {
+                        assert!((before.unwrap_or(shown) - shown).abs() <= 1.0);
+                        assert!(
+                            row.at - last > 0.49,
+                            "{pulses} pulses, {speed} rpm at {} s",
+                            row.at
+                        );
+                        (last, changes) = (row.at, changes + 1);
+                    }
+                    before = Some(shown);
+                } else {
+                    (before, last) = (shown, row.at - 1.0);
+                }
+            });
+            println!("{pulses} pulses, {speed} rpm: {changes} changes a minute");
+        }
+    }
+}
+
+#[test]
+fn one_missing_pulse_moves_neither_digits_nor_verdict() {
+    let advice = advise(&bar(25.0), &machine("geared-lathe"));
+    for pulses in [1, 2, 6] {
+        let mut capture = Capture::new(pulses);
+        capture.sensor.dropout = 1.0;
+        let speed = 270.0;
+        // Long enough for one passage.
+        let spacing = 60.0 / speed / f64::from(pulses);
+        let capture = capture
+            .then(Piece::steady(speed, 5.0))
+            .with(
+                Piece::steady(speed, 0.95 * spacing),
+                &[(Fault::Dropouts, true)],
+            )
+            .with(Piece::steady(speed, 5.0), &[(Fault::Dropouts, false)]);
+        let mut judge = Judge::default();
+        capture.watch(ROW, 0.0, &mut |row| {
+            let verdict = judge.verdict(row.now, &row.reading, &advice, true);
+            if row.at > 3.0 {
+                let shown = row.reading.held.map(|n| n.get());
+                assert_eq!(
+                    (shown, verdict),
+                    (Some(270.0), Verdict::Right),
+                    "{pulses} pulses at {} s: {:?}",
+                    row.at,
+                    row.reading
+                );
+            }
+        });
+    }
+}

@@ -68,7 +68,10 @@ pub fn draw<D: DrawTarget<Color = BinaryColor>>(
 pub fn digits(reading: &Reading) -> Option<u32> {
     match reading.signal {
         // Rounded; an Rpm is finite and not negative.
-        Signal::Turning if !reading.overdue => reading.speed.map(|n| libm::roundf(n.get()) as u32),
+        Signal::Turning if !reading.overdue => reading
+            .held
+            .or(reading.speed)
+            .map(|n| libm::roundf(n.get()) as u32),
         Signal::Turning | Signal::Still | Signal::Lost | Signal::Doubtful => None,
     }
 }

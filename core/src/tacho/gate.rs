@@ -10,8 +10,11 @@ use heapless::Vec;
 
 use crate::time::{Duration, Edge, EdgeKind, Instant};
 
-/// A gap below this share of the passage joins. A toothed wheel may be low for up to nine tenths of its pitch.
-const JOIN_SHARE: u32 = 10;
+/// A gap below this joins: a tenth of the passage. A toothed wheel may be low for up to nine tenths of its pitch.
+fn joining(passage: u32) -> u32 {
+    // 3/32, which needs no division.
+    (passage >> 4) + (passage >> 5)
+}
 /// Where passages and gaps are known, a gap below this share of the shorter one joins.
 const KNOWN_JOIN_SHARE: u32 = 4;
 /// All gaps before a passage is proven are together below this share of what passages have been.
@@ -139,7 +142,7 @@ impl Gate {
     pub(super) fn under_way(&self, now: Instant) -> Option<Instant> {
         let begun = self.passage.filter(|p| {
             let pause = self.low_since.unwrap_or(now).since(p.last_rise);
-            !p.reported && short(pause) < self.usual / JOIN_SHARE
+            !p.reported && short(pause) < joining(self.usual)
         });
         begun.map(|p| p.first).or(self.low_since)
     }
@@ -244,7 +247,7 @@ impl Gate {
         let low = passing(piece).max(passing(p.low));
         let gaps = short(fell.since(p.first)).saturating_sub(p.low);
         (gaps < low || gaps < begun / GAPS_SHARE)
-            && (gap < passing(piece).max(passing(width)).max(begun) / JOIN_SHARE
+            && (gap < joining(passing(piece).max(passing(width)).max(begun))
                 || gap < self.usual.min(self.usual_gap) / KNOWN_JOIN_SHARE)
     }
 

@@ -6,6 +6,7 @@
 
 mod calm;
 mod gate;
+mod hold;
 mod marks;
 mod placement;
 mod signal;
@@ -22,6 +23,7 @@ pub use gate::Rejected;
 pub use signal::Signal;
 
 use gate::{Gate, HIGHEST_RATE, Pulse};
+use hold::Hold;
 use track::{Span, Track};
 
 /// A speed is doubted only after it has been steady for this long.
@@ -55,6 +57,9 @@ pub struct Reading {
     pub uncertainty: f32,
     /// Silence alone lowers the calm speed: the next pulse, or one that is missing, decides.
     pub bounded: bool,
+    /// The calm speed as digits show it, a whole number of rev/min: ripple moves it twice a second at most and by one, a
+    /// missing pulse not at all.
+    pub held: Option<Rpm>,
 }
 
 /// Tolerance of the clock that stamps the edges: a common crystal's 50 parts in a million (catalogue tolerances are 20, 50 and
@@ -70,6 +75,7 @@ impl Reading {
         overdue: false,
         uncertainty: 0.0,
         bounded: false,
+        held: None,
     };
 
     /// Whether the spindle may be turning.
@@ -116,6 +122,7 @@ pub struct Tacho {
     patience: Duration,
     /// Until then it means nothing.
     quiet_until: Instant,
+    hold: Hold,
 }
 
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -228,6 +235,7 @@ impl Tacho {
             widest: 0,
             patience: Duration::ZERO,
             quiet_until: Instant::ZERO,
+            hold: Hold::default(),
             config,
         };
         tacho.widest = (tacho.widest_share() * SHARE as f32) as u64;
@@ -315,7 +323,7 @@ impl Tacho {
     /// What is known at `now`; `explains` says whether the machine can turn at a speed at all.
     pub fn reading(&mut self, now: Instant, explains: impl Fn(Rpm) -> bool) -> Reading {
         self.settle(now);
-        match self.state {
+        let mut reading = match self.state {
             State::Still => Reading::NOTHING,
             State::Lost(_) => Reading {
                 signal: Signal::Lost,
@@ -324,9 +332,14 @@ impl Tacho {
                 overdue: true,
                 uncertainty: 0.0,
                 bounded: false,
+                held: None,
             },
             State::Turning => self.turning(now, explains),
-        }
+        };
+        let turning = reading.signal == Signal::Turning && !reading.overdue;
+        let speed = reading.speed.filter(|_| turning);
+        reading.held = self.hold.show(now, speed, reading.bounded);
+        reading
     }
 
     fn turning(&self, now: Instant, explains: impl Fn(Rpm) -> bool) -> Reading {
@@ -364,6 +377,7 @@ impl Tacho {
             // (JCGM 100:2008, 4.3.7).
             uncertainty: libm::sqrtf(scatter * scatter + CLOCK * CLOCK / 3.0),
             bounded,
+            held: None,
         }
     }
 

@@ -69,10 +69,8 @@ impl Placement {
 
     /// The gap that ends at a magnet, in 1/[`REV`].
     pub(super) fn gap(&self, magnet: u32) -> u32 {
-        self.gaps
-            .get(magnet as usize)
-            .copied()
-            .unwrap_or(REV / self.pulses)
+        // There is one for every magnet.
+        self.gaps.get(magnet as usize).copied().unwrap_or(REV)
     }
 
     /// The largest gap in revolutions, or an even one times `unknown` until one was learned.
