@@ -392,7 +392,9 @@ impl Rig for Emulator {
     }
 
     fn power_cycle(&mut self) {
-        unimplemented!("the firmware does not remember a setup yet")
+        panic!(
+            "a scenario that switches the box off runs on the desk only: the firmware keeps no setup yet"
+        )
     }
     fn frame(&self) -> &Frame {
         &self.frame
