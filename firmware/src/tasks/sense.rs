@@ -148,16 +148,16 @@ struct Wiring {
     last_fall: Option<u32>,
     last_rise: Option<u32>,
     last_period: Option<u32>,
-    /// Periods in a row that are mostly low, and how many of those were regular.
-    wide: u8,
+    /// Periods in a row that are mostly low and regular.
     regular: u8,
 }
 
 impl Wiring {
     /// As in core's tacho: from here on it is a toothed wheel.
     const MANY_PULSES: u16 = 8;
-    /// One wide low may be a magnet that was parked at the sensor.
-    const MAY_BE_PARKED: u8 = 1;
+    /// From this many on nothing is handed on. A magnet that was parked at the sensor makes one wide low, and a passage that
+    /// chatters comes in pieces that are wide against their gaps, but not so many alike.
+    const LIKELY: u8 = 8;
     /// A magnet that is parked at its switching point and shakes is not this regular for this long
     /// (common practice, no source).
     const SURE: u8 = 16;
@@ -169,7 +169,6 @@ impl Wiring {
             last_fall: None,
             last_rise: None,
             last_period: None,
-            wide: 0,
             regular: 0,
         }
     }
@@ -191,7 +190,7 @@ impl Wiring {
         let fall = fall != self.inverted;
         if !fall {
             self.last_rise = Some(tick);
-            return (self.wide <= Self::MAY_BE_PARKED).then_some(false);
+            return (self.regular < Self::LIKELY).then_some(false);
         }
         if let (Some(fell), Some(rose)) = (self.last_fall, self.last_rise) {
             let period = tick.wrapping_sub(fell) & MASK;
@@ -201,13 +200,8 @@ impl Wiring {
                 .last_period
                 .is_some_and(|last| period / 14 < last / 10 && last / 14 < period / 10);
             self.last_period = Some(period);
-            if low > period / 4 * 3 {
-                self.wide = self.wide.saturating_add(1);
-                self.regular = if regular { self.regular + 1 } else { 0 };
-            } else {
-                self.wide = 0;
-                self.regular = 0;
-            }
+            let wide = low > period / 4 * 3;
+            self.regular = if wide && regular { self.regular + 1 } else { 0 };
         }
         self.last_fall = Some(tick);
         if self.regular >= Self::SURE {
@@ -216,6 +210,6 @@ impl Wiring {
             self.forget();
             return None;
         }
-        (self.wide <= Self::MAY_BE_PARKED).then_some(true)
+        (self.regular < Self::LIKELY).then_some(true)
     }
 }
