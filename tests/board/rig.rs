@@ -92,6 +92,10 @@ pub(crate) struct Emulator {
     pub(crate) calls: Vec<(String, u64, u64)>,
     /// Bytes sent to the display so far.
     pub(crate) display_bytes: u64,
+    /// How often the watchdog was fed since power-up, each time because every task had checked in.
+    pub(crate) feeds: u64,
+    /// The longest time between two feeds, ns.
+    pub(crate) longest_unfed: u64,
     outputs: Outputs,
     frame: Frame,
     verdict: Verdict,
@@ -134,6 +138,8 @@ impl Emulator {
             resets: Vec::new(),
             calls: Vec::new(),
             display_bytes: 0,
+            feeds: 0,
+            longest_unfed: 0,
             outputs: Outputs::default(),
             frame: Frame::new(),
             verdict: Verdict::Unconfirmed,
@@ -250,8 +256,12 @@ impl Emulator {
             ));
         }
         self.display_bytes = number(&answer["displayBytes"]);
-        let picture = self.ask(&json!({ "do": "picture" }));
-        let bytes = BASE64.decode(word(&picture["picture"])).expect("is base64");
+        self.feeds = number(&answer["feeds"]);
+        self.longest_unfed = number(&answer["longestUnfed"]);
+        let Some(picture) = answer["picture"].as_str() else {
+            return;
+        };
+        let bytes = BASE64.decode(picture).expect("is base64");
         for (i, byte) in bytes.iter().enumerate() {
             let (page, x) = (i as u32 / 128, i as u32 % 128);
             for bit in 0..8 {

@@ -10,6 +10,10 @@ use crate::rig::{Emulator, Start};
 /// The chip has started and the display shows something after this time, ms.
 pub(crate) const STARTED_MS: u64 = 150;
 
+/// The longest time between two feeds of the watchdog, ns: tasks check in every 250 ms at the latest, and the watchdog's
+/// task looks every 100 ms.
+pub(crate) const UNFED: u64 = 400_000_000;
+
 /// A lathe whose drive reaches from 20 to 6000 rev/min, with some pulses in a revolution.
 pub(crate) fn wide_machine(pulses: u32) -> MachineSpec {
     toml::from_str(&format!(

@@ -39,6 +39,8 @@ export class Board {
     this.events = [];
     this.text = [];
     this.awakeBefore = 0;
+    this.feeds = 0;
+    this.longestUnfed = 0;
     /** How many times it was reset: the log's decoder starts anew each time. */
     this.boot = 0;
     this.#start({ nanos: timerUs * 1000, epoch: -timerUs * 1000 });
@@ -66,9 +68,18 @@ export class Board {
       mcu.sram.set(kept.sram);
     }
     this.reset = null;
-    const watchdog = measures.watchdog(mcu, (w) => {
-      this.reset = w;
-    });
+    let fedAt = Infinity;
+    const watchdog = measures.watchdog(
+      mcu,
+      (w) => {
+        this.reset = w;
+      },
+      () => {
+        this.feeds++;
+        this.longestUnfed = Math.max(this.longestUnfed, this.now - fedAt);
+        fedAt = this.now;
+      },
+    );
     if (kept) {
       watchdog.reason = kept.reason;
       watchdog.scratchData.set(kept.scratch);
@@ -231,7 +242,10 @@ export class Board {
       events: this.events,
       resets: this.resets,
       calls: this.calls,
+      feeds: this.feeds,
+      longestUnfed: this.longestUnfed,
       displayBytes: this.display.bytes,
+      picture: this.display.changed ? Buffer.from(this.display.picture()).toString('base64') : undefined,
       problems: this.problems.splice(0).concat(this.display.problems.splice(0)),
     };
   }

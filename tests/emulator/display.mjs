@@ -36,6 +36,7 @@ export class Display {
     this.page = 0;
     this.column = 0;
     this.command = [];
+    this.changed = true;
     this.start();
   }
 
@@ -46,6 +47,7 @@ export class Display {
     }
     this.startLine = 13;
     this.inverse = true;
+    this.changed = true;
   }
 
   #random() {
@@ -64,6 +66,7 @@ export class Display {
   /** One byte after the address. */
   byte(value) {
     this.bytes++;
+    this.changed = true;
     if (this.control) {
       this.only = !(value & 0x80);
       this.data = !!(value & 0x40);
@@ -119,6 +122,7 @@ export class Display {
 
   /** What a person sees with the connector on top: 8 pages of 128 bytes, the lowest bit on top. */
   picture() {
+    this.changed = false;
     const picture = new Uint8Array(PAGES * 128);
     if (!this.on || !this.pump) {
       return picture;

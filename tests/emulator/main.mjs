@@ -3,8 +3,9 @@
 //   {"do":"start","flash":base64,"pins":{...},"log":ADDRESS,"display":"ssd1306","timerUs":0,"firstCount":0}
 //   {"do":"run","ns":N,"stimuli":[[dt, pin or "display", level or fault],...]}
 //       -> {"t","awake","log":[[t,boot,base64]],"events":[[t,what,value]],"resets":[[t,reason]],"calls":[[name,cycles,t]],
-//           "displayBytes","problems":[text]}
-//   {"do":"picture"}                      -> {"picture": base64, 8 pages of 128 bytes}
+//           "feeds","longestUnfed","displayBytes","picture","problems":[text]}
+//          `picture` is base64 of 8 pages of 128 bytes, there when the display was written to since it was told last;
+//          `feeds` and `longestUnfed` (ns) are the watchdog's, since power-up
 //   {"do":"watch","functions":{NAME:ADDRESS}}
 //   {"do":"peek","address":A,"length":N}  -> {"bytes": base64}
 //   {"do":"poke","address":A,"bytes":base64}
@@ -27,8 +28,6 @@ function answer(request) {
   switch (request.do) {
     case 'run':
       return board.run(request.ns, request.stimuli);
-    case 'picture':
-      return { picture: Buffer.from(board.display.picture()).toString('base64') };
     case 'watch':
       board.watched = new Map(Object.entries(request.functions).map(([name, at]) => [at & ~1, name]));
       board.stack = [];

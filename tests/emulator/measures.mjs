@@ -4,6 +4,7 @@
 
 const TIMER = 0x40054;
 const WATCHDOG = 0x40058;
+const WATCHDOG_LOAD = 0x04;
 const XIP_CTRL = 0x14000;
 const HARD_FAULT = 3;
 const INPUT_PULL_UP = 3;
@@ -82,9 +83,16 @@ export function pulls(mcu, driven) {
   }
 }
 
-/** The watchdog starts again at once, and nothing resets: `reset` is told the reason. */
-export function watchdog(mcu, reset) {
+/** The watchdog starts again at once, and nothing resets: `reset` is told the reason; `fed` of every feed. */
+export function watchdog(mcu, reset, fed) {
   const watchdog = mcu.peripherals[WATCHDOG];
+  const write = watchdog.writeUint32.bind(watchdog);
+  watchdog.writeUint32 = (offset, value) => {
+    write(offset, value);
+    if (offset === WATCHDOG_LOAD) {
+      fed();
+    }
+  };
   watchdog.onWatchdogTrigger = () => {
     watchdog.timer.enable = false;
     watchdog.alarm.enable = false;
