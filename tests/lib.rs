@@ -35,6 +35,7 @@ pub fn bar(mm: f32) -> Setup {
         holder: 0,
         cap: None,
         cap_is_old: false,
+        pulses: None,
         details: Details::NONE,
     }
 }

@@ -1,8 +1,12 @@
 //! The two push-knobs: turns, presses, holds, and what the screen says about them. Times are those of the panel's manual.
 
+#[path = "panel/counting.rs"]
+mod counting;
+
 use rimrate_core::advice::{Pick, advise};
 use rimrate_core::machine::{Drive, Machine};
 use rimrate_core::panel::{Bench, Field, HOLD, Knob, NOTICE, Page, Panel, Wish};
+use rimrate_core::sensor_setup::SensorSetup;
 use rimrate_core::setup::{Diameter, Life, Setup};
 use rimrate_core::time::{Duration, Instant};
 use rimrate_core::trade::{Coolant, Material, Operation, Tool};
@@ -17,6 +21,7 @@ struct Hand {
     setup: Setup,
     machine: Machine,
     running: bool,
+    sensor: SensorSetup,
     now: Instant,
 }
 
@@ -27,6 +32,7 @@ impl Hand {
             setup,
             machine,
             running: false,
+            sensor: SensorSetup::default(),
             now: at(100.0),
         };
         hand.click(Knob::Left);
@@ -42,6 +48,7 @@ impl Hand {
             machine: &self.machine,
             advice: &advice,
             running: self.running,
+            sensor: &mut self.sensor,
         };
         act(&mut self.panel, self.now, bench)
     }
@@ -438,6 +445,7 @@ fn nothing_but_a_press_confirms_a_remembered_setup_and_the_first_does_nothing_el
             },
             machine: machine("geared-lathe"),
             running: false,
+            sensor: SensorSetup::default(),
             now: at(1.0),
         };
         let mut hand = fresh();
@@ -579,10 +587,6 @@ fn the_sensor_page_lies_behind_the_why_page() {
     let mut hand = lathe();
     hand.click(Knob::Right);
     hand.click(Knob::Left);
-    assert_eq!(hand.panel.page(), Page::Sensor);
-    // Nothing is turned there.
-    hand.turn(Knob::Left, 3);
-    hand.turn(Knob::Right, -3);
     assert_eq!((hand.panel.page(), hand.setup), (Page::Sensor, bar(25.0)));
     for knob in [Knob::Left, Knob::Right] {
         hand.click(knob);

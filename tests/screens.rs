@@ -1,6 +1,9 @@
 //! The pages as a person sees them. Golden pictures are text, two rows of pixels in a row of half blocks, so that a
 //! change can be read in a diff; after a wanted change accept them with `INSTA_UPDATE=always`.
 
+#[path = "screens/counting.rs"]
+mod counting;
+
 use std::convert::Infallible;
 
 use embedded_graphics::pixelcolor::BinaryColor;
@@ -12,8 +15,9 @@ use rimrate_core::machine::{
 };
 use rimrate_core::panel::{Bench, Field, Knob, Notice, Page, Panel};
 use rimrate_core::screen::{self, HEIGHT, View, WIDTH};
+use rimrate_core::sensor_setup::SensorSetup;
 use rimrate_core::setup::{self, Details, Diameter, Life, Setup, Support};
-use rimrate_core::tacho::{Health, Reading, Rejected, Signal};
+use rimrate_core::tacho::{Health, Reading, Signal};
 use rimrate_core::time::Duration;
 use rimrate_core::trade::{Material, Operation, Tool, cutting_speed};
 use rimrate_core::units::{Length, UnitSystem};
@@ -32,24 +36,7 @@ struct Scene {
     notice: Option<Notice>,
     edge: EdgeAccount,
     sensor: Health,
-}
-
-/// A sensor that works, with so many pulses in a revolution, and something of every kind rejected.
-fn health(pulses: u16) -> Health {
-    Health {
-        pulses: pulses.try_into().unwrap(),
-        counted: 123_456,
-        rejected: Rejected {
-            joined: 3,
-            slivers: 1234,
-            missing: 56_789,
-            noise: 999,
-            ..Rejected::default()
-        },
-        placement: Some(1.02),
-        jitter: Some(3.1e-6),
-        highest: rpm(1.2e6 / f32::from(pulses)),
-    }
+    sensor_setup: SensorSetup,
 }
 
 impl Scene {
@@ -63,7 +50,8 @@ impl Scene {
             page: Page::Run,
             notice: None,
             edge: EdgeAccount::default(),
-            sensor: health(2),
+            sensor: counting::health(2),
+            sensor_setup: SensorSetup::default(),
         }
     }
 
@@ -89,6 +77,12 @@ impl Scene {
         }
     }
 
+    /// A speed that is read, whatever may be said of it.
+    fn reads(mut self, n: f32) -> Self {
+        self.reading.speed = Some(rpm(n));
+        self
+    }
+
     /// The right knob, or the left one, turned while the spindle runs.
     fn turned(mut self, knob: Knob, detents: i8) -> Self {
         let mut panel = Panel::new(true);
@@ -98,6 +92,7 @@ impl Scene {
             machine: &self.machine,
             advice: &advice,
             running: true,
+            sensor: &mut self.sensor_setup,
         };
         panel.turn(at(1.0), knob, detents, bench);
         self.notice = panel.notice().cloned();
@@ -121,6 +116,7 @@ impl Scene {
             notice: self.notice.as_ref(),
             edge: self.edge,
             sensor: self.sensor,
+            sensor_setup: &self.sensor_setup,
         };
         screen::draw(&view, target)
     }
@@ -276,7 +272,7 @@ fn scenes() -> Vec<(&'static str, Scene)> {
         edge: worn,
         ..lathe()
     };
-    vec![
+    let mut all = vec![
         ("why-cutting-speed", why(0, bar(25.0))),
         ("why-thread", why(0, thread)),
         ("why-power", why(0, heavy)),
@@ -315,33 +311,6 @@ fn scenes() -> Vec<(&'static str, Scene)> {
             "run-notice-in-two-lines",
             lathe().at(279.0, Verdict::Fast).turned(Knob::Left, 5),
         ),
-        (
-            "sensor-two-magnets",
-            Scene {
-                page: Page::Sensor,
-                ..lathe()
-            },
-        ),
-        (
-            "sensor-toothed-wheel",
-            Scene {
-                page: Page::Sensor,
-                sensor: health(60),
-                ..lathe()
-            },
-        ),
-        (
-            "sensor-not-learned-yet",
-            Scene {
-                page: Page::Sensor,
-                sensor: Health {
-                    placement: None,
-                    jitter: None,
-                    ..health(240)
-                },
-                ..lathe()
-            },
-        ),
         ("choose-job", choose(Field::Operation, bar(25.0))),
         (
             "choose-holder",
@@ -363,7 +332,9 @@ fn scenes() -> Vec<(&'static str, Scene)> {
                 },
             ),
         ),
-    ]
+    ];
+    all.extend(counting::scenes());
+    all
 }
 
 #[test]

@@ -117,6 +117,7 @@ fn any_setup() -> impl Strategy<Value = Setup> {
                 holder,
                 cap: cap.map(rpm),
                 cap_is_old: false,
+                pulses: None,
                 details,
             },
         )

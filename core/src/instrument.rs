@@ -10,9 +10,11 @@ use crate::machine::Machine;
 use crate::panel::{Bench, Knob, Page, Panel, Wish};
 use crate::physics::cutting_speed::surface_speed_m_min;
 use crate::screen::{self, View};
+use crate::sensor_setup::{Fit, Offer, SensorSetup};
 use crate::setup::Setup;
 use crate::tacho::{Config, Reading, Rejected, Signal, Tacho};
 use crate::time::{Duration, Edge, Instant};
+use crate::units::Rpm;
 use crate::verdict::{Judge, Verdict};
 
 /// The picture is drawn anew at most this often; the fastest that a number can be read anyway.
@@ -60,6 +62,7 @@ pub struct Instrument {
     advice: Advice,
     tacho: Tacho,
     panel: Panel,
+    sensor_setup: SensorSetup,
     judge: Judge,
     reading: Reading,
     edge: EdgeAccount,
@@ -83,8 +86,21 @@ struct Shown {
     setup: Setup,
     /// Percent of the edge's life that the Why page shows.
     edge: Option<u32>,
-    /// Pulses counted, as the Sensor page shows.
+    /// What runs on a page about the sensor: pulses counted, or their rate in hundredths of one a second.
     counted: Option<u32>,
+    /// Where the count of pulses in a revolution stands.
+    offer: Option<Offer>,
+    plate: Option<Rpm>,
+    fit: Option<Fit>,
+}
+
+/// The tacho for a setup on a machine.
+fn config(setup: &Setup, machine: &Machine) -> Config {
+    Config {
+        pulses: setup.pulses_on(machine).get(),
+        brake_rpm_per_s: machine.brake_rpm_per_s(),
+        slowest: machine.slowest(),
+    }
 }
 
 impl Instrument {
@@ -96,11 +112,7 @@ impl Instrument {
         if usize::from(setup.holder) >= machine.holders().len() {
             setup.holder = 0;
         }
-        let tacho = Tacho::new(Config {
-            pulses: machine.pulses(),
-            brake_rpm_per_s: machine.brake_rpm_per_s(),
-            slowest: machine.slowest(),
-        });
+        let tacho = Tacho::new(config(&setup, &machine));
         let advice = advise(&setup, &machine);
         Instrument {
             reading: Reading::NOTHING,
@@ -109,6 +121,7 @@ impl Instrument {
             verdict: Verdict::Unconfirmed,
             verdict_since: now,
             panel: Panel::new(false),
+            sensor_setup: SensorSetup::default(),
             judge: Judge::default(),
             muted: false,
             drawn: None,
@@ -125,10 +138,12 @@ impl Instrument {
         let before = self.setup;
         let wish = match event {
             Event::Edges(edges) => {
+                self.sensor_setup.edges(edges);
                 edges.iter().for_each(|&edge| self.tacho.push(edge));
                 return;
             }
             Event::CaptureLost => {
+                self.sensor_setup.edges_lost();
                 self.tacho.capture_lost();
                 return;
             }
@@ -157,6 +172,9 @@ impl Instrument {
         let wish = panel.settle(now, bench);
         self.after_panel(now, before, wish);
 
+        if matches!(self.panel.page(), Page::TenTurns | Page::PlateSpeed) {
+            self.sensor_setup.look(now, self.tacho.last_pulse());
+        }
         let machine = &self.machine;
         self.reading = self.tacho.reading(now, |n| machine.explains(n));
         self.count_edge(now);
@@ -173,14 +191,32 @@ impl Instrument {
         if self.muted && self.verdict != Verdict::Danger {
             outputs.buzzer_hz = None;
         }
+        let page = self.panel.page();
+        let used = self.setup.pulses_on(&self.machine);
         let shown = Shown {
             digits: screen::digits(&self.reading),
             verdict: self.verdict,
-            page: self.panel.page(),
+            page,
             notice: self.panel.notice().is_some(),
             setup: self.setup,
-            edge: matches!(self.panel.page(), Page::Why(_)).then(|| self.edge.percent()),
-            counted: (self.panel.page() == Page::Sensor).then(|| self.tacho.health().counted),
+            edge: matches!(page, Page::Why(_)).then(|| self.edge.percent()),
+            counted: match page {
+                Page::Sensor => Some(self.tacho.health().counted),
+                Page::TenTurns => Some(self.sensor_setup.passages()),
+                // A cast saturates.
+                Page::PlateSpeed => match self.sensor_setup.rate() {
+                    Some(rate) => Some((rate * 100.0) as u32),
+                    None => Some(self.sensor_setup.seen()),
+                },
+                _ => None,
+            },
+            offer: match page {
+                Page::TenTurns => Some(self.sensor_setup.hand_offer(used)),
+                Page::PlateSpeed => Some(self.sensor_setup.plate_offer(used)),
+                _ => None,
+            },
+            plate: self.sensor_setup.plate(),
+            fit: self.sensor_setup.fit(),
         };
         let redraw = match self.drawn {
             None => true,
@@ -189,6 +225,7 @@ impl Instrument {
                 let only_digits = Shown {
                     digits: shown.digits,
                     counted: shown.counted,
+                    fit: shown.fit,
                     ..was
                 } == shown;
                 was != shown && (!only_digits || now.since(at) >= REDRAW)
@@ -207,6 +244,8 @@ impl Instrument {
         let look = now
             + if self.reading.is_running() {
                 LOOK
+            } else if matches!(page, Page::TenTurns | Page::PlateSpeed) {
+                REDRAW
             } else {
                 LOOK_AT_REST
             };
@@ -240,6 +279,7 @@ impl Instrument {
             notice: self.panel.notice(),
             sensor: self.tacho.health(),
             edge: self.edge,
+            sensor_setup: &self.sensor_setup,
         }
     }
 
@@ -264,6 +304,7 @@ impl Instrument {
             machine: &self.machine,
             advice: &self.advice,
             running: self.reading.is_running(),
+            sensor: &mut self.sensor_setup,
         };
         (&mut self.panel, bench)
     }
@@ -272,6 +313,9 @@ impl Instrument {
         if self.setup != before {
             self.advice = advise(&self.setup, &self.machine);
             self.unsaved_since = Some(now);
+        }
+        if self.setup.pulses != before.pulses {
+            self.tacho.configure(config(&self.setup, &self.machine));
         }
         match wish {
             Some(Wish::Mute) => self.muted = true,

@@ -40,6 +40,7 @@ pub mod machine;
 pub mod panel;
 pub mod physics;
 pub mod screen;
+pub mod sensor_setup;
 pub mod setup;
 pub mod tacho;
 pub mod time;

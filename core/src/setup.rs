@@ -2,7 +2,10 @@
 
 mod details;
 
+use core::num::NonZeroU16;
+
 use crate::error::Rejected;
+use crate::machine::{self, Machine};
 use crate::trade::{Coolant, Material, Operation, Tool};
 use crate::units::{Length, Rpm, UnitError};
 
@@ -67,6 +70,31 @@ impl Diameter {
     }
 }
 
+/// Pulses of the sensor in one revolution of the spindle: 1 to [`machine::MAX_PULSES`].
+#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
+pub struct Pulses(NonZeroU16);
+
+impl Pulses {
+    /// Checks a number.
+    ///
+    /// # Errors
+    /// Names `pulses`, the value and the range.
+    pub fn new(n: u16) -> Result<Self, Rejected> {
+        machine::pulses(n).map(Pulses)
+    }
+    /// The number.
+    pub const fn get(self) -> NonZeroU16 {
+        self.0
+    }
+}
+
+impl core::fmt::Display for Pulses {
+    fn fmt(&self, f: &mut core::fmt::Formatter<'_>) -> core::fmt::Result {
+        u32::from(self.0.get()).fmt(f)
+    }
+}
+
 /// Everything chosen for the cut; the machine's profile says the rest.
 #[derive(Clone, Copy, Debug, PartialEq)]
 #[cfg_attr(feature = "defmt", derive(defmt::Format))]
@@ -89,6 +117,8 @@ pub struct Setup {
     pub cap_is_old: bool,
     /// What the operator has added: the cut, the finish, the life, the bar, the thread.
     pub details: Details,
+    /// Pulses in a revolution as counted on the machine, where they are not those of its profile.
+    pub pulses: Option<Pulses>,
 }
 
 impl Setup {
@@ -103,7 +133,13 @@ impl Setup {
         cap: None,
         cap_is_old: false,
         details: Details::NONE,
+        pulses: None,
     };
+
+    /// Pulses in a revolution: those that were counted, or else the profile's.
+    pub fn pulses_on(&self, machine: &Machine) -> Pulses {
+        self.pulses.unwrap_or(Pulses(machine.pulses()))
+    }
 }
 
 /// Checks a cap.

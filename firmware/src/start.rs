@@ -1,7 +1,7 @@
 //! What is chosen on the machine at the start, as written and packed. Shared with `build.rs`.
 
 use rimrate_core::error::Rejected;
-use rimrate_core::setup::{self, Diameter, Setup};
+use rimrate_core::setup::{self, Diameter, Pulses, Setup};
 use rimrate_core::trade::{Coolant, Material, Operation, Tool};
 use rimrate_core::units::{Length, Rpm};
 
@@ -24,6 +24,9 @@ pub(crate) struct StartSpec {
     /// The highest speed allowed, rev/min.
     #[serde(default)]
     cap_rpm: Option<f32>,
+    /// Pulses in a revolution as counted on the machine; the profile's where missing.
+    #[serde(default)]
+    pulses: Option<u16>,
 }
 
 impl StartSpec {
@@ -42,6 +45,11 @@ impl StartSpec {
                 Some(setup::cap(n).map_err(|e| e.within("start"))?)
             }
         };
+        let pulses = self
+            .pulses
+            .map(Pulses::new)
+            .transpose()
+            .map_err(|e| e.within("start"))?;
         Ok(Setup {
             material: self.material,
             tool: self.tool,
@@ -52,6 +60,7 @@ impl StartSpec {
             cap,
             cap_is_old: false,
             details: setup::Details::NONE,
+            pulses,
         })
     }
 }

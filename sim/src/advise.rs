@@ -150,6 +150,7 @@ impl Advise {
                 .transpose()
                 .map_err(Fail::input)?,
             cap_is_old: false,
+            pulses: None,
             details: {
                 let holder = machine.holders().get(usize::from(holder)).map(|h| h.kind);
                 self.details.read(diameter, tool, operation, holder)?

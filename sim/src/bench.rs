@@ -154,6 +154,7 @@ impl<R: Rig> Bench<R> {
                     Duration::from_secs_f32(*seconds as f32),
                 );
             }
+            Action::HandTurn(turns) => self.lathe.turn_by_hand(*turns),
             Action::Lever(label) => self.lever(label),
             Action::Dial(rpm) => self.dial(*rpm),
             Action::Cut(cut) => {

@@ -50,11 +50,13 @@ struct WrittenSetup {
     diameter: String,
     holder: String,
     cap: Option<String>,
+    pulses: Option<u16>,
 }
 
 #[derive(Clone, Debug, Default, Deserialize)]
 #[serde(deny_unknown_fields)]
 struct WrittenSensor {
+    magnets: Option<u32>,
     placement_deg: Option<Vec<f64>>,
     width_deg: Option<f64>,
     jitter_deg: Option<f64>,
@@ -182,6 +184,8 @@ pub enum Action {
     Motor(MotorTo),
     /// Runs the motor for some seconds.
     Jog(f64),
+    /// Turns the spindle by hand, the motor off: so many turns, pull by pull.
+    HandTurn(f64),
     /// Moves the levers to a step, by its label; stepped drives only.
     Lever(String),
     /// Turns the speed dial, rpm of the spindle; variable drives only.

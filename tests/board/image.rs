@@ -110,6 +110,7 @@ impl Image {
                 s.diameter.mm(),
                 s.holder,
                 s.cap.map(|n| n.get()),
+                s.pulses.map(|n| n.get().get()),
             )
         });
         let record = postcard::to_stdvec(&(machine, start)).expect("a record can be packed");

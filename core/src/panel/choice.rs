@@ -202,7 +202,7 @@ const SCALE_INCH: &Scale = &[
     (8.0, 0.5),
     (20.0, 2.0),
 ];
-/// Caps in rev/min.
+/// Caps and plates in rev/min.
 const SCALE_RPM: &Scale = &[(0.0, 5.0), (200.0, 10.0), (500.0, 50.0), (2000.0, 100.0)];
 
 /// Moves a value along its scale, to the next mark and then from mark to mark.
@@ -236,6 +236,11 @@ fn turned(scale: &Scale, value: f32, detents: i8) -> f32 {
         v = next * step;
     }
     v
+}
+
+/// A speed moved along the scale of caps.
+pub(super) fn turned_rpm(speed: Rpm, detents: i8) -> Rpm {
+    Rpm::saturating(turned(SCALE_RPM, speed.get(), detents))
 }
 
 fn turned_diameter(diameter: Diameter, detents: i8, units: UnitSystem) -> Diameter {

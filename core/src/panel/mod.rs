@@ -9,8 +9,16 @@
 //!            turn either: further down the bounds
 //!                               |
 //!                               +----------- press left ----> Sensor page -- press either --> Run page
+//!                                                                  |
+//!                                                             turn either
+//!                                                                  v
+//!            Sensor page <-- turn left back -- Ten turns page -- turn left on --> Plate speed page -- turn left back --> Ten turns
+//!            on both: press right does what the screen says (count, use the number), press left --> Run page
+//!            Plate speed page, turn right: which plate
+//!            Ten turns page, while it counts: turns do nothing, press left gives up
 //!
-//!            hold right: the cap is taken away; on the Why page: a new edge is in, its account starts anew
+//!            hold right: the cap is taken away; on the Why page: a new edge is in, its account starts anew;
+//!                        on the two pages that count pulses: nothing
 //!            hold left (any page): the buzzer is muted until the verdict changes
 //! ```
 //!
@@ -25,7 +33,8 @@ use crate::advice::Advice;
 use crate::error::text;
 use crate::machine::Machine;
 use crate::screen::why;
-use crate::setup::Setup;
+use crate::sensor_setup::{Hand, Offer, SensorSetup};
+use crate::setup::{Pulses, Setup};
 use crate::time::{Duration, Instant};
 
 pub use choice::Field;
@@ -57,6 +66,10 @@ pub enum Page {
     Why(u8),
     /// How well the sensor works.
     Sensor,
+    /// Counting the pulses in a revolution by hand.
+    TenTurns,
+    /// The same by the plate's speed.
+    PlateSpeed,
 }
 
 /// What a change of the setup shows for a while: `was 25, now 30 mm`.
@@ -109,6 +122,16 @@ pub struct Bench<'a> {
     pub advice: &'a Advice,
     /// Whether the spindle runs: then changes are announced.
     pub running: bool,
+    /// What is known about the pulses in a revolution.
+    pub sensor: &'a mut SensorSetup,
+}
+
+impl Bench<'_> {
+    /// Takes a number of pulses over; the profile's own is no change of it.
+    fn take_over(&mut self, pulses: Pulses) {
+        let own = pulses.get() == self.machine.pulses();
+        self.setup.pulses = (!own).then_some(pulses);
+    }
 }
 
 impl Panel {
@@ -155,7 +178,10 @@ impl Panel {
                 self.page = Page::Why(first as u8);
                 return;
             }
-            (Page::Sensor, _) => return,
+            (Page::Sensor | Page::TenTurns | Page::PlateSpeed, _) => {
+                self.turn_sensor(knob, detents, bench);
+                return;
+            }
         };
         let before = *bench.setup;
         field.turn(detents, bench.setup, bench.machine, bench.advice);
@@ -170,16 +196,20 @@ impl Panel {
     }
 
     /// A knob came up.
-    pub fn release(&mut self, now: Instant, knob: Knob, bench: Bench<'_>) -> Option<Wish> {
-        let wish = self.settle(now, bench);
+    pub fn release(&mut self, now: Instant, knob: Knob, mut bench: Bench<'_>) -> Option<Wish> {
+        let wish = self.pass(now, &mut bench);
         if let Button::Down(_) = core::mem::take(self.button(knob)) {
-            self.pressed(knob);
+            self.pressed(now, knob, bench);
         }
         wish
     }
 
     /// Lets time pass: holds begin, notices end.
-    pub fn settle(&mut self, now: Instant, bench: Bench<'_>) -> Option<Wish> {
+    pub fn settle(&mut self, now: Instant, mut bench: Bench<'_>) -> Option<Wish> {
+        self.pass(now, &mut bench)
+    }
+
+    fn pass(&mut self, now: Instant, bench: &mut Bench<'_>) -> Option<Wish> {
         if self.notice.as_ref().is_some_and(|n| now >= n.until) {
             self.notice = None;
         }
@@ -193,6 +223,7 @@ impl Panel {
                     _ if !self.confirmed => self.confirmed = true,
                     Knob::Left => wish = Some(Wish::Mute),
                     Knob::Right if matches!(self.page, Page::Why(_)) => wish = Some(Wish::NewEdge),
+                    Knob::Right if matches!(self.page, Page::TenTurns | Page::PlateSpeed) => {}
                     Knob::Right => {
                         let before = *bench.setup;
                         bench.setup.cap = None;
@@ -227,15 +258,60 @@ impl Panel {
         }
     }
 
-    fn pressed(&mut self, knob: Knob) {
+    /// The pages about the sensor lie side by side, the left knob goes along them.
+    fn turn_sensor(&mut self, knob: Knob, detents: i8, bench: Bench<'_>) {
+        self.page = match (self.page, knob) {
+            (Page::Sensor, _) => Page::TenTurns,
+            (Page::TenTurns, Knob::Left) if !matches!(bench.sensor.hand(), Hand::Counting(_)) => {
+                if detents > 0 {
+                    bench.sensor.time_anew();
+                    Page::PlateSpeed
+                } else {
+                    Page::Sensor
+                }
+            }
+            (Page::PlateSpeed, Knob::Left) if detents < 0 => Page::TenTurns,
+            (Page::PlateSpeed, Knob::Right) => {
+                bench
+                    .sensor
+                    .turn_plate(detents, bench.machine, choice::turned_rpm);
+                Page::PlateSpeed
+            }
+            (page, _) => page,
+        };
+    }
+
+    fn pressed(&mut self, now: Instant, knob: Knob, mut bench: Bench<'_>) {
         if !self.confirmed {
             self.confirmed = true;
             return;
         }
+        let used = bench.setup.pulses_on(bench.machine);
+        let offer = match self.page {
+            Page::TenTurns => bench.sensor.hand_offer(used),
+            Page::PlateSpeed => bench.sensor.plate_offer(used),
+            _ => Offer::Nothing,
+        };
         self.page = match (self.page, knob) {
             (Page::Run, Knob::Left) => Page::Choose(self.field),
             (Page::Run, Knob::Right) => Page::Why(0),
             (Page::Why(_), Knob::Left) => Page::Sensor,
+            (Page::TenTurns | Page::PlateSpeed, Knob::Right) => match offer {
+                Offer::Use(pulses) => {
+                    bench.take_over(pulses);
+                    bench.sensor.time_anew();
+                    Page::Sensor
+                }
+                Offer::Start | Offer::End | Offer::Again => {
+                    bench.sensor.count(now);
+                    self.page
+                }
+                Offer::Nothing => self.page,
+            },
+            (Page::TenTurns | Page::PlateSpeed, Knob::Left) => {
+                bench.sensor.give_up();
+                Page::Run
+            }
             (Page::Choose(_) | Page::Why(_) | Page::Sensor, _) => Page::Run,
         };
     }

@@ -1,6 +1,7 @@
 //! Pages drawn from a [`View`], for any 1-bit target of 128 x 64 pixels.
 
 mod choose;
+mod count;
 mod run;
 mod sensor;
 pub(crate) mod why;
@@ -19,6 +20,7 @@ use crate::edge_account::EdgeAccount;
 use crate::error::text;
 use crate::machine::Machine;
 use crate::panel::{Notice, Page};
+use crate::sensor_setup::SensorSetup;
 use crate::setup::Setup;
 use crate::tacho::{Health, Reading, Signal};
 use crate::verdict::Verdict;
@@ -49,6 +51,8 @@ pub struct View<'a> {
     pub edge: EdgeAccount,
     /// How well the sensor works.
     pub sensor: Health,
+    /// What is known about the pulses in a revolution.
+    pub sensor_setup: &'a SensorSetup,
 }
 
 /// Draws the view's page on a cleared target. Nothing is drawn outside of 128 x 64.
@@ -61,6 +65,8 @@ pub fn draw<D: DrawTarget<Color = BinaryColor>>(
         Page::Choose(field) => choose::draw(view, field, target),
         Page::Why(first) => why::draw(view, first, target),
         Page::Sensor => sensor::draw(view, target),
+        Page::TenTurns => count::ten_turns(view, target),
+        Page::PlateSpeed => count::plate_speed(view, target),
     }
 }
 

@@ -1,14 +1,17 @@
 //! The Sensor page, for whoever sets the sensor up: the magnets on their circle, what was no pulse and why, how well they sit.
 //!
 //! ```text
-//!  2 a turn       12345 pulses
+//!  2 a turn       12345 pulses         or, where they are not the profile's: profile says 1
 //!   . o .   joined    3 sliver   12     what was not counted, by kind
 //!  .     .  noise     0 twice     0
 //!  .     .  extra     1 merged    0
 //!  .     .  shaken    0 missed    4
 //!   . o .   close     0 order     0
-//!  1.02 deg off  3.1 us  to 600000      worst magnet, jitter, highest speed that can be measured
+//!           to 600000 x214 spare        highest speed that can be measured, and how far the fastest step is below it
+//!  1.02 deg off  3.1 us  turn: count    worst magnet, jitter; a knob leads on to the pages that count the pulses
 //! ```
+//!
+//! While the spindle runs steadily at a speed that no step explains, the last line tells what contradicts the number above.
 
 use core::fmt;
 
@@ -22,6 +25,7 @@ use micromath::F32Ext;
 
 use super::{View, WIDTH, line, write};
 use crate::error::text;
+use crate::tacho::Signal;
 use crate::units::Decimal;
 
 /// Middle of the spindle, its radius, and that of the magnets' circle.
@@ -32,15 +36,18 @@ const RADIUS: f32 = 18.0;
 const DISCS: u16 = 24;
 /// Left ends of the two columns of counts.
 const COLUMNS: [i32; 2] = [46, 88];
-const TOP: i32 = 12;
-const LINE: i32 = 8;
+const TOP: i32 = 11;
+const BOTTOM: i32 = 56;
+const LINE: i32 = 7;
+/// Left end of the line below them: it may be longer than both.
+const SPARE: i32 = 44;
 
 pub(super) fn draw<D: DrawTarget<Color = BinaryColor>>(
     view: &View<'_>,
     target: &mut D,
 ) -> Result<(), D::Error> {
     let sensor = view.sensor;
-    let set: String<16> = text(format_args!("{} a turn", sensor.pulses));
+    let set: String<32> = text(format_args!("{} a turn", sensor.pulses));
     write(
         &set,
         &FONT_5X8,
@@ -49,7 +56,12 @@ pub(super) fn draw<D: DrawTarget<Color = BinaryColor>>(
         BinaryColor::On,
         target,
     )?;
-    let counted: String<18> = text(format_args!("{} pulses", sensor.counted));
+    let own = view.machine.pulses();
+    let counted: String<32> = if sensor.pulses == own {
+        text(format_args!("{} pulses", sensor.counted))
+    } else {
+        text(format_args!("profile says {own}"))
+    };
     let right = Point::new(WIDTH as i32 - 1, 0);
     write(
         &counted,
@@ -73,7 +85,7 @@ pub(super) fn draw<D: DrawTarget<Color = BinaryColor>>(
     for (row, pair) in (0..).zip(kinds) {
         for (column, (kind, count)) in COLUMNS.into_iter().zip(pair) {
             // Ten characters of four pixels are a column.
-            let words: String<11> = text(format_args!("{kind} {}", Short(count)));
+            let words: String<32> = text(format_args!("{kind} {}", Short(count)));
             let at = Point::new(column, TOP + LINE * row);
             write(
                 &words,
@@ -86,7 +98,34 @@ pub(super) fn draw<D: DrawTarget<Color = BinaryColor>>(
         }
     }
 
-    let off: String<12> = match sensor.placement {
+    let fastest = view.machine.drive().fastest();
+    let spare = Spare(sensor.highest.get(), fastest.get());
+    let spare: String<32> = text(format_args!("{spare}"));
+    write(
+        &spare,
+        &FONT_4X6,
+        Point::new(SPARE, TOP + 5 * LINE),
+        Alignment::Left,
+        BinaryColor::On,
+        target,
+    )?;
+
+    let unexplained = view
+        .reading
+        .speed
+        .filter(|&n| view.reading.signal == Signal::Doubtful && !view.machine.explains(n));
+    if let Some(speed) = unexplained {
+        // The number of pulses and their rate are both certain; that they make this speed is not.
+        let rate = speed.rev_per_s() * f32::from(sensor.pulses.get());
+        let decimals = if rate < 100.0 { 1 } else { 0 };
+        let rate = Decimal {
+            value: rate,
+            decimals,
+        };
+        let words = format_args!("{rate} pulses/s fit no step");
+        return line(words, BOTTOM, target);
+    }
+    let off: String<32> = match sensor.placement {
         Some(degrees) => text(format_args!(
             "{} deg off",
             Decimal {
@@ -96,21 +135,34 @@ pub(super) fn draw<D: DrawTarget<Color = BinaryColor>>(
         )),
         None => text("place ?"),
     };
-    let jitter: String<10> = match sensor.jitter {
-        Some(s) => text(format_args!(
+    let jitter: String<32> = match sensor.jitter {
+        Some(s) if s < 9.9995e-3 => text(format_args!(
             "{} us",
             Decimal {
                 value: s * 1e6,
                 decimals: 0
             }
         )),
+        Some(s) => text(format_args!(
+            "{} ms",
+            Decimal {
+                value: s * 1e3,
+                decimals: 0
+            }
+        )),
         None => text("jitter ?"),
     };
-    let highest = Decimal {
-        value: sensor.highest.get(),
-        decimals: 0,
-    };
-    line(format_args!("{off}  {jitter}  to {highest}"), 56, target)
+    let left: String<32> = text(format_args!("{off} {jitter}"));
+    let y = BOTTOM + 1;
+    let ends = [
+        (left.as_str(), 0, Alignment::Left),
+        ("turn: count", WIDTH as i32 - 1, Alignment::Right),
+    ];
+    for (words, x, alignment) in ends {
+        let at = Point::new(x, y);
+        write(words, &FONT_4X6, at, alignment, BinaryColor::On, target)?;
+    }
+    Ok(())
 }
 
 /// The spindle, and round it a disc for each magnet, or the rim of a wheel with many teeth. Sine and cosine are micromath's:
@@ -133,6 +185,30 @@ fn magnets<D: DrawTarget<Color = BinaryColor>>(count: u16, target: &mut D) -> Re
             .draw(target)?;
     }
     Ok(())
+}
+
+/// The highest speed that can be measured, beside the machine's fastest.
+struct Spare(f32, f32);
+
+impl fmt::Display for Spare {
+    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        let Spare(highest, fastest) = *self;
+        let whole = |value| Decimal { value, decimals: 0 };
+        write!(f, "to {}", whole(highest))?;
+        let times = highest / fastest;
+        match times {
+            x if x < 1.0 => write!(f, " < top {}", whole(fastest)),
+            x if x < 9.95 => {
+                let times = Decimal {
+                    value: times,
+                    decimals: 1,
+                };
+                write!(f, " x{times} spare")
+            }
+            x if x < 999.5 => write!(f, " x{} spare", whole(times)),
+            _ => f.write_str(" ample"),
+        }
+    }
 }
 
 /// A count in at most three characters.

@@ -243,6 +243,26 @@ impl Tacho {
         tacho
     }
 
+    /// Starts anew with another sensor: everything learned is forgotten. A spindle that turned still does, so its signal is
+    /// lost until its pulses agree with themselves.
+    ///
+    /// Its frame is as large as a tacho: nobody else's holds it.
+    #[inline(never)]
+    pub fn configure(&mut self, config: Config) {
+        let turned = self.state == State::Turning;
+        let speed = self.track.quick().unwrap_or(0.0) * f32::from(self.config.pulses.get())
+            / f32::from(config.pulses.get());
+        *self = Tacho::new(config);
+        if turned {
+            self.state = State::Lost(speed);
+        }
+    }
+
+    /// Pulses counted up to the last one, and when that came.
+    pub fn last_pulse(&self) -> Option<(u32, Instant)> {
+        self.latest.back().map(|pulse| (self.counted, pulse.at))
+    }
+
     /// What was not counted as a pulse, by kind.
     pub fn rejected(&self) -> Rejected {
         self.gate.rejected

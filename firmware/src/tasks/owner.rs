@@ -92,12 +92,13 @@ impl Owner {
     /// Loads the machine's profile and starts the instrument on it.
     pub(crate) fn new(capture: Capture, signs: Signs, cause: Cause) -> Self {
         let (machine, chosen) = profile::load();
+        let pulses = chosen.map_or(machine.pulses(), |setup| setup.pulses_on(machine).get());
         defmt::info!(
             "machine {=str} pulses {=u16}",
             machine.name(),
-            machine.pulses().get()
+            pulses.get()
         );
-        let sense = Sense::new(capture, machine.pulses().get());
+        let sense = Sense::new(capture, pulses.get());
         let start = Now::now();
         let instrument = start_instrument(machine, chosen);
         Owner {

@@ -1,6 +1,7 @@
 //! The equation of motion, step by step.
 
 use super::cut::Cut;
+use super::hand::Hand;
 use super::mains::Wander;
 use super::motor::{Curve, Feed, Pull, Regulator};
 use super::segment::{Ripple, Segment, Wave};
@@ -21,6 +22,7 @@ const SLIP_LAG: f64 = 0.05;
 /// Streams of the run's seed.
 const STREAM_MAINS: u64 = 0x6d61_696e;
 const STREAM_START: u64 = 0x7374_6172;
+const STREAM_HAND: u64 = 0x6861_6e64;
 
 /// The motor's switch.
 #[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
@@ -82,6 +84,9 @@ pub struct Lathe {
     pedal: f64,
     cut: Option<Cut>,
     work_inertia: f64,
+    /// Somebody turns the chuck.
+    hand: Option<Hand>,
+    hand_chance: Random,
 }
 
 impl Lathe {
@@ -126,6 +131,8 @@ impl Lathe {
             pedal: 0.0,
             cut: None,
             work_inertia: 0.0,
+            hand: None,
+            hand_chance: Random::new(seed, STREAM_HAND),
             spec,
         }
     }
@@ -135,6 +142,14 @@ impl Lathe {
         self.switch = to;
         self.jog_ends = None;
         self.plugging = false;
+        self.hand = None;
+    }
+
+    /// Switches the motor off and, once the spindle stands, turns it by hand: so many turns forwards, pull by pull, each as
+    /// long and as fast as it happens. The hand lets go when the motor is switched.
+    pub fn turn_by_hand(&mut self, turns: f64) {
+        self.motor(MotorSwitch::Off);
+        self.hand = Some(Hand::new(turns));
     }
 
     /// Switches the motor on for a short time.
@@ -222,19 +237,48 @@ impl Lathe {
             if let Some(jog) = self.jog_ends {
                 end = end.min(jog.nanos());
             }
-            if let Some(segment) = self.step(end - now) {
+            let by_hand = self.pulled();
+            if let Some((until, _)) = by_hand {
+                end = end.min(until.nanos());
+            }
+            if let Some(segment) = self.step(end - now, by_hand.map(|(_, accel)| accel)) {
                 on_segment(&segment);
             }
         }
     }
 
-    /// One step of at most `len_ns`. None where the spindle has just come to its stop: it takes no time.
-    fn step(&mut self, longest_ns: u64) -> Option<Segment> {
+    /// Until when a hand moves the spindle as it does now, and its acceleration, rev/s2.
+    fn pulled(&mut self) -> Option<(Instant, f64)> {
+        let stands = self.speed == 0.0;
+        let phase = self
+            .hand
+            .as_mut()?
+            .phase(self.now, stands, &mut self.hand_chance);
+        match phase {
+            None if stands => self.hand = None,
+            // At the end of a pull the spindle stands, whatever the rounding.
+            Some((_, 0.0)) => self.speed = 0.0,
+            _ => {}
+        }
+        phase
+    }
+
+    /// One step of at most `len_ns`, with the acceleration that a hand forces on the spindle, if one does. None where the
+    /// spindle has just come to its stop: it takes no time.
+    fn step(&mut self, longest_ns: u64, by_hand: Option<f64>) -> Option<Segment> {
         let mut len_ns = longest_ns;
-        let mut accel = self.acceleration(len_ns as f64 * 1e-9);
+        let mut accel = match by_hand {
+            // A stop that comes a nanosecond early is one.
+            Some(accel) if self.speed == 0.0 => accel.max(0.0),
+            Some(accel) => accel,
+            None => self.acceleration(len_ns as f64 * 1e-9),
+        };
         // A rotor next to nothing would leap over the bends of the motor's curve in one step.
         let leap = LEAP * self.spec.motor.synchronous_rpm() / 60.0 / self.ratio.unwrap_or(0.0);
-        while (accel * len_ns as f64 * 1e-9).abs() > leap && len_ns > SHORTEST_STEP_NS {
+        while by_hand.is_none()
+            && (accel * len_ns as f64 * 1e-9).abs() > leap
+            && len_ns > SHORTEST_STEP_NS
+        {
             len_ns /= 2;
             accel = self.acceleration(len_ns as f64 * 1e-9);
         }

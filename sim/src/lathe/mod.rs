@@ -10,6 +10,7 @@
 
 mod cut;
 mod dynamics;
+mod hand;
 mod mains;
 mod motor;
 mod segment;

@@ -538,3 +538,41 @@ fn nonsense_on_the_controls_is_harmless() {
     run(&mut lathe, 4.5);
     assert!(lathe.smooth_rpm().is_finite());
 }
+
+/// Ten turns by hand are ten turns, uneven, forwards, and end at rest; a hand waits until the spindle stands, and lets go when
+/// the motor is switched.
+#[test]
+fn a_hand_turns_the_spindle_pull_by_pull() {
+    for seed in 0..20 {
+        let mut lathe = Lathe::new(LatheSpec::default(), seed);
+        lathe.select(280.0);
+        let from = lathe.angle();
+        lathe.turn_by_hand(10.0);
+        let segments = run(&mut lathe, 120.0);
+        let turned = lathe.angle() - from;
+        assert!((turned - 10.0).abs() < 1e-3, "{turned}");
+        assert!(segments.iter().all(|s| s.speed >= 0.0));
+        let fastest = segments.iter().map(|s| 60.0 * s.speed).fold(0.0, f64::max);
+        assert!((20.0..=60.1).contains(&fastest), "{fastest}");
+        let rests = segments
+            .windows(2)
+            .filter(|s| s[0].speed > 0.0 && s[1].is_still());
+        assert!((20..=70).contains(&rests.count()));
+        assert!(lathe.smooth_rpm() == 0.0);
+    }
+    let mut lathe = Lathe::new(LatheSpec::default(), 1);
+    lathe.select(280.0);
+    lathe.motor(MotorSwitch::Forward);
+    run(&mut lathe, 5.0);
+    lathe.turn_by_hand(1.0);
+    assert_eq!(lathe.switch(), MotorSwitch::Off);
+    run(&mut lathe, 5.02);
+    assert!(lathe.smooth_rpm() > 200.0, "it coasts");
+    run(&mut lathe, 60.0);
+    assert!(lathe.smooth_rpm() == 0.0);
+    lathe.turn_by_hand(10.0);
+    run(&mut lathe, 62.0);
+    lathe.motor(MotorSwitch::Forward);
+    run(&mut lathe, 70.0);
+    assert!(lathe.smooth_rpm() > 250.0, "the motor runs");
+}

@@ -1,7 +1,8 @@
 //! What a scenario's file says, checked: every refusal names field, value and what is allowed.
 
+use rimrate_core::machine::MAX_PULSES;
 use rimrate_core::machine::{Drive, Machine};
-use rimrate_core::setup::{Details, Diameter, Setup};
+use rimrate_core::setup::{Details, Diameter, Pulses, Setup};
 use rimrate_core::tacho::Signal;
 use rimrate_core::verdict::Verdict;
 
@@ -15,6 +16,11 @@ impl WrittenSetup {
         let diameter = Diameter::parse(&self.diameter).map_err(|e| e.to_string())?;
         let cap = self.cap.map(|text| parse_cap(&text)).transpose()?;
         let holder = find_holder(machine, &self.holder)?;
+        let pulses = self
+            .pulses
+            .map(Pulses::new)
+            .transpose()
+            .map_err(|e| e.to_string())?;
         Ok(Setup {
             material: self.material,
             tool: self.tool,
@@ -25,6 +31,7 @@ impl WrittenSetup {
             cap,
             cap_is_old: false,
             details: Details::NONE,
+            pulses,
         })
     }
 }
@@ -34,7 +41,13 @@ impl WrittenSensor {
         self,
         machine: &Machine,
     ) -> Result<SensorSpec, (&'static str, f64, &'static str)> {
-        let magnets = u32::from(machine.pulses().get());
+        let magnets = match self.magnets {
+            Some(n) if !(1..=u32::from(MAX_PULSES)).contains(&n) => {
+                return Err(("sensor.magnets", f64::from(n), "1 to 240 on the collar"));
+            }
+            Some(n) => n,
+            None => u32::from(machine.pulses().get()),
+        };
         let fits = SensorSpec::ideal(magnets).width;
         let mut spec = SensorSpec {
             magnets,
@@ -104,7 +117,7 @@ impl WrittenSensor {
             let allowed = "less than half of the room between two magnets";
             return Err((field, v, allowed));
         }
-        match spec.placement.get(usize::from(machine.pulses().get())) {
+        match spec.placement.get(magnets as usize) {
             Some(&v) => Err((field, v, "at most one place for each magnet")),
             None => Ok(spec),
         }
@@ -159,6 +172,7 @@ pub(super) fn action(action: &Action, machine: &Machine) -> Result<(), Refused> 
         }
         (Action::Brake(pedal), _) => range("do.brake", *pedal, 0.0, 1.0),
         (Action::Jog(seconds), _) => range("do.jog", *seconds, 0.01, 60.0),
+        (Action::HandTurn(turns), _) => range("do.hand-turn", *turns, 0.1, 100.0),
         (Action::Cut(cut), _) => range("do.cut.specific_force", cut.specific_force, 1.0, 20_000.0)
             .and(range("do.cut.depth_mm", cut.depth_mm, 0.001, 50.0))
             .and(range("do.cut.feed_mm", cut.feed_mm, 0.001, 10.0))

@@ -21,6 +21,7 @@ pub(super) fn action(action: &Action) -> String {
         Action::Motor(MotorTo::Forward) => "motor on, forward".into(),
         Action::Motor(MotorTo::Reverse) => "motor on, reverse".into(),
         Action::Jog(seconds) => format!("motor jogged for {seconds} s"),
+        Action::HandTurn(turns) => format!("spindle turned by hand, {turns} turns"),
         Action::Lever(label) => format!("levers to {label}"),
         Action::Dial(rpm) => format!("dial to {rpm:.0} rpm"),
         Action::Cut(spec) => format!("tool in the cut: {}", cut(spec)),
