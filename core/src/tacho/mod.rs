@@ -223,6 +223,9 @@ const LONG_SILENCE: u64 = 1 << 40;
 
 impl Tacho {
     /// Starts without knowing anything of the spindle.
+    ///
+    /// Inlined where it is used: as a function of its own it would move a tacho once more, over the stack.
+    #[inline(always)]
     pub fn new(config: Config) -> Self {
         let mut tacho = Tacho {
             gate: Gate::default(),
