@@ -148,6 +148,10 @@ fn hands_that_pull_and_rest_come_to_the_right_number_and_never_to_another() {
                 Err(Miscount::Nothing) => panic!("hand {seed} passed {magnets} magnets"),
             }
         }
+        assert!(
+            right == 0 || !chatter || magnets <= 24,
+            "{magnets} fine teeth"
+        );
         let right = right as f64 / all as f64;
         assert!(
             right >= share,
