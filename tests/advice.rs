@@ -103,6 +103,7 @@ fn any_setup() -> impl Strategy<Value = Setup> {
                 cap: cap.map(rpm),
                 cap_is_old: false,
                 pulses: None,
+                load: false,
                 details: Details::NONE,
             },
         )

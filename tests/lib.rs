@@ -36,6 +36,7 @@ pub fn bar(mm: f32) -> Setup {
         cap: None,
         cap_is_old: false,
         pulses: None,
+        load: false,
         details: Details::NONE,
     }
 }

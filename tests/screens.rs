@@ -10,6 +10,7 @@ use embedded_graphics::pixelcolor::BinaryColor;
 use embedded_graphics::prelude::*;
 use rimrate_core::advice::{Advice, Excess, Pick, advise};
 use rimrate_core::edge_account::EdgeAccount;
+use rimrate_core::load::Mark;
 use rimrate_core::machine::{
     HolderKind, HolderSpec, Machine, MachineKind, MachineSpec, SensorSpec, StepSpec,
 };
@@ -35,6 +36,7 @@ struct Scene {
     page: Page,
     notice: Option<Notice>,
     edge: EdgeAccount,
+    load: Option<Mark>,
     sensor: Health,
     sensor_setup: SensorSetup,
 }
@@ -52,6 +54,7 @@ impl Scene {
             edge: EdgeAccount::default(),
             sensor: counting::health(2),
             sensor_setup: SensorSetup::default(),
+            load: None,
         }
     }
 
@@ -61,6 +64,10 @@ impl Scene {
             verdict,
             ..self
         }
+    }
+
+    fn loaded(self, load: Option<Mark>) -> Self {
+        Scene { load, ..self }
     }
 
     fn without_speed(self, signal: Signal, verdict: Verdict) -> Self {
@@ -115,6 +122,7 @@ impl Scene {
             page: self.page,
             notice: self.notice.as_ref(),
             edge: self.edge,
+            load: self.load,
             sensor: self.sensor,
             sensor_setup: &self.sensor_setup,
         };
@@ -278,6 +286,18 @@ fn scenes() -> Vec<(&'static str, Scene)> {
         ("why-power", why(0, heavy)),
         ("why-power-further-down", why(9, heavy)),
         ("run-right", lathe()),
+        ("run-right-free", lathe().loaded(Some(Mark::Free))),
+        ("run-right-heavy", lathe().loaded(Some(Mark::Heavy))),
+        (
+            "run-slow-stalling",
+            lathe()
+                .at(262.0, Verdict::Slow)
+                .loaded(Some(Mark::Stalling)),
+        ),
+        (
+            "run-fast-working",
+            lathe().at(446.0, Verdict::Fast).loaded(Some(Mark::Working)),
+        ),
         ("run-slow", lathe().at(180.0, Verdict::Slow)),
         ("run-up", lathe().at(96.0, Verdict::RunUp)),
         ("run-fast", lathe().at(446.0, Verdict::Fast)),
@@ -331,6 +351,24 @@ fn scenes() -> Vec<(&'static str, Scene)> {
                     ..bar(25.0)
                 },
             ),
+        ),
+        (
+            "choose-load",
+            choose(
+                Field::Load,
+                Setup {
+                    load: true,
+                    ..bar(25.0)
+                },
+            ),
+        ),
+        (
+            "choose-load-refused",
+            Scene {
+                machine: machine("variable-lathe"),
+                page: Page::Choose(Field::Load),
+                ..lathe()
+            },
         ),
     ];
     all.extend(counting::scenes());
@@ -450,12 +488,15 @@ fn many() -> impl Iterator<Item = Scene> {
 fn nothing_is_drawn_outside_or_over_something_else() {
     let verdicts = Verdict::ALL;
     let speeds = [0.0, 7.0, 45.4, 279.0, 2240.0, 9999.0, 12_345.0, 1_000_000.0];
+    let loads = [None].into_iter().chain(Mark::ALL.map(Some));
+    let loads: Vec<_> = loads.collect();
     let mut seen = 0;
     let all = many().chain(scenes().into_iter().map(|(_, s)| s));
     for (i, scene) in all.enumerate() {
         let scene = scene
             .clone()
-            .at(speeds[i % speeds.len()], verdicts[i % verdicts.len()]);
+            .at(speeds[i % speeds.len()], verdicts[i % verdicts.len()])
+            .loaded(loads[i % loads.len()]);
         let ink = Ink::of(&scene);
         assert_eq!(ink.outside, [], "{:?}", scene.setup);
         for (at, &times) in ink.lit.iter().enumerate() {
@@ -478,7 +519,10 @@ fn nothing_is_drawn_outside_or_over_something_else() {
 fn the_parts_of_the_run_page_stand_apart() {
     for scene in many().step_by(7) {
         for verdict in Verdict::ALL {
-            let scene = scene.clone().at(888.0, verdict);
+            let scene = scene
+                .clone()
+                .at(888.0, verdict)
+                .loaded(Some(Mark::Stalling));
             let frame = scene.frame();
             let dark = |y: u32, x: std::ops::Range<u32>| x.into_iter().all(|x| !frame.lit(x, y));
             let refused = matches!(scene.advice().pick, Pick::NoBasis(_));
@@ -552,7 +596,7 @@ fn no_choice_is_cut_on_any_demo_machine() {
                             ..bar(25.0)
                         },
                         machine: machine.clone(),
-                        page: Page::Choose(Field::CHOOSE[usize::from(holder) % 5]),
+                        page: Page::Choose(Field::CHOOSE[usize::from(holder) % 6]),
                         ..Scene::new()
                     };
                     let frame = scene.frame();

@@ -118,6 +118,7 @@ fn any_setup() -> impl Strategy<Value = Setup> {
                 cap: cap.map(rpm),
                 cap_is_old: false,
                 pulses: None,
+                load: false,
                 details,
             },
         )
@@ -175,6 +176,7 @@ fn any_machine() -> impl Strategy<Value = Machine> {
                     kw: motor
                         .filter(|_| special && i % 2 == 0)
                         .map(|(kw, _, low)| kw.max(0.03 / low) * low),
+                    rated_rpm: None,
                 });
             let holders = [Some(2000.0), None, Some(500.0)]
                 .into_iter()
@@ -195,6 +197,7 @@ fn any_machine() -> impl Strategy<Value = Machine> {
                     kw: kw.max(0.03 / low),
                     kind: kinds,
                     efficiency,
+                    rated_rpm: None,
                 }),
                 feeds_mm: feeds.into_iter().map(|f| f as f32 / 100.0).collect(),
                 half_nut_stop_s,

@@ -6,6 +6,7 @@ use embedded_graphics::prelude::DrawTarget;
 use crate::advice::{Advice, advise};
 use crate::beacon::{self, Outputs};
 use crate::edge_account::EdgeAccount;
+use crate::load::{Load, Mark};
 use crate::machine::Machine;
 use crate::panel::{Bench, Knob, Page, Panel, Wish};
 use crate::physics::cutting_speed::surface_speed_m_min;
@@ -66,6 +67,7 @@ pub struct Instrument {
     judge: Judge,
     reading: Reading,
     edge: EdgeAccount,
+    load: Load,
     /// When the reading was looked at last.
     looked: Instant,
     verdict: Verdict,
@@ -92,6 +94,8 @@ struct Shown {
     offer: Option<Offer>,
     plate: Option<Rpm>,
     fit: Option<Fit>,
+    /// How hard the motor works, where that is switched on and known.
+    load: Option<Mark>,
 }
 
 /// The tacho for a setup on a machine.
@@ -106,17 +110,19 @@ fn config(setup: &Setup, machine: &Machine) -> Config {
 impl Instrument {
     /// Starts with a setup remembered from before, which then waits to be confirmed, or without one.
     ///
-    /// A remembered holder that the machine does not list falls back to the first one.
+    /// A remembered holder that the machine does not list falls back to the first one, a load that it does not tell to none.
     pub fn new(now: Instant, machine: Machine, stored: Option<Setup>) -> Self {
         let mut setup = stored.unwrap_or(Setup::CAUTIOUS);
         if usize::from(setup.holder) >= machine.holders().len() {
             setup.holder = 0;
         }
+        setup.load &= machine.tells_load().is_ok();
         let tacho = Tacho::new(config(&setup, &machine));
         let advice = advise(&setup, &machine);
         Instrument {
             reading: Reading::NOTHING,
             edge: EdgeAccount::default(),
+            load: Load::default(),
             looked: now,
             verdict: Verdict::Unconfirmed,
             verdict_since: now,
@@ -177,6 +183,9 @@ impl Instrument {
         }
         let machine = &self.machine;
         self.reading = self.tacho.reading(now, |n| machine.explains(n));
+        if self.setup.load {
+            self.load.look(now, &self.reading, &self.machine);
+        }
         self.count_edge(now);
         let verdict = self
             .judge
@@ -217,6 +226,7 @@ impl Instrument {
             },
             plate: self.sensor_setup.plate(),
             fit: self.sensor_setup.fit(),
+            load: self.mark(),
         };
         let redraw = match self.drawn {
             None => true,
@@ -280,7 +290,13 @@ impl Instrument {
             sensor: self.tacho.health(),
             edge: self.edge,
             sensor_setup: &self.sensor_setup,
+            load: self.mark(),
         }
+    }
+
+    fn mark(&self) -> Option<Mark> {
+        let shown = self.setup.load && self.reading.signal == Signal::Turning;
+        self.load.mark().filter(|_| shown)
     }
 
     /// What the sensor gave that was no pulse, by kind.
@@ -288,13 +304,14 @@ impl Instrument {
         self.tacho.rejected()
     }
 
-    /// Counts the time since the last look against the edge. Nothing here tells cutting from turning free yet.
+    /// Counts the time since the last look against the edge: only while cutting, where the load tells that.
     fn count_edge(&mut self, now: Instant) {
         let dt = now.since(core::mem::replace(&mut self.looked, now));
         let turning = self.reading.signal == Signal::Turning;
         if let (true, Some(n), Some(edge)) = (turning, self.reading.speed, &self.advice.cut.edge) {
             let v = surface_speed_m_min(n, self.setup.diameter);
-            self.edge.add(dt, v, edge, None);
+            let cutting = self.load.cutting().filter(|_| self.setup.load);
+            self.edge.add(dt, v, edge, cutting);
         }
     }
 
@@ -310,6 +327,9 @@ impl Instrument {
     }
 
     fn after_panel(&mut self, now: Instant, before: Setup, wish: Option<Wish>) {
+        if self.setup.load != before.load {
+            self.load.forget_run();
+        }
         if self.setup != before {
             self.advice = advise(&self.setup, &self.machine);
             self.unsaved_since = Some(now);

@@ -36,6 +36,7 @@ pub mod beacon;
 pub mod edge_account;
 pub mod error;
 pub mod instrument;
+pub mod load;
 pub mod machine;
 pub mod panel;
 pub mod physics;

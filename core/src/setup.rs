@@ -115,6 +115,8 @@ pub struct Setup {
     pub cap: Option<Rpm>,
     /// The cap was typed for another holder: it still bounds the speed, but an unrated holder needs one of its own.
     pub cap_is_old: bool,
+    /// Whether the load is shown, and told from turning free; see [`crate::load`].
+    pub load: bool,
     /// What the operator has added: the cut, the finish, the life, the bar, the thread.
     pub details: Details,
     /// Pulses in a revolution as counted on the machine, where they are not those of its profile.
@@ -132,6 +134,7 @@ impl Setup {
         holder: 0,
         cap: None,
         cap_is_old: false,
+        load: false,
         details: Details::NONE,
         pulses: None,
     };

@@ -59,6 +59,7 @@ impl StartSpec {
             holder: self.holder,
             cap,
             cap_is_old: false,
+            load: false,
             details: setup::Details::NONE,
             pulses,
         })

@@ -151,6 +151,7 @@ impl Advise {
                 .map_err(Fail::input)?,
             cap_is_old: false,
             pulses: None,
+            load: false,
             details: {
                 let holder = machine.holders().get(usize::from(holder)).map(|h| h.kind);
                 self.details.read(diameter, tool, operation, holder)?

@@ -13,7 +13,7 @@ use heapless::{String, Vec};
 use crate::error::{Rejected, text};
 use crate::units::{Decimal, Rpm, UnitSystem};
 
-pub use motor::{DEFAULT_EFFICIENCY, Motor};
+pub use motor::{DEFAULT_EFFICIENCY, Motor, NoLoad};
 pub use spec::{
     HolderKind, HolderSpec, MachineKind, MachineSpec, MotorKind, MotorSpec, RangeSpec, SensorSpec,
     SpindleNose, StepSpec,
@@ -49,6 +49,8 @@ pub struct Step {
     pub rpm: Rpm,
     /// The motor's power in this step, kW, where it has one of its own.
     pub kw: Option<f32>,
+    /// The motor's rated slip in this step, a share of its synchronous speed, where it is known.
+    pub rated_slip: Option<f32>,
 }
 
 /// One range of a variable drive.
@@ -129,7 +131,7 @@ const SPEED: (f32, f32) = (1.0, 100_000.0);
 impl Machine {
     /// Checks a profile. The error names the field by its path in the profile file.
     pub fn new(spec: MachineSpec) -> Result<Self, Rejected> {
-        let drive = drive(&spec)?;
+        let mut drive = drive(&spec)?;
         let fastest = drive.fastest();
         let top_speed = match spec.top_speed_rpm {
             None => fastest.scaled(ABOVE_PLATE),
@@ -150,6 +152,7 @@ impl Machine {
             }
         };
         let motor = motor::motor(&spec)?;
+        motor::slips(&spec, &mut drive)?;
         Ok(Machine {
             name: named("name", spec.name)?,
             kind: spec.kind,
@@ -408,6 +411,7 @@ fn stepped(specs: &[StepSpec]) -> Result<Vec<Step, MAX_STEPS>, Rejected> {
             label,
             rpm,
             kw: spec.kw,
+            rated_slip: None,
         });
     }
     Ok(steps)

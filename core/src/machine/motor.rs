@@ -2,7 +2,7 @@
 
 use super::{ABOVE_PLATE, Drive, Machine, MachineSpec, MotorKind, in_range};
 use crate::error::Rejected;
-use crate::physics::power;
+use crate::physics::{power, slip};
 use crate::units::Rpm;
 
 /// Share of the motor's power that reaches the cut of a belt-and-gear headstock (common practice, no source: 0.7 to 0.8).
@@ -25,6 +25,79 @@ impl Motor {
     pub fn at_cut(&self) -> f32 {
         self.kw * self.efficiency
     }
+}
+
+/// Why the load of a machine cannot be told from its speed.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
+pub enum NoLoad {
+    /// The profile has no motor.
+    NoMotor,
+    /// An inverter or a regulated drive makes up for the slip.
+    Drive,
+    /// Without fixed steps a lower speed may be a lower setting.
+    NoSteps,
+    /// The motor's rated speed is not in the profile.
+    NoRatedSpeed,
+}
+
+impl NoLoad {
+    /// The reason in at most 17 characters, as a line of the Choose page has them.
+    pub const fn words(self) -> &'static str {
+        match self {
+            NoLoad::NoMotor => "no motor known",
+            NoLoad::Drive => "no: drive-fed",
+            NoLoad::NoSteps => "no: not in steps",
+            NoLoad::NoRatedSpeed => "no motor rpm",
+        }
+    }
+}
+
+/// The rated slip of a plate's speed.
+fn rated_slip(rpm: f32) -> Result<f32, Rejected> {
+    slip::rated(rpm).ok_or_else(|| {
+        Rejected::new(
+            "rated_rpm",
+            rpm,
+            "is no rated speed of an induction motor",
+            "0.5 to 12 % below 750, 900, 1000, 1200, 1500, 1800, 3000 or 3600 rpm",
+        )
+    })
+}
+
+/// Gives every step the rated slip of the motor in it, where that runs on the mains.
+pub(super) fn slips(spec: &MachineSpec, drive: &mut Drive) -> Result<(), Rejected> {
+    let kind = spec.motor.as_ref().map(|m| m.kind);
+    let of_motor = match spec.motor.as_ref().and_then(|m| m.rated_rpm) {
+        // The plate of a motor on an inverter may say anything: nothing follows from it.
+        Some(rpm) if kind != Some(MotorKind::Inverter) => {
+            Some(rated_slip(rpm).map_err(|e| e.within("motor"))?)
+        }
+        _ => None,
+    };
+    let Drive::Stepped(steps) = drive else {
+        return Ok(());
+    };
+    for (i, (step, spec)) in steps.iter_mut().zip(&spec.steps).enumerate() {
+        step.rated_slip = match (spec.kw, spec.rated_rpm) {
+            (None, None) => of_motor,
+            // Each speed of a two-speed motor has a slip of its own.
+            (Some(_), None) => None,
+            (Some(_), Some(rpm)) => {
+                Some(rated_slip(rpm).map_err(|e| e.within(format_args!("step[{i}]")))?)
+            }
+            (None, Some(rpm)) => {
+                return Err(Rejected::new(
+                    "rated_rpm",
+                    rpm,
+                    "stands beside no power of its own",
+                    "only with kw in the same step; else rated_rpm of the motor",
+                )
+                .within(format_args!("step[{i}]")));
+            }
+        };
+    }
+    Ok(())
 }
 
 pub(super) fn motor(spec: &MachineSpec) -> Result<Option<Motor>, Rejected> {
@@ -77,6 +150,23 @@ pub(super) fn motor(spec: &MachineSpec) -> Result<Option<Motor>, Rejected> {
 
 /// What a motor can do at the spindle of its machine.
 impl Machine {
+    /// Whether the load can be told from the spindle's speed: an induction motor on the mains, fixed steps, and a rated speed
+    /// in the profile.
+    ///
+    /// # Errors
+    /// The reason why not.
+    pub fn tells_load(&self) -> Result<(), NoLoad> {
+        match (self.motor().map(|m| m.kind), self.drive()) {
+            (None, _) => Err(NoLoad::NoMotor),
+            (Some(MotorKind::Inverter), _) => Err(NoLoad::Drive),
+            (_, Drive::Variable(_)) => Err(NoLoad::NoSteps),
+            (_, Drive::Stepped(steps)) => match steps.iter().any(|s| s.rated_slip.is_some()) {
+                true => Ok(()),
+                false => Err(NoLoad::NoRatedSpeed),
+            },
+        }
+    }
+
     /// The torque, N m, that reaches the cut in the step or range of this label at `n`; `None` without a motor in the profile.
     pub fn torque_at(&self, label: &str, n: Rpm) -> Option<f32> {
         let motor = self.motor()?;

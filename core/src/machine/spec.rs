@@ -106,6 +106,9 @@ pub struct StepSpec {
     /// The motor's power in this step, kW, for a motor of two speeds; the motor's own where missing.
     #[cfg_attr(feature = "serde", serde(default))]
     pub kw: Option<f32>,
+    /// The motor's speed on its plate in a step that has a power of its own, rev/min; see [`MotorSpec::rated_rpm`].
+    #[cfg_attr(feature = "serde", serde(default))]
+    pub rated_rpm: Option<f32>,
 }
 
 /// One range of a variable drive, as written in a profile.
@@ -195,6 +198,10 @@ pub struct MotorSpec {
     /// Share of the power that reaches the cut; 0.75 where missing.
     #[cfg_attr(feature = "serde", serde(default))]
     pub efficiency: Option<f32>,
+    /// The motor's own speed on its plate, rev/min, at rated load: it tells the rated slip. For an induction motor on the
+    /// mains; without it nothing is said about the load. The synchronous speeds of its frequency are not meant.
+    #[cfg_attr(feature = "serde", serde(default))]
+    pub rated_rpm: Option<f32>,
 }
 
 /// How chuck or faceplate sit on the spindle.

@@ -26,16 +26,19 @@ pub enum Field {
     Holder,
     /// The operator's cap.
     Cap,
+    /// Whether the load is shown.
+    Load,
 }
 
 impl Field {
     /// The fields of the Choose page, top to bottom.
-    pub const CHOOSE: [Field; 5] = [
+    pub const CHOOSE: [Field; 6] = [
         Field::Operation,
         Field::Tool,
         Field::Holder,
         Field::Cap,
         Field::Coolant,
+        Field::Load,
     ];
 
     /// The field `detents` further on the Choose page; its ends stop.
@@ -53,6 +56,7 @@ impl Field {
             Field::Coolant => "fluid",
             Field::Holder => "held by",
             Field::Cap => "my cap",
+            Field::Load => "load",
         }
     }
 
@@ -80,6 +84,8 @@ impl Field {
                 setup.cap = Some(turned_cap(setup.cap, detents, machine, advice));
                 setup.cap_is_old = false;
             }
+            // Where it cannot be told the value says why, and stays.
+            Field::Load => setup.load = detents > 0 && machine.tells_load().is_ok(),
         }
     }
 
@@ -169,6 +175,11 @@ impl fmt::Display for Value<'_> {
                 }
                 .fmt(f),
             },
+            Field::Load => f.write_str(match (self.machine.tells_load(), setup.load) {
+                (Err(why), _) => why.words(),
+                (Ok(()), true) => "shown",
+                (Ok(()), false) => "off",
+            }),
         }
     }
 }

@@ -13,6 +13,7 @@ pub mod machining_time;
 pub mod power;
 pub mod removal_rate;
 pub mod roughness;
+pub mod slip;
 pub mod threading;
 pub mod tool_life;
 pub mod whirl;

@@ -11,8 +11,8 @@ use super::{View, WIDTH, write};
 use crate::error::text;
 use crate::panel::Field;
 
-const LINE: i32 = 10;
-const TOP: i32 = 12;
+const LINE: i32 = 9;
+const TOP: i32 = 10;
 const VALUE: i32 = 42;
 
 pub(super) fn draw<D: DrawTarget<Color = BinaryColor>>(

@@ -18,6 +18,7 @@ use heapless::String;
 use crate::advice::Advice;
 use crate::edge_account::EdgeAccount;
 use crate::error::text;
+use crate::load::Mark;
 use crate::machine::Machine;
 use crate::panel::{Notice, Page};
 use crate::sensor_setup::SensorSetup;
@@ -49,6 +50,8 @@ pub struct View<'a> {
     pub notice: Option<&'a Notice>,
     /// How much of the edge is used.
     pub edge: EdgeAccount,
+    /// How hard the motor works, where that is switched on and known.
+    pub load: Option<Mark>,
     /// How well the sensor works.
     pub sensor: Health,
     /// What is known about the pulses in a revolution.

@@ -4,6 +4,7 @@
 //!  mild steel     work 25 mm      material, and the diameter named for what it is
 //!   ___                 RIGHT     speed in digits 36 pixels high; the verdict in words
 //!  |   ...                        (reversed where it warns)
+//!  |   ...             [|| ] heavy how hard the motor works, where that is told
 //!  |___               set 280     the step to choose
 //!  ____|_______|__v____|_____     where the speed lies: slow, best and fast marked, each octave the same width
 //!  best 344: cutting speed        the best speed and what holds it
@@ -24,6 +25,7 @@ use heapless::String;
 use super::{View, WIDTH, digits, fitting, line, write};
 use crate::advice::{Excess, FAST_ABOVE, Pick, Shift};
 use crate::error::text;
+use crate::load::Mark;
 use crate::panel::Field;
 use crate::units::{Decimal, Rpm};
 use crate::verdict::Verdict;
@@ -48,7 +50,12 @@ pub(super) fn draw<D: DrawTarget<Color = BinaryColor>>(
 ) -> Result<(), D::Error> {
     head(view, target)?;
     speed(view, target)?;
-    verdict(view.verdict, target)?;
+    // A verdict of two lines leaves no room for it.
+    let mark = view.load.filter(|_| words(view.verdict).1.is_empty());
+    verdict(view.verdict, mark.is_some(), target)?;
+    if let Some(mark) = mark {
+        load(mark, ink(view.verdict), target)?;
+    }
     if let Some(setting) = view.advice.pick.setting() {
         set(setting.rpm, target)?;
     }
@@ -155,21 +162,20 @@ const fn warns(verdict: Verdict) -> bool {
 
 fn verdict<D: DrawTarget<Color = BinaryColor>>(
     verdict: Verdict,
+    above_load: bool,
     target: &mut D,
 ) -> Result<(), D::Error> {
     const FONT: &MonoFont<'_> = &FONT_6X13_BOLD;
     let (first, second) = words(verdict);
-    let ink = if warns(verdict) {
+    if warns(verdict) {
         let back = Rectangle::new(
             Point::new(COLUMN - 1, DIGITS_TOP),
-            Size::new(COLUMN_WIDTH + 1, 26),
+            Size::new(COLUMN_WIDTH + 1, if above_load { 28 } else { 26 }),
         );
         back.into_styled(PrimitiveStyle::with_fill(BinaryColor::On))
             .draw(target)?;
-        BinaryColor::Off
-    } else {
-        BinaryColor::On
-    };
+    }
+    let ink = ink(verdict);
     let middle = COLUMN + COLUMN_WIDTH as i32 / 2;
     if second.is_empty() {
         return write(
@@ -193,6 +199,41 @@ fn verdict<D: DrawTarget<Color = BinaryColor>>(
         second,
         FONT,
         Point::new(middle, DIGITS_TOP + 13),
+        Alignment::Center,
+        ink,
+        target,
+    )
+}
+
+/// What is written on the verdict's field.
+const fn ink(verdict: Verdict) -> BinaryColor {
+    if warns(verdict) {
+        BinaryColor::Off
+    } else {
+        BinaryColor::On
+    }
+}
+
+/// Three cells, filled as far as the motor works and lines where it does not, over the mark's word; below a verdict of one
+/// line.
+fn load<D: DrawTarget<Color = BinaryColor>>(
+    mark: Mark,
+    ink: BinaryColor,
+    target: &mut D,
+) -> Result<(), D::Error> {
+    const TOP: i32 = DIGITS_TOP + 18;
+    let middle = COLUMN + COLUMN_WIDTH as i32 / 2;
+    for (cell, from) in (0..).zip([Mark::Working, Mark::Heavy, Mark::Stalling]) {
+        let high = if mark >= from { 2 } else { 1 };
+        let at = Point::new(middle - 18 + 12 * cell, TOP + 3 - high);
+        Rectangle::new(at, Size::new(11, high as u32))
+            .into_styled(PrimitiveStyle::with_fill(ink))
+            .draw(target)?;
+    }
+    write(
+        mark.word(),
+        &FONT_4X6,
+        Point::new(middle, TOP + 4),
         Alignment::Center,
         ink,
         target,

@@ -30,6 +30,7 @@ impl WrittenSetup {
             holder,
             cap,
             cap_is_old: false,
+            load: false,
             details: Details::NONE,
             pulses,
         })
