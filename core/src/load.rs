@@ -199,7 +199,8 @@ impl Load {
                 self.turning(now, seconds, speed.get(), machine);
             }
             (Signal::Still, _) => {
-                self.leave(State::Unknown);
+                // What comes next is a run-up.
+                self.leave(State::Between);
                 self.run_up = true;
             }
             (Signal::Lost | Signal::Doubtful | Signal::Turning, _) => self.forget_run(),

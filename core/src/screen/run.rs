@@ -214,7 +214,7 @@ const fn ink(verdict: Verdict) -> BinaryColor {
     }
 }
 
-/// Three cells, filled as far as the motor works and lines where it does not, over the mark's word; below a verdict of one
+/// Three cells, bars as far as the motor works and dashes where it does not, over the mark's word; below a verdict of one
 /// line.
 fn load<D: DrawTarget<Color = BinaryColor>>(
     mark: Mark,
@@ -224,9 +224,13 @@ fn load<D: DrawTarget<Color = BinaryColor>>(
     const TOP: i32 = DIGITS_TOP + 18;
     let middle = COLUMN + COLUMN_WIDTH as i32 / 2;
     for (cell, from) in (0..).zip([Mark::Working, Mark::Heavy, Mark::Stalling]) {
-        let high = if mark >= from { 2 } else { 1 };
-        let at = Point::new(middle - 18 + 12 * cell, TOP + 3 - high);
-        Rectangle::new(at, Size::new(11, high as u32))
+        let at = Point::new(middle - 18 + 12 * cell, TOP + 1);
+        let (at, size) = if mark >= from {
+            (at, Size::new(11, 2))
+        } else {
+            (at + Point::new(4, 1), Size::new(3, 1))
+        };
+        Rectangle::new(at, size)
             .into_styled(PrimitiveStyle::with_fill(ink))
             .draw(target)?;
     }
