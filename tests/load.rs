@@ -498,7 +498,7 @@ fn a_poor_sensor_makes_no_load() {
 
 #[test]
 fn it_is_off_until_somebody_switches_it_on() {
-    assert!(!Setup::CAUTIOUS.load);
+    const { assert!(!Setup::CAUTIOUS.load) }
     let machine = machine("geared-lathe");
     let mut shop = Shop::new(&machine, bar(25.0), LatheSpec::default(), 2);
     shop.start(280.0);

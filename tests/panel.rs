@@ -180,10 +180,18 @@ fn on_the_choose_page_the_left_knob_picks_a_field_and_the_right_one_its_value() 
     hand.turn(Knob::Right, i8::MAX);
     let last = hand.machine.holders().len() - 1;
     assert_eq!(usize::from(hand.setup.holder), last);
-    hand.turn(Knob::Left, i8::MAX);
+    hand.turn(Knob::Left, 2);
     assert_eq!(hand.panel.page(), Page::Choose(Field::Coolant));
     hand.turn(Knob::Right, -1);
     assert_eq!(hand.setup.coolant, Coolant::Dry);
+    hand.turn(Knob::Left, i8::MAX);
+    assert_eq!(hand.panel.page(), Page::Choose(Field::Load));
+    hand.turn(Knob::Right, 3);
+    assert!(hand.setup.load);
+    hand.turn(Knob::Right, 1);
+    assert!(hand.setup.load, "the end stops");
+    hand.turn(Knob::Right, -1);
+    assert!(!hand.setup.load);
     hand.turn(Knob::Left, i8::MIN);
     assert_eq!(hand.panel.page(), Page::Choose(Field::Operation));
     // The page comes back with the field where it was.

@@ -212,6 +212,46 @@ fn every_line_of_a_shipped_profile_can_go_wrong_without_a_panic() {
     }
 }
 
+#[test]
+fn a_rated_speed_is_checked_and_a_two_speed_motor_has_two() {
+    let text = |kind: &str, motor: &str, step: &str| {
+        format!(
+            "name = \"A lathe\"\nkind = \"lathe\"\n[motor]\nkind = \"{kind}\"\nkw = 1.1\n{motor}\n\
+             [sensor]\npulses = 2\n[[step]]\nlabel = \"low\"\nrpm = 100\n{step}\n\
+             [[step]]\nlabel = \"high\"\nrpm = 200\n[[holder]]\nkind = \"collet\"\n"
+        )
+    };
+    for wrong in ["1500", "1499", "1300", "0", "-1440", "5000", "inf"] {
+        let motor = format!("rated_rpm = {wrong}");
+        let error = profile::parse(&text("mains", &motor, ""), "a profile").unwrap_err();
+        let error = error.to_string();
+        let named = ["motor.rated_rpm", wrong, "0.5 to 12 % below 750, 900"];
+        assert!(named.iter().all(|w| error.contains(w)), "{error}");
+        assert!(!error.contains('\n'), "{error}");
+    }
+    let stray = profile::parse(&text("mains", "", "rated_rpm = 1440"), "a profile").unwrap_err();
+    assert!(stray.to_string().contains("step[0].rated_rpm"), "{stray}");
+    let step = "kw = 0.7\nrated_rpm = 690";
+    let machine = profile::parse(&text("two-speed", "rated_rpm = 1440", step), "a profile");
+    let Drive::Stepped(steps) = machine.unwrap().drive().clone() else {
+        panic!("no steps");
+    };
+    let slips = steps.iter().map(|s| s.rated_slip.unwrap());
+    assert!(
+        slips
+            .zip([0.08, 0.04])
+            .all(|(s, want)| (s - want).abs() < 1e-6)
+    );
+    // Without its own, the slower speed has no bar, the faster one does.
+    let machine = profile::parse(
+        &text("two-speed", "rated_rpm = 1440", "kw = 0.7"),
+        "a profile",
+    );
+    let machine = machine.unwrap();
+    assert_eq!(machine.tells_load(), Ok(()));
+    assert!(matches!(machine.drive(), Drive::Stepped(s) if s[0].rated_slip.is_none()));
+}
+
 /// Numbers that people and accidents write.
 fn number() -> impl Strategy<Value = String> {
     prop_oneof![

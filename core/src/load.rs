@@ -50,7 +50,8 @@ const STEADY: f32 = 0.002;
 const SLOTS: usize = 4;
 const SLOT: Duration = Duration::from_millis(100);
 const SLOT_TURN: f32 = 1.0 / 3.0;
-/// What was known stays known while the speed changes for this long, or for so many turns: the calm speed needs that.
+/// The calm speed moves for this long after a change, s, or for so many turns, and swings a little beyond: what was known
+/// stays known, and what was found may still settle.
 const HOLD: f32 = 1.5;
 const HOLD_TURNS: f32 = 6.0;
 
@@ -110,8 +111,8 @@ enum State {
     Unknown,
     /// It speeds up, slows down, or has not been steady since.
     Between,
-    /// It turns free.
-    Free,
+    /// It turns free. Until `settled` the calm speed may swing back from the change that it came with, down to `lowest`.
+    Free { settled: Instant, lowest: f32 },
     /// It cuts. `free_at`: when it was last seen free; `None` where it has cut since it came up, as far as one can tell.
     Cutting {
         free_at: Option<Instant>,
@@ -134,6 +135,14 @@ impl InStep {
     fn load(&self, n: f32) -> f32 {
         let rated = self.rated_slip + BELT;
         slip::load(self.free, n, rated, FREE_SHARE * self.rated_slip).unwrap_or(0.0)
+    }
+
+    /// It turns free at this speed.
+    fn is_free(&mut self, now: Instant, n: f32, lowest: f32) -> State {
+        self.level = n;
+        self.free = n;
+        let settled = now + Duration::from_secs_f32(change_lasts(n));
+        State::Free { settled, lowest }
     }
 
     /// How far apart, as a share of the speed, loads of 0 and 1 are.
@@ -217,7 +226,7 @@ impl Load {
     pub fn mark(&self) -> Option<Mark> {
         match self.state {
             _ if self.lapsed => None,
-            State::Free => Some(Mark::Free),
+            State::Free { .. } => Some(Mark::Free),
             State::Cutting { mark, .. } => Some(mark),
             State::Unknown | State::Between => None,
         }
@@ -247,15 +256,20 @@ impl Load {
                 mark: held(mark, step.load(n)),
             },
             _ if !steady => return,
-            State::Unknown | State::Between => self.first(&mut step, n, learned),
-            State::Free => follow_free(&mut step, now, seconds, n, learned),
+            State::Unknown | State::Between => self.first(&mut step, now, n, learned),
+            State::Free { settled, lowest } if now < settled && n >= lowest => {
+                step.level = n;
+                step.free = n;
+                State::Free { settled, lowest }
+            }
+            State::Free { .. } => follow_free(&mut step, now, seconds, n, learned),
             State::Cutting { free_at, mark } => {
                 follow_cut(&mut step, now, seconds, n, free_at, mark)
             }
         };
         // Forgotten only where the spindle is free, or was never seen so since it came up: a long cut must not become free.
         let forgets = match state {
-            State::Free => true,
+            State::Free { settled, .. } => now >= settled,
             State::Cutting { free_at, .. } => free_at.is_none(),
             State::Unknown | State::Between => false,
         };
@@ -303,7 +317,7 @@ impl Load {
     }
 
     /// The first steady speed in a step.
-    fn first(&mut self, step: &mut InStep, n: f32, learned: f32) -> State {
+    fn first(&mut self, step: &mut InStep, now: Instant, n: f32, learned: f32) -> State {
         let is_new = learned == 0.0;
         if is_new && (!self.run_up || n < step.plate * LEAST_OF_PLATE) {
             return State::Unknown;
@@ -311,8 +325,7 @@ impl Load {
         self.run_up = false;
         step.level = n;
         if is_new || n >= learned * (1.0 - WANDER - change(step)) {
-            step.free = n;
-            return State::Free;
+            return step.is_free(now, n, n * (1.0 - WANDER));
         }
         step.free = learned;
         State::Cutting {
@@ -328,14 +341,13 @@ impl Load {
             low = low.min(slot);
             high = high.max(slot);
         }
-        let turn = 60.0 / n.max(1.0);
         if now >= self.next_slot {
             self.slots.rotate_left(1);
             if let Some(last) = self.slots.last_mut() {
                 *last = n;
             }
             self.filled = (self.filled + 1).min(SLOTS);
-            self.next_slot = now + SLOT.max(Duration::from_secs_f32(turn * SLOT_TURN));
+            self.next_slot = now + SLOT.max(Duration::from_secs_f32(turn_s(n) * SLOT_TURN));
         }
         let steady = self.filled == SLOTS && high - low <= STEADY * n;
         if steady {
@@ -343,7 +355,7 @@ impl Load {
             self.lapsed = false;
         } else {
             let since = *self.unsteady.get_or_insert(now);
-            self.lapsed |= now.since(since).secs_f32() > HOLD.max(HOLD_TURNS * turn);
+            self.lapsed |= now.since(since).secs_f32() > change_lasts(n);
         }
         steady
     }
@@ -382,6 +394,16 @@ fn found(steps: &[Step], n: f32, machine: &Machine) -> Option<Option<InStep>> {
     told.then_some(Some(step))
 }
 
+/// Time of a turn, s.
+fn turn_s(n: f32) -> f32 {
+    60.0 / n.max(1.0)
+}
+
+/// For how long, s, the calm speed moves after a change.
+fn change_lasts(n: f32) -> f32 {
+    HOLD.max(HOLD_TURNS * turn_s(n))
+}
+
 /// The least step of the speed, as a share of it, that is a cut.
 fn change(step: &InStep) -> f32 {
     STEP_OF_SPEED.max(STEP_OF_LOAD * step.span())
@@ -402,15 +424,17 @@ fn follow_free(step: &mut InStep, now: Instant, seconds: f32, n: f32, learned: f
             mark: Mark::of(step.load(n)),
         };
     }
-    let level = if n > step.level * (1.0 + change) {
+    if n > step.level * (1.0 + change) {
         // What was taken for free was a cut that has ended.
-        n
-    } else {
-        followed(step.level, n, seconds)
-    };
+        return step.is_free(now, n, (n + step.level) / 2.0);
+    }
+    let level = followed(step.level, n, seconds);
     step.level = level.max(learned * (1.0 - WANDER));
     step.free = step.level;
-    State::Free
+    State::Free {
+        settled: now,
+        lowest: 0.0,
+    }
 }
 
 fn follow_cut(
@@ -428,9 +452,8 @@ fn follow_cut(
     let ended = ENDED * step.span();
     let rose = n > step.level * (1.0 + change) && missing < ended + wandered;
     if rose || missing < ended {
-        step.level = n;
-        step.free = n;
-        return State::Free;
+        // Beyond half of the way back it is another cut.
+        return step.is_free(now, n, (n + step.level.min(n)) / 2.0);
     }
     let moved = (n / step.level - 1.0).abs() > change;
     step.level = if moved {

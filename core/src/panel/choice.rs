@@ -85,7 +85,10 @@ impl Field {
                 setup.cap_is_old = false;
             }
             // Where it cannot be told the value says why, and stays.
-            Field::Load => setup.load = detents > 0 && machine.tells_load().is_ok(),
+            Field::Load if detents != 0 => {
+                setup.load = detents > 0 && machine.tells_load().is_ok();
+            }
+            Field::Load => {}
         }
     }
 
