@@ -132,12 +132,15 @@ struct InStep {
 }
 
 impl InStep {
+    // Floats are calls on a core without them: inlining these would cost a kilobyte of flash and save no time.
+    #[inline(never)]
     fn load(&self, n: f32) -> f32 {
         let rated = self.rated_slip + BELT;
         slip::load(self.free, n, rated, FREE_SHARE * self.rated_slip).unwrap_or(0.0)
     }
 
     /// It turns free at this speed.
+    #[inline(never)]
     fn is_free(&mut self, now: Instant, n: f32, lowest: f32) -> State {
         self.level = n;
         self.free = n;
@@ -400,16 +403,19 @@ fn turn_s(n: f32) -> f32 {
 }
 
 /// For how long, s, the calm speed moves after a change.
+#[inline(never)]
 fn change_lasts(n: f32) -> f32 {
     HOLD.max(HOLD_TURNS * turn_s(n))
 }
 
 /// The least step of the speed, as a share of it, that is a cut.
+#[inline(never)]
 fn change(step: &InStep) -> f32 {
     STEP_OF_SPEED.max(STEP_OF_LOAD * step.span())
 }
 
 /// Moves `level` towards `n`, but no faster than the mains wander.
+#[inline(never)]
 fn followed(level: f32, n: f32, seconds: f32) -> f32 {
     let most = FOLLOW * seconds * level;
     level + (n - level).clamp(-most, most)
