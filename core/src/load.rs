@@ -44,12 +44,11 @@ const STEP_OF_SPEED: f32 = 0.0025;
 /// Nearer to the free speed than this, as a load, the cut has ended.
 const ENDED: f32 = 0.03;
 
-/// The speed is steady when it has stayed within this share for [`SLOTS`] slots.
-const STEADY: f32 = 0.002;
-/// Slots of a tenth of a second, or a third of a turn where that is longer.
-const SLOTS: usize = 4;
-const SLOT: Duration = Duration::from_millis(100);
-const SLOT_TURN: f32 = 1.0 / 3.0;
+/// The speed is steady when it has stayed within this share of a reference, which follows it as slowly as the mains wander,
+/// for this long, s, or for so many turns. Whoever looks a little earlier or later finds the same.
+const STEADY: f32 = 0.0015;
+const STEADY_FOR: f32 = 0.3;
+const STEADY_TURNS: f32 = 1.0;
 /// The calm speed moves for this long after a change, s, or for so many turns, and swings a little beyond: what was known
 /// stays known, and what was found may still settle.
 const HOLD: f32 = 1.5;
@@ -164,10 +163,9 @@ pub struct Load {
     /// The spindle was seen at rest, or at speeds out of the step's, since it was last steady.
     run_up: bool,
     looked: Instant,
-    /// The last speeds, oldest first in the order of writing, and how many there are.
-    slots: [f32; SLOTS],
-    filled: usize,
-    next_slot: Instant,
+    /// What the speed stays near to, rev/min, and since when.
+    reference: f32,
+    near_since: Instant,
     /// Since when the speed has not been steady.
     unsteady: Option<Instant>,
     /// It has been so for long.
@@ -182,9 +180,8 @@ impl Default for Load {
             step: None,
             run_up: false,
             looked: Instant::ZERO,
-            slots: [0.0; SLOTS],
-            filled: 0,
-            next_slot: Instant::ZERO,
+            reference: 0.0,
+            near_since: Instant::ZERO,
             unsteady: None,
             lapsed: false,
         }
@@ -247,7 +244,7 @@ impl Load {
         if !self.in_step(n, machine) {
             return;
         }
-        let steady = self.is_steady(now, n);
+        let steady = self.is_steady(now, seconds, n);
         let Some(mut step) = self.step else {
             return;
         };
@@ -338,21 +335,14 @@ impl Load {
     }
 
     /// Whether the speed has been steady of late.
-    fn is_steady(&mut self, now: Instant, n: f32) -> bool {
-        let (mut low, mut high) = (n, n);
-        for &slot in &self.slots {
-            low = low.min(slot);
-            high = high.max(slot);
+    fn is_steady(&mut self, now: Instant, seconds: f32, n: f32) -> bool {
+        self.reference = followed(self.reference, n, seconds);
+        if (n - self.reference).abs() > STEADY * n {
+            self.reference = n;
+            self.near_since = now;
         }
-        if now >= self.next_slot {
-            self.slots.rotate_left(1);
-            if let Some(last) = self.slots.last_mut() {
-                *last = n;
-            }
-            self.filled = (self.filled + 1).min(SLOTS);
-            self.next_slot = now + SLOT.max(Duration::from_secs_f32(turn_s(n) * SLOT_TURN));
-        }
-        let steady = self.filled == SLOTS && high - low <= STEADY * n;
+        let near = now.since(self.near_since).secs_f32();
+        let steady = near >= STEADY_FOR.max(STEADY_TURNS * turn_s(n));
         if steady {
             self.unsteady = None;
             self.lapsed = false;
@@ -366,7 +356,7 @@ impl Load {
     fn leave(&mut self, state: State) {
         self.state = state;
         self.step = None;
-        self.filled = 0;
+        self.reference = 0.0;
         self.unsteady = None;
         self.lapsed = false;
     }
