@@ -278,6 +278,8 @@ impl Instrument {
     }
 
     /// Everything that a page shows, as of the last poll.
+    // Inlined, so that whoever wants one thing of it does not pay for all.
+    #[inline(always)]
     pub fn view(&self) -> View<'_> {
         View {
             setup: &self.setup,
