@@ -338,6 +338,8 @@ impl Instrument {
         }
         if self.setup.pulses != before.pulses {
             self.tacho.configure(config(&self.setup, &self.machine));
+            // The free speeds that it has learned were counted with other pulses.
+            self.load = Load::default();
         }
         match wish {
             Some(Wish::Mute) => self.muted = true,
