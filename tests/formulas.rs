@@ -5,6 +5,7 @@
 use rimrate_core::advice::advise;
 use rimrate_core::machine::{ABOVE_PLATE, Drive};
 use rimrate_core::physics::cutting_speed::{spindle_speed, surface_speed_m_min};
+use rimrate_core::physics::slip;
 use rimrate_core::setup::{Diameter, Setup};
 use rimrate_core::tacho::{Config, Signal, Tacho};
 use rimrate_core::trade::{Coolant, Material, Operation, cutting_speed};
@@ -315,4 +316,50 @@ fn with_no_exact_step_the_next_slower_is_taken() {
         }
     }
     assert!(between > 5_000);
+}
+
+#[test]
+fn slip_refuses_what_is_no_motor() {
+    for n in [
+        0.0,
+        -1.0,
+        1500.0,
+        1499.0,
+        1200.0,
+        1300.0,
+        3600.0,
+        1e9,
+        f32::NAN,
+        f32::INFINITY,
+    ] {
+        assert_eq!(slip::rated(n), None, "{n}");
+    }
+    for (n, n_s) in [
+        (1440.0, 1500.0),
+        (1725.0, 1800.0),
+        (2850.0, 3000.0),
+        (3450.0, 3600.0),
+        (695.0, 750.0),
+        (1140.0, 1200.0),
+    ] {
+        let s = slip::rated(n).unwrap();
+        assert!((s - (n_s - n) / n_s).abs() < 1e-6, "{n}");
+    }
+    for (n_0, n, rated, free) in [
+        (0.0, 100.0, 0.04, 0.0),
+        (100.0, 0.0, 0.04, 0.0),
+        (100.0, 99.0, 0.04, 0.04),
+        (100.0, 99.0, 0.04, 0.05),
+        (f32::NAN, 99.0, 0.04, 0.0),
+        (100.0, f32::NAN, 0.04, 0.0),
+        (100.0, 99.0, f32::NAN, 0.0),
+        (f32::INFINITY, 99.0, 0.04, 0.0),
+    ] {
+        assert_eq!(
+            slip::load(n_0, n, rated, free),
+            None,
+            "{n_0} {n} {rated} {free}"
+        );
+    }
+    assert_eq!(slip::load(100.0, 101.0, 0.04, 0.0), Some(0.0));
 }

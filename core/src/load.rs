@@ -9,13 +9,13 @@
 //! in four coarse marks and never in watts.
 //!
 //! What it cannot tell:
-//! - a cut below about a tenth of the rated torque, or one that comes in over many seconds, from turning free;
+//! - from turning free, a cut of less than 0.15 of the rated torque (a tenth is seen nine times in ten; of a motor with a rated
+//!   slip of 1.3 % it takes 0.2), or one that comes in over many seconds;
 //! - a cut that gets lighter, down to what the mains may have wandered meanwhile, from its end; until the next start or cut;
 //! - anything while the speed changes: it follows by about a second, at slow steps by some turns;
 //! - the load in a step in which the spindle was not seen to run up since the box was switched on;
 //! - neighbouring steps nearer than about 1.15 : 1 from each other: no load in either;
-//! - a warm motor (more slip) or a slack belt from more load: by up to a third, one mark;
-//! - more than one mark of motors whose rated slip is below 2 %.
+//! - a warm motor, which slips more, or a slack belt from more load: by up to a third, one mark.
 
 use crate::machine::{ABOVE_PLATE, Drive, MAX_STEPS, Machine, Step};
 use crate::physics::slip;
@@ -31,8 +31,8 @@ const FREE_SHARE: f32 = 0.1;
 /// What belts give way between free running and rated load (common practice, no source: V-belts 0.5 to 1 %).
 const BELT: f32 = 0.005;
 
-/// The mains and the warmth move the free speed by at most this much, to and fro, while the box is on (common practice, no
-/// source: frequency by +-0.3 %, the same as the fastest that [`FOLLOW`] allows for in a few seconds).
+/// The mains move the free speed by at most this much, from one end of their wander to the other (common practice, no source:
+/// the frequency strays by 0.3 % each way).
 const WANDER: f32 = 0.006;
 /// The free speed is followed at this rate while free, a share in a second: faster than the mains wander, slower than a cut.
 const FOLLOW: f32 = 0.002;
