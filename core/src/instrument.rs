@@ -27,6 +27,9 @@ const LOOK: Duration = Duration::from_millis(20);
 /// else this often; edges and knobs come as events of their own.
 const LOOK_AT_REST: Duration = Duration::from_millis(500);
 
+/// The edge's life runs on in such steps: a life lasts minutes, and Taylor's law costs a power.
+const COUNT_EDGE: Duration = Duration::from_millis(200);
+
 /// Something that happened.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub enum Event<'a> {
@@ -68,7 +71,7 @@ pub struct Instrument {
     reading: Reading,
     edge: EdgeAccount,
     load: Load,
-    /// When the reading was looked at last.
+    /// When the edge was counted last.
     looked: Instant,
     verdict: Verdict,
     verdict_since: Instant,
@@ -117,9 +120,10 @@ impl Instrument {
             setup.holder = 0;
         }
         setup.load &= machine.tells_load().is_ok();
-        let tacho = Tacho::new(config(&setup, &machine));
-        let advice = advise(&setup, &machine);
+        // Built where it stays, as far as the compiler can: it is kilobytes.
         Instrument {
+            tacho: Tacho::new(config(&setup, &machine)),
+            advice: advise(&setup, &machine),
             reading: Reading::NOTHING,
             edge: EdgeAccount::default(),
             load: Load::default(),
@@ -134,49 +138,43 @@ impl Instrument {
             unsaved_since: None,
             machine,
             setup,
-            advice,
-            tacho,
         }
     }
 
     /// Takes an event. O(1) for knobs, O(1) for each edge.
     pub fn handle(&mut self, now: Instant, event: Event<'_>) {
-        let before = self.setup;
-        let wish = match event {
+        match event {
             Event::Edges(edges) => {
                 self.sensor_setup.edges(edges);
                 edges.iter().for_each(|&edge| self.tacho.push(edge));
-                return;
             }
             Event::CaptureLost => {
                 self.sensor_setup.edges_lost();
                 self.tacho.capture_lost();
-                return;
             }
-            Event::Turn(knob, detents) => {
-                let (panel, bench) = self.bench();
+            Event::Turn(knob, detents) => self.at_panel(now, |panel, bench| {
                 panel.turn(now, knob, detents, bench);
                 None
-            }
-            Event::Press(knob) => {
-                self.panel.press(now, knob);
+            }),
+            Event::Press(knob) => self.at_panel(now, |panel, _| {
+                panel.press(now, knob);
                 None
-            }
+            }),
             Event::Release(knob) => {
-                let (panel, bench) = self.bench();
-                panel.release(now, knob, bench)
+                self.at_panel(now, |panel, bench| panel.release(now, knob, bench))
             }
-        };
-        self.after_panel(now, before, wish);
+        }
+    }
+
+    /// Whether the spindle's speed is changing: then a poll should not wait long after a pulse.
+    pub fn is_urgent(&self) -> bool {
+        self.tacho.is_changing()
     }
 
     /// Lets time pass up to `now` and says what is to be done. Bounded work: one look at each step of the machine when the
     /// setup has changed.
     pub fn poll(&mut self, now: Instant) -> Poll {
-        let before = self.setup;
-        let (panel, bench) = self.bench();
-        let wish = panel.settle(now, bench);
-        self.after_panel(now, before, wish);
+        self.at_panel(now, |panel, bench| panel.settle(now, bench));
 
         if matches!(self.panel.page(), Page::TenTurns | Page::PlateSpeed) {
             self.sensor_setup.look(now, self.tacho.last_pulse());
@@ -278,8 +276,6 @@ impl Instrument {
     }
 
     /// Everything that a page shows, as of the last poll.
-    // Inlined, so that whoever wants one thing of it does not pay for all.
-    #[inline(always)]
     pub fn view(&self) -> View<'_> {
         View {
             setup: &self.setup,
@@ -301,6 +297,14 @@ impl Instrument {
         self.load.mark().filter(|_| shown)
     }
 
+    /// The reading as of the last poll.
+    pub fn reading(&self) -> &Reading {
+        &self.reading
+    }
+    /// The verdict as of the last poll.
+    pub fn verdict(&self) -> Verdict {
+        self.verdict
+    }
     /// What the sensor gave that was no pulse, by kind.
     pub fn rejected(&self) -> Rejected {
         self.tacho.rejected()
@@ -308,7 +312,11 @@ impl Instrument {
 
     /// Counts the time since the last look against the edge: only while cutting, where the load tells that.
     fn count_edge(&mut self, now: Instant) {
-        let dt = now.since(core::mem::replace(&mut self.looked, now));
+        let dt = now.since(self.looked);
+        if dt < COUNT_EDGE {
+            return;
+        }
+        self.looked = now;
         let turning = self.reading.signal == Signal::Turning;
         if let (true, Some(n), Some(edge)) = (turning, self.reading.speed, &self.advice.cut.edge) {
             let v = surface_speed_m_min(n, self.setup.diameter);
@@ -317,7 +325,9 @@ impl Instrument {
         }
     }
 
-    fn bench(&mut self) -> (&mut Panel, Bench<'_>) {
+    /// Lets the panel act on the setup, and does what follows from that.
+    fn at_panel(&mut self, now: Instant, act: impl FnOnce(&mut Panel, Bench<'_>) -> Option<Wish>) {
+        let before = self.setup;
         let bench = Bench {
             setup: &mut self.setup,
             machine: &self.machine,
@@ -325,14 +335,17 @@ impl Instrument {
             running: self.reading.is_running(),
             sensor: &mut self.sensor_setup,
         };
-        (&mut self.panel, bench)
+        let wish = act(&mut self.panel, bench);
+        self.after_panel(now, &before, wish);
     }
 
-    fn after_panel(&mut self, now: Instant, before: Setup, wish: Option<Wish>) {
+    /// A function of its own, so that the advice's frame is not on the stack for every event.
+    #[inline(never)]
+    fn after_panel(&mut self, now: Instant, before: &Setup, wish: Option<Wish>) {
         if self.setup.load != before.load {
             self.load.forget_run();
         }
-        if self.setup != before {
+        if self.setup != *before {
             self.advice = advise(&self.setup, &self.machine);
             self.unsaved_since = Some(now);
         }

@@ -130,9 +130,9 @@ impl Rig for Desk {
         self.outputs
     }
     fn verdict(&self) -> Verdict {
-        self.instrument.view().verdict
+        self.instrument.verdict()
     }
     fn reading(&self) -> Reading {
-        *self.instrument.view().reading
+        *self.instrument.reading()
     }
 }

@@ -5,6 +5,7 @@
 //! are exact. The limits leave slack for real regressions only.
 
 use rimrate_core::panel::Knob;
+use rimrate_core::time::EdgeKind;
 use rimrate_core::verdict::Verdict;
 use rimrate_sim::rig::{Rig, Touch};
 
@@ -91,11 +92,10 @@ fn budget_of_time_awake() {
     );
     // 5,000 pulses/s: everything that is not there at rest, shared out over the pulses.
     let (fast, _) = awake(5000.0, 60);
-    // The goal is 2,500, and it is not reached: this limit only tells when it gets worse.
     within(
-        "cycles per pulse, all-in, at 5000 pulses/s (goal 2500)",
+        "cycles per pulse, all-in, at 5000 pulses/s",
         (fast - rest) / 5000.0,
-        4800.0,
+        2500.0,
         "cycles",
     );
 }
@@ -174,39 +174,47 @@ fn budget_of_a_partial_flush() {
     );
 }
 
-/// From the edge that completes the second interval at a dangerous speed to the lamp, while a picture is drawn and a knob
-/// turns; several phases against the owner's beat.
+/// From the edge that completes the second interval at too high a speed to the lamp, while a picture is drawn and a knob
+/// turns; several phases against the owner's beat. Nobody's spindle becomes three times as fast at once: it is the hardest case.
 #[test]
 fn budget_of_the_over_speed_latency() {
-    let mut worst: f64 = 0.0;
-    for phase in 0..8_u64 {
-        let mut board = wide_board(2, 25.0);
-        let start = board.now() + 3_000_000;
-        let jump = start + 2_000_000_000 + phase * 700_000;
-        let mut edges = spin(300.0, 2, start, jump);
-        // The last pulse before the jump begins the first interval at the new speed.
-        let last = edges
-            .iter()
-            .rev()
-            .find(|e| e.kind == rimrate_core::time::EdgeKind::Fall)
-            .expect("turns")
-            .at
-            .nanos();
-        edges.retain(|e| e.at.nanos() <= last);
-        let fast = spin(9000.0, 2, last, last + 500_000_000);
-        let second = last + 2 * (60e9 / 9000.0 / 2.0_f64).round() as u64;
-        edges.extend_from_slice(&fast[1..]);
-        board.edges(&edges);
-        board.run_until(last - 40_000_000);
-        board.touch(Touch::Turn(Knob::Right, 6));
-        board.run_until(last + 300_000_000);
-        assert_eq!(board.verdict(), Verdict::Danger);
-        let lamp = board
-            .changes
-            .iter()
-            .find(|c| c.what == "over" && c.value == 1 && c.at > last)
-            .expect("lights");
-        worst = worst.max((lamp.at as f64 - second as f64) / 1e6);
+    for pulses in [1, 2, 6, 60] {
+        let worst = (0..6_u64)
+            .map(|phase| over_speed_latency(pulses, phase * 1_700_000))
+            .fold(f64::MIN, f64::max);
+        let what = format!("over-speed to lamp, {pulses} pulses, worst of 6");
+        within(&what, worst, 20.0, "ms");
     }
-    within("over-speed to lamp, worst of 8", worst, 20.0, "ms");
+}
+
+fn over_speed_latency(pulses: u32, phase: u64) -> f64 {
+    let (slow, fast) = (300.0, 1000.0);
+    let mut board = wide_board(pulses, 25.0);
+    let start = board.now() + 3_000_000 + phase;
+    let mut edges = spin(slow, pulses, start, start + 2_000_000_000);
+    // The last pulse at the old speed begins the first interval at the new one.
+    let last = edges.iter().rev().find(|e| e.kind == EdgeKind::Fall);
+    let last = last.expect("turns").at.nanos();
+    edges.retain(|e| e.at.nanos() <= last);
+    edges.extend_from_slice(&spin(fast, pulses, last, last + 500_000_000)[1..]);
+    board.edges(&edges);
+    let second = last + (2.0 * 60e9 / fast / f64::from(pulses)).round() as u64;
+    // A picture is drawn for every detent; there and back, they leave the advice as it was.
+    board.run_until(second - 60_000_000);
+    for detents in [1, -1, 1, -1] {
+        board.touch(Touch::Turn(Knob::Right, detents));
+        board.run_until(board.now() + 25_000_000);
+    }
+    board.run_until(second + 300_000_000);
+    assert_eq!(board.verdict(), Verdict::Fast);
+    let mut lit = board
+        .changes
+        .iter()
+        .filter(|c| c.what == "over" && c.at > start);
+    let lamp = lit.next().expect("lights");
+    assert!(
+        lamp.value == 1 && lamp.at > last,
+        "it lights for the speed alone"
+    );
+    (lamp.at as f64 - second as f64) / 1e6
 }

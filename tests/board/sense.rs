@@ -102,7 +102,7 @@ fn no_edge_is_lost_at_the_limit() {
     assert!(reading.contains(&format!("calm {rpm}")), "{reading}");
 }
 
-/// The capture's count wraps 5 s after every start, and the chip's timer passes 2^32 us (71.6 min) at the same moment.
+/// The capture's count wraps with its first tick and every 51.5 s; the chip's timer passes 2^32 us (71.6 min) in the middle.
 #[test]
 fn speed_is_right_across_both_wraps() {
     let rpm = 640.0;
@@ -135,6 +135,28 @@ fn speed_is_right_across_both_wraps() {
         0
     );
     assert_eq!(board.count("lost"), 0);
+}
+
+/// A silence longer than the count's whole range (51.5 s) leaves no doubt about the time of the pulses after it; the next
+/// wrap comes in the middle of them.
+#[test]
+fn speed_is_right_after_a_long_silence_and_across_the_next_wrap() {
+    let mut board = wide_board(2, 25.0);
+    let first = board.now() + 3_000_000;
+    board.edges(&spin(640.0, 2, first, first + 500_000_000));
+    board.run_until(101_000_000_000);
+    assert_eq!(board.count("edges"), 22);
+    // 103 s are two ranges.
+    board.edges(&spin(320.0, 2, 101_500_000_000, 104_500_000_000));
+    board.run_until(102_900_000_000);
+    let before = board.reading().speed.expect("is turning").get();
+    board.run_until(104_400_000_000);
+    let after = board.reading().speed.expect("is turning").get();
+    for speed in [before, after] {
+        assert!((f64::from(speed) / 320.0 - 1.0).abs() <= STEADY, "{speed}");
+    }
+    assert_eq!(board.count("lost"), 0);
+    assert!(board.resets.is_empty());
 }
 
 /// The DMA's first count ends in the middle of a run, as it does every 56 minutes at the limit.

@@ -8,7 +8,7 @@
 
 use heapless::Vec;
 
-use crate::time::{Duration, Edge, EdgeKind, Instant};
+use crate::time::{Edge, EdgeKind, Instant};
 
 /// A gap below this joins: a tenth of the passage. A toothed wheel may be low for up to nine tenths of its pitch.
 fn joining(passage: u32) -> u32 {
@@ -31,16 +31,16 @@ const NARROW_IS_USUAL: u8 = 6;
 const PARKED: u32 = 1_000_000_000;
 /// The input's electrical limit, pulses a second,
 pub(super) const HIGHEST_RATE: f32 = 20_000.0;
-/// as a period, with a tenth for jitter. Never derived from the machine's top speed: a runaway must be seen.
-pub(super) const SHORTEST_PERIOD: Duration = Duration::from_micros(45);
+/// as a period, ns, with a tenth for jitter. Never derived from the machine's top speed: a runaway must be seen.
+const SHORTEST_PERIOD: u32 = 45_000;
 
 /// One passage of a magnet.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub(super) struct Pulse {
     /// Its first fall.
     pub(super) at: Instant,
-    /// From its first fall to its last rise as known when it was reported.
-    pub(super) width: Duration,
+    /// From its first fall to its last rise as known when it was reported, ns.
+    pub(super) width: u32,
 }
 
 /// What was not counted as a pulse, by kind.
@@ -74,48 +74,63 @@ pub struct Rejected {
 struct Passage {
     first: Instant,
     last_rise: Instant,
+    /// From the one to the other, ns.
+    width: u32,
     /// How long the line was low in it, ns: what noise adds to that is little.
     low: u32,
     reported: bool,
 }
 
-impl Passage {
-    fn width(&self) -> u32 {
-        short(self.last_rise.since(self.first))
-    }
-}
-
 /// Pieces of a passage whose falls are remembered.
 const BEGINS: usize = 6;
-/// In ns; whatever is longer than four seconds is only that: 32 bits are what the chip works in.
-fn short(time: Duration) -> u32 {
-    u32::try_from(time.nanos()).unwrap_or(u32::MAX)
+/// Time from `earlier` to `later`, ns; whatever is longer than four seconds is only that: 32 bits are what the chip works in.
+pub(super) fn short(later: Instant, earlier: Instant) -> u32 {
+    u32::try_from(later.nanos().wrapping_sub(earlier.nanos())).unwrap_or(u32::MAX)
 }
 
-#[derive(Clone, Debug, Default)]
+/// Stands for what has never been: far before the clock's start, for [`short`] wraps.
+const LONG_AGO: Instant = Instant::from_nanos(1 << 63);
+
+#[derive(Clone, Debug)]
 pub(super) struct Gate {
-    last_edge: Option<Instant>,
+    last_edge: Instant,
     /// When the line fell, while it is low.
     low_since: Option<Instant>,
     passage: Option<Passage>,
-    /// Falls of its pieces until it was reported, the first and the last ones: any of them may be its beginning, and what
-    /// came before noise.
+    /// Where there are several: falls of its pieces until it was reported, the first and the last ones. Any of them may be its
+    /// beginning, and what came before noise.
     begins: Vec<Instant, BEGINS>,
     /// First fall of the last reported pulse.
-    reported_at: Option<Instant>,
+    reported_at: Instant,
     /// Fall of the piece that proved it wide enough: what came before may have been noise.
-    proven_at: Option<Instant>,
+    proven_at: Instant,
     /// Width of the last passage and the gap behind it, ns; zero where nothing is known.
     usual: u32,
     usual_gap: u32,
     /// First fall of the last passage or sliver that is over.
-    closed_at: Option<Instant>,
+    closed_at: Instant,
     /// Slivers in a row that a faster spindle could have made.
     narrow: u8,
     pub(super) rejected: Rejected,
 }
 
 impl Gate {
+    pub(super) fn new() -> Self {
+        Gate {
+            last_edge: Instant::ZERO,
+            low_since: None,
+            passage: None,
+            begins: Vec::new(),
+            reported_at: LONG_AGO,
+            proven_at: LONG_AGO,
+            usual: 0,
+            usual_gap: 0,
+            closed_at: LONG_AGO,
+            narrow: 0,
+            rejected: Rejected::default(),
+        }
+    }
+
     /// Forgets the usual width: after a standstill the next passages may have any.
     pub(super) fn forget_width(&mut self) {
         self.usual = 0;
@@ -126,47 +141,47 @@ impl Gate {
     pub(super) fn forget(&mut self) {
         *self = Gate {
             rejected: self.rejected,
-            ..Gate::default()
+            ..Gate::new()
         };
     }
 
     /// When the pulse that began at `at` certainly had begun.
     pub(super) fn proven(&self, at: Instant) -> Instant {
-        match self.proven_at {
-            Some(proven) if self.reported_at == Some(at) => proven,
-            _ => at,
+        if self.reported_at == at {
+            self.proven_at
+        } else {
+            at
         }
     }
 
     /// When a pulse began that may be under way at `now` but is not proven yet.
     pub(super) fn under_way(&self, now: Instant) -> Option<Instant> {
         let begun = self.passage.filter(|p| {
-            let pause = self.low_since.unwrap_or(now).since(p.last_rise);
-            !p.reported && short(pause) < joining(self.usual)
+            // A rise may be later than the time asked about.
+            let pause = self.low_since.unwrap_or(now).since(p.last_rise).nanos();
+            !p.reported && pause < u64::from(joining(self.usual))
         });
         begun.map(|p| p.first).or(self.low_since)
     }
 
     /// Takes one edge; O(1).
     pub(super) fn push(&mut self, edge: Edge) -> Option<Pulse> {
-        if self.last_edge.is_some_and(|last| edge.at < last) {
+        if edge.at < self.last_edge {
             self.rejected.disordered += 1;
             return None;
         }
-        self.last_edge = Some(edge.at);
-        match (edge.kind, self.low_since.take()) {
+        self.last_edge = edge.at;
+        match (edge.kind, self.low_since) {
             (EdgeKind::Fall, None) => {
                 self.low_since = Some(edge.at);
                 None
             }
-            (EdgeKind::Rise, Some(fell)) => self.low(fell, edge.at),
-            // The edge between these two was lost: the longer low, or the longer high, is the safer guess.
-            (EdgeKind::Fall, Some(fell)) => {
-                self.rejected.disordered += 1;
-                self.low_since = Some(fell);
-                None
+            (EdgeKind::Rise, Some(fell)) => {
+                self.low_since = None;
+                self.low(fell, edge.at)
             }
-            (EdgeKind::Rise, None) => {
+            // The edge between these two was lost: the longer low, or the longer high, is the safer guess.
+            (EdgeKind::Fall, Some(_)) | (EdgeKind::Rise, None) => {
                 self.rejected.disordered += 1;
                 None
             }
@@ -175,103 +190,111 @@ impl Gate {
 
     /// One stretch of low, from `fell` to `rose`.
     fn low(&mut self, fell: Instant, rose: Instant) -> Option<Pulse> {
-        let piece = short(rose.since(fell));
-        let joins = self
-            .passage
-            .as_ref()
-            .is_some_and(|p| self.joins(p, fell, piece));
-        if joins {
-            self.rejected.joined += 1;
-        } else {
-            self.close(fell);
-            self.begins.clear();
-        }
-        let new = Passage {
+        let piece = short(rose, fell);
+        let mut passage = Passage {
             first: fell,
             last_rise: rose,
-            low: 0,
+            width: piece,
+            low: piece,
             reported: false,
         };
-        let passage = self.passage.get_or_insert(new);
-        passage.last_rise = rose;
-        passage.low = passage.low.saturating_add(piece);
-        if passage.reported {
+        let before = self.passage.as_ref();
+        // Nothing is before the first one, and that is long ago.
+        let gap = before.map_or(u32::MAX, |p| short(fell, p.last_rise));
+        let widest = before.map_or(0, |p| p.width).max(piece).max(self.usual);
+        // What nearly every gap is: neither share in `joins` is more than a quarter.
+        let apart = gap >= widest / KNOWN_JOIN_SHARE;
+        if apart || !self.joins(&mut passage) {
+            self.close(gap);
+            self.begins.clear();
+        }
+        let is_new = !passage.reported && passage.low >= self.usual / SLIVER_SHARE;
+        passage.reported |= is_new;
+        let (first, width) = (passage.first, passage.width);
+        self.passage = Some(passage);
+        if !is_new {
             return None;
         }
-        let (first, width) = (passage.first, passage.width());
-        let wide_enough = passage.low >= self.usual / SLIVER_SHARE;
-        passage.reported = wide_enough;
-        self.began(fell);
-        if !wide_enough {
-            return None;
-        }
-        let before = self.reported_at;
-        if before.is_some_and(|last| first.since(last) < SHORTEST_PERIOD) {
+        if short(first, self.reported_at) < SHORTEST_PERIOD {
             self.rejected.too_close += 1;
             return None;
         }
-        self.reported_at = Some(first);
-        self.proven_at = Some(fell);
-        Some(Pulse {
-            at: first,
-            width: Duration::from_nanos(u64::from(width)),
-        })
+        self.reported_at = first;
+        self.proven_at = fell;
+        Some(Pulse { at: first, width })
     }
 
-    fn began(&mut self, fell: Instant) {
-        if self.begins.is_full() {
-            self.begins.remove(1);
-        }
-        // Room was just made.
-        let _ = self.begins.push(fell);
-    }
-
-    /// Where the pulse that was just reported may have begun, earliest first.
+    /// Where the pulse that was just reported may have begun, earliest first, where it came in pieces.
     pub(super) fn begins(&self) -> &[Instant] {
         &self.begins
     }
 
-    /// Whether a piece that fell at `fell` belongs to the passage before it: by a gap that is short against the passage, or
+    /// Makes a piece a part of the passage before it, if it belongs there: by a gap that is short against the passage, or
     /// short against both a passage and a gap as they have been.
-    fn joins(&self, p: &Passage, fell: Instant, piece: u32) -> bool {
-        let (gap, width) = (short(fell.since(p.last_rise)), p.width());
-        // What nearly every gap is: the shares below are far from it.
-        if gap >= piece.max(width).max(self.usual) {
+    #[cold]
+    fn joins(&mut self, piece: &mut Passage) -> bool {
+        let Some(p) = &self.passage else {
             return false;
-        }
+        };
+        let gap = short(piece.first, p.last_rise);
         let begun = if p.reported { 0 } else { self.usual };
         // A magnet that was parked at the sensor, or a short circuit, is no passage: against it every gap is short.
         let passing = |width: u32| if width > PARKED { 0 } else { width };
         // All gaps together are shorter than what is low, or far shorter than a passage as they have been: else the passages
         // of a spindle that has become much faster would be one.
-        let low = passing(piece).max(passing(p.low));
-        let gaps = short(fell.since(p.first)).saturating_sub(p.low);
-        (gaps < low || gaps < begun / GAPS_SHARE)
-            && (gap < joining(passing(piece).max(passing(width)).max(begun))
-                || gap < self.usual.min(self.usual_gap) / KNOWN_JOIN_SHARE)
+        let low = passing(piece.low).max(passing(p.low));
+        let gaps = short(piece.first, p.first).saturating_sub(p.low);
+        let passage = passing(piece.width).max(passing(p.width)).max(begun);
+        let joins = (gaps < low || gaps < begun / GAPS_SHARE)
+            && (gap < joining(passage) || gap < self.usual.min(self.usual_gap) / KNOWN_JOIN_SHARE);
+        if !joins {
+            return false;
+        }
+        self.rejected.joined += 1;
+        if !p.reported {
+            if self.begins.is_full() {
+                self.begins.remove(1);
+            }
+            // There is room for both.
+            if self.begins.is_empty() {
+                let _ = self.begins.push(p.first);
+            }
+            let _ = self.begins.push(piece.first);
+        }
+        piece.first = p.first;
+        piece.width = short(piece.last_rise, p.first);
+        piece.low = piece.low.saturating_add(p.low);
+        piece.reported = p.reported;
+        true
     }
 
-    /// The passage or sliver, if there is one, is over: the next low, from `next` on, is not part of it.
-    fn close(&mut self, next: Instant) {
-        let Some(passage) = self.passage.take() else {
+    /// The passage or sliver, if there is one, is over, and has a gap of so many ns behind it.
+    fn close(&mut self, gap: u32) {
+        let Some(passage) = &self.passage else {
             return;
         };
-        let width = passage.width();
-        let before = self.closed_at.replace(passage.first);
-        if passage.reported {
-            self.narrow = 0;
-            self.usual = if width > PARKED { 0 } else { width };
-            // Where pulses are missing, or the spindle slows down, the gap is longer than it will be: it follows slowly.
-            let gap = short(next.since(passage.last_rise));
-            self.usual_gap = match self.usual_gap {
-                0 => gap,
-                known => gap.min(known.saturating_add(known / 8)),
-            };
-            return;
+        let (before, width) = (self.closed_at, passage.width);
+        self.closed_at = passage.first;
+        if !passage.reported {
+            return self.sliver(before);
         }
+        self.narrow = 0;
+        self.usual = if width > PARKED { 0 } else { width };
+        // Where pulses are missing, or the spindle slows down, the gap is longer than it will be: it follows slowly.
+        self.usual_gap = match self.usual_gap {
+            0 => gap,
+            known => gap.min(known.saturating_add(known / 8)),
+        };
+    }
+
+    /// The passage was a sliver; `before` is when the one before it began.
+    #[cold]
+    fn sliver(&mut self, before: Instant) {
         self.rejected.slivers += 1;
-        let spacing = before.map_or(u32::MAX, |before| short(passage.first.since(before)));
-        let could_turn = width >= spacing / THINNEST;
+        let Some(passage) = &self.passage else {
+            return;
+        };
+        let could_turn = passage.width >= short(passage.first, before) / THINNEST;
         self.narrow = if could_turn { self.narrow + 1 } else { 0 };
         if self.narrow >= NARROW_IS_USUAL {
             self.forget_width();

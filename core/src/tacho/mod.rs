@@ -14,7 +14,7 @@ mod track;
 
 use core::num::NonZeroU16;
 
-use heapless::Deque;
+use heapless::HistoryBuf;
 
 use crate::time::{Duration, Edge, Instant};
 use crate::units::Rpm;
@@ -22,7 +22,7 @@ use crate::units::Rpm;
 pub use gate::Rejected;
 pub use signal::Signal;
 
-use gate::{Gate, HIGHEST_RATE, Pulse};
+use gate::{Gate, HIGHEST_RATE, Pulse, short};
 use hold::Hold;
 use track::{Span, Track};
 
@@ -110,18 +110,18 @@ pub struct Tacho {
     track: Track,
     state: State,
     /// The last pulses, oldest first: a start must agree with itself.
-    latest: Deque<Pulse, START_PULSES>,
+    latest: HistoryBuf<Pulse, START_PULSES>,
     counted: u32,
     /// How many pulses in a row were too wide for a spindle that turns.
     too_wide: u8,
     /// Low share of the pulse spacing as seen while turning; it tells turning from a parked magnet that shakes.
     low_share: Option<f32>,
     /// The widest low share at which a spindle may turn, in 1/[`SHARE`].
-    widest: u64,
-    /// A silence shorter than this never means anything.
-    patience: Duration,
-    /// Until then it means nothing.
-    quiet_until: Instant,
+    widest: u32,
+    /// A silence shorter than this, ns, never means anything;
+    patience: u32,
+    /// it lasts since then.
+    quiet_from: Instant,
     hold: Hold,
 }
 
@@ -214,35 +214,31 @@ const MOMENT: Duration = Duration::from_millis(150);
 const JITTER: Duration = Duration::from_micros(5);
 /// So many standard deviations of the jitter as measured may stand between two pulses.
 const JITTERS: f32 = 8.0;
-/// What shares are counted in.
-const SHARE: u64 = 1 << 10;
-/// A low share below 1/16 is plausible wherever more is.
-const SURELY: u64 = 16;
-/// Silences are cut here where they are multiplied, ns (18 minutes).
-const LONG_SILENCE: u64 = 1 << 40;
+/// What shares are counted in: an interval has 175 of its 256th parts at least, and so many of them fit 32 bits.
+const SHARE: u32 = 1 << 8;
 
 impl Tacho {
     /// Starts without knowing anything of the spindle.
     ///
-    /// Inlined where it is used: as a function of its own it would move a tacho once more, over the stack.
-    #[inline(always)]
+    /// A function of its own, like its parts': so the stack holds the kilobytes of one of them at a time.
+    #[inline(never)]
     pub fn new(config: Config) -> Self {
         let mut tacho = Tacho {
-            gate: Gate::default(),
+            gate: Gate::new(),
             track: Track::new(config.pulses.get(), config.brake_rpm_per_s),
             state: State::Still,
-            latest: Deque::new(),
+            latest: HistoryBuf::new(),
             counted: 0,
             too_wide: 0,
             low_share: None,
             widest: 0,
-            patience: Duration::ZERO,
-            quiet_until: Instant::ZERO,
+            patience: 0,
+            quiet_from: Instant::ZERO,
             hold: Hold::default(),
             config,
         };
-        tacho.widest = (tacho.widest_share() * SHARE as f32) as u64;
-        tacho.patience = tacho.longest_gap().min(signal::LOST_AFTER);
+        tacho.widest = (tacho.widest_share() * SHARE as f32) as u32;
+        tacho.patience = tacho.patience();
         tacho
     }
 
@@ -263,7 +259,7 @@ impl Tacho {
 
     /// Pulses counted up to the last one, and when that came.
     pub fn last_pulse(&self) -> Option<(u32, Instant)> {
-        self.latest.back().map(|pulse| (self.counted, pulse.at))
+        self.latest.recent().map(|pulse| (self.counted, pulse.at))
     }
 
     /// What was not counted as a pulse, by kind.
@@ -285,55 +281,58 @@ impl Tacho {
     }
 
     /// Takes one edge of the sensor's line. O(1), but for the end of a turn, which is O(pulses).
+    ///
+    /// What nearly every edge takes stands in the way of nothing else: the rest is in functions of its own.
+    #[inline(never)]
     pub fn push(&mut self, edge: Edge) {
         self.settle(edge.at);
-        let Some(mut pulse) = self.gate.push(edge) else {
-            return;
-        };
-        if let (State::Turning, begins @ [_, _, ..]) = (self.state, self.gate.begins()) {
-            pulse.at = self.track.likeliest(begins);
+        if let Some(pulse) = self.gate.push(edge) {
+            self.pulse(pulse);
+        }
+    }
+
+    fn pulse(&mut self, mut pulse: Pulse) {
+        let turning = matches!(self.state, State::Turning);
+        if turning && !self.gate.begins().is_empty() {
+            pulse.at = self.track.likeliest(self.gate.begins());
         }
         self.counted = self.counted.wrapping_add(1);
-        let interval = self
-            .latest
-            .back()
-            .map_or(LONG_SILENCE, |before| pulse.at.since(before.at).nanos());
-        // Share by share, without a division, and mostly without a product.
-        let (width, interval) = (pulse.width.nanos(), interval.min(LONG_SILENCE));
-        let surely = width <= interval / SURELY && self.widest >= SHARE / SURELY;
-        let plausible = surely || width * SHARE <= interval * self.widest;
+        let plausible = self.is_plausible(&pulse);
         self.too_wide = if plausible {
             0
         } else {
             self.too_wide.saturating_add(1)
         };
-        if self.latest.is_full() {
-            self.latest.pop_front();
-        }
-        // Room was just made.
-        let _ = self.latest.push_back(pulse);
+        self.latest.write(pulse);
         // It is looked at anew when an edge comes.
-        self.quiet_until = pulse.at;
+        self.quiet_from = pulse.at;
+        if !turning || self.too_wide >= TOO_WIDE_IS_STILL {
+            return self.at_rest(&pulse, plausible);
+        }
+        if self.track.push(pulse, plausible, &mut self.gate.rejected) {
+            self.learn();
+        }
+        self.quiet_from = self.track.last().unwrap_or(pulse.at);
+    }
+
+    /// Takes a pulse of a spindle that stands, or of which nobody knows better.
+    #[cold]
+    fn at_rest(&mut self, pulse: &Pulse, plausible: bool) {
         match self.state {
-            State::Turning if self.too_wide < TOO_WIDE_IS_STILL => {
-                self.track.push(pulse, plausible, &mut self.gate.rejected);
-                if let Some(share) = self.track.take_low_share() {
-                    self.learn(share);
-                }
-                self.quiet_until = self.track.last().unwrap_or(pulse.at) + self.patience;
-            }
             State::Turning => {
                 self.gate.rejected.shaken += u32::from(TOO_WIDE_IS_STILL);
                 self.stand_still();
             }
             State::Still if plausible && self.track.goes_on(pulse.at) => {
                 self.state = State::Turning;
-                self.track.push(pulse, plausible, &mut self.gate.rejected);
+                if self.track.push(*pulse, plausible, &mut self.gate.rejected) {
+                    self.learn();
+                }
             }
             State::Still | State::Lost(_) => {
                 if let Some(count) = self.starts() {
                     let skip = self.latest.len().saturating_sub(count);
-                    let pulses = self.latest.iter().skip(skip);
+                    let pulses = self.latest.oldest_ordered().skip(skip);
                     self.track.start(pulses, &mut self.gate.rejected);
                     self.state = State::Turning;
                 } else if !plausible {
@@ -343,9 +342,31 @@ impl Tacho {
         }
     }
 
+    /// Whether a spindle that turns may pass so wide a magnet so long after the one before. Share by share, without a division.
+    fn is_plausible(&self, pulse: &Pulse) -> bool {
+        let Some(before) = self.latest.recent() else {
+            return true;
+        };
+        match short(pulse.at, before.at) {
+            // Too long for 32 bits.
+            u32::MAX => {
+                let interval = pulse.at.since(before.at).nanos() / u64::from(SHARE);
+                u64::from(pulse.width) <= interval.saturating_mul(u64::from(self.widest))
+            }
+            interval => pulse.width <= interval / SHARE * self.widest,
+        }
+    }
+
+    /// Whether the speed may be another one than at the last reading: a pulse did not keep the rhythm since, or the last turns
+    /// do not agree.
+    pub fn is_changing(&self) -> bool {
+        self.track.irregular || !self.track.calm.is_steady()
+    }
+
     /// What is known at `now`; `explains` says whether the machine can turn at a speed at all.
     pub fn reading(&mut self, now: Instant, explains: impl Fn(Rpm) -> bool) -> Reading {
         self.settle(now);
+        self.track.irregular = false;
         let mut reading = match self.state {
             State::Still => Reading::NOTHING,
             State::Lost(_) => Reading {
@@ -424,9 +445,15 @@ impl Tacho {
 
     /// Lets silence up to `now` change the state.
     fn settle(&mut self, now: Instant) {
-        if self.state != State::Turning || now < self.quiet_until {
-            return;
+        let turning = matches!(self.state, State::Turning);
+        if turning && short(now, self.quiet_from) >= self.patience {
+            self.look(now);
         }
+    }
+
+    /// Whether a silence up to `now`, which is long enough to mean something, is a loss or a stop.
+    #[cold]
+    fn look(&mut self, now: Instant) {
         if let Some(at) = self.lost_at(now) {
             if now >= at {
                 self.state = State::Lost(self.track.quick().unwrap_or(0.0));
@@ -571,14 +598,14 @@ impl Tacho {
         let alike = |a: f32, b: f32, factor: f32| a < factor * b && b < factor * a;
         // A spindle that starts does not slow down: longer intervals come from placement alone.
         let longer = start.interval.min(LONGER);
-        let mut pulses = self.latest.iter().skip(skip);
+        let mut pulses = self.latest.oldest_ordered().skip(skip);
         let Some(mut before) = pulses.next() else {
             return false;
         };
         let mut last: Option<(f32, f32)> = None;
         for pulse in pulses {
             let interval = pulse.at.since(before.at).secs_f32();
-            let share = before.width.secs_f32() / interval;
+            let share = before.width as f32 * 1e-9 / interval;
             let as_last = last.is_none_or(|(i, s)| {
                 interval < longer * i
                     && i < start.interval * interval
@@ -594,13 +621,24 @@ impl Tacho {
     }
 
     fn starting_speed(&self, count: usize) -> Option<f32> {
-        let from = self.latest.get(self.latest.len().checked_sub(count)?)?;
-        let span = self.latest.back()?.at.since(from.at).secs_f32();
+        let skip = self.latest.len().checked_sub(count)?;
+        let from = self.latest.oldest_ordered().nth(skip)?;
+        let span = self.latest.recent()?.at.since(from.at).secs_f32();
         (span > 0.0).then(|| (count - 1) as f32 / f32::from(self.config.pulses.get()) / span)
     }
 
+    /// Less than four seconds: the longest silence before `lost` is said.
+    fn patience(&self) -> u32 {
+        let least = self.longest_gap().min(signal::LOST_AFTER);
+        u32::try_from(least.nanos()).unwrap_or(u32::MAX)
+    }
+
     /// Learns the low share slowly, from turns of a steady spindle.
-    fn learn(&mut self, share: f32) {
+    #[cold]
+    fn learn(&mut self) {
+        let Some(share) = self.track.take_low_share() else {
+            return;
+        };
         // One odd pulse must not spoil what the next start will be judged by.
         self.low_share = Some(match self.low_share {
             Some(known) => {
@@ -611,7 +649,7 @@ impl Tacho {
             }
             None => share,
         });
-        self.widest = (self.widest_share() * SHARE as f32) as u64;
-        self.patience = self.longest_gap().min(signal::LOST_AFTER);
+        self.widest = (self.widest_share() * SHARE as f32) as u32;
+        self.patience = self.patience();
     }
 }

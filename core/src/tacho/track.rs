@@ -9,7 +9,7 @@ use heapless::Vec;
 
 use super::UNKNOWN_GAP;
 use super::calm::Calm;
-use super::gate::{Pulse, Rejected};
+use super::gate::{Pulse, Rejected, short};
 use super::marks::Marks;
 use super::placement::{Placement, REV, rev};
 use crate::time::{Duration, Instant};
@@ -18,6 +18,10 @@ use crate::time::{Duration, Instant};
 const LEARN_SHIFT: u32 = 8;
 /// And not more often than this, once it is known.
 const LEARN_EVERY: Duration = Duration::from_millis(100);
+/// An interval that differs from the last one by less than 2^-3 is in time where the gaps differ by less than 2^-4:
+/// between 0.82 and 1.2 of what is expected.
+const PACE_SHIFT: u32 = 3;
+const GAP_SHIFT: u32 = 4;
 /// A pulse earlier than this share of the expected spacing is suspected to be an extra one.
 const EARLY: f32 = 0.75;
 /// A pulse after a suspected one that keeps the rhythm so closely, in spacings, makes that one an extra one.
@@ -25,8 +29,8 @@ const IN_TIME: f32 = 0.08;
 /// The second of two early intervals may be shorter than the first by so much: a spindle that is clutched in.
 const FASTER: f32 = 0.55;
 const ALIKE: f32 = 1.3;
-/// Noise is shorter than this (common practice, no source); with few magnets passages are longer.
-const NOISE: Duration = Duration::from_micros(200);
+/// Noise is shorter than this, ns (common practice, no source); with few magnets passages are longer.
+const NOISE: u32 = 200_000;
 const MANY: u32 = 8;
 /// A pulse later than this share may mean that pulses are missing.
 const LATE: f32 = 1.5;
@@ -83,6 +87,12 @@ pub(super) struct Track {
     /// Time between the two newest pulses, ns, and their angle, 1/[`REV`]; per magnet where some were missing between.
     interval: u64,
     gap: u32,
+    /// The newest pulse and the interval again, for what nearly every pulse is: one that keeps the rhythm. The interval is
+    /// zero where that takes a closer look: while a pulse is suspected, too.
+    newest: Instant,
+    pace: u32,
+    /// A pulse since the last reading took that closer look.
+    pub(super) irregular: bool,
     /// When the last two turns began, that is ended at magnet 0, and how many pulses have come since without one missing.
     turns_began: [Instant; 2],
     unbroken: u32,
@@ -115,12 +125,13 @@ pub(super) struct Track {
     /// One bit a magnet, newest lowest, set where its pulse was missing.
     missed: u32,
     /// Width of the newest pulse, ns.
-    width: u64,
+    width: u32,
     pub(super) calm: Calm,
     pub(super) placement: Placement,
 }
 
 impl Track {
+    #[inline(never)]
     pub(super) fn new(pulses: u16, brake_rpm_per_s: f32) -> Self {
         let pulses = u32::from(pulses.max(1));
         Track {
@@ -130,6 +141,9 @@ impl Track {
             magnet: 0,
             interval: 0,
             gap: REV / pulses,
+            newest: Instant::ZERO,
+            pace: 0,
+            irregular: false,
             turns_began: [Instant::ZERO; 2],
             unbroken: 0,
             since_missing: RESTLESS,
@@ -162,6 +176,7 @@ impl Track {
         self.marks.clear();
         self.magnet = 0;
         self.interval = 0;
+        self.pace = 0;
         self.unbroken = 0;
         self.since_missing = RESTLESS;
         self.suspect = None;
@@ -324,17 +339,31 @@ impl Track {
     ///
     /// An early pulse with an implausible width never makes the spindle faster: a magnet parked at its switching point
     /// shakes.
-    pub(super) fn push(&mut self, pulse: Pulse, plausible: bool, rejected: &mut Rejected) {
+    ///
+    /// True at the end of a turn that there is something to learn from.
+    #[inline(never)]
+    pub(super) fn push(&mut self, pulse: Pulse, plausible: bool, rejected: &mut Rejected) -> bool {
+        // The rhythm kept, as nearly every pulse keeps it.
+        let interval = short(pulse.at, self.newest);
+        let in_time = interval.abs_diff(self.pace) <= self.pace >> PACE_SHIFT;
+        if in_time && self.pace > 0 {
+            self.late = 0;
+            self.before = None;
+            self.next(pulse, rejected);
+        } else {
+            self.irregular(pulse, plausible, rejected);
+        }
+        self.low_share.is_some()
+    }
+
+    /// Takes a pulse that takes a closer look.
+    #[cold]
+    fn irregular(&mut self, pulse: Pulse, plausible: bool, rejected: &mut Rejected) {
+        self.irregular = true;
         let Some(newest) = self.last().filter(|_| self.interval > 0) else {
             return self.accept(pulse, 1, rejected);
         };
-        // The rhythm kept, as nearly every pulse keeps it: 3/4 and 3/2 of what is expected, without a division.
-        let interval = pulse.at.since(newest).nanos().min(LONGEST);
-        let come = interval * u64::from(self.gap);
-        let due = self.interval * u64::from(self.placement.gap(self.next_magnet()));
-        let thrice = due + (due << 1);
-        let in_time = come << 2 >= thrice && come << 1 < thrice;
-        if in_time && self.suspect.is_none() {
+        if self.is_due(pulse.at, newest) && self.suspect.is_none() {
             self.late = 0;
             self.before = None;
             self.accept(pulse, 1, rejected);
@@ -343,8 +372,18 @@ impl Track {
         }
     }
 
+    /// Whether a pulse comes at 3/4 to 3/2 of what is expected, without a division.
+    fn is_due(&self, at: Instant, newest: Instant) -> bool {
+        let interval = at.since(newest).nanos().min(LONGEST);
+        let come = interval * u64::from(self.gap);
+        let due = self.interval * u64::from(self.placement.gap(self.next_magnet()));
+        let thrice = due + (due << 1);
+        come << 2 >= thrice && come << 1 < thrice
+    }
+
     /// A piece of noise just before a passage looks like its beginning: of all the pieces' falls the one that a steady spindle
     /// makes one expect, and else the first.
+    #[cold]
     pub(super) fn likeliest(&self, begins: &[Instant]) -> Instant {
         let first = begins.first().copied().unwrap_or(Instant::ZERO);
         let turn_ago = self.marks.back(self.pulses - 1);
@@ -399,7 +438,7 @@ impl Track {
         }
         let Some(suspect) = self.suspect.take() else {
             return match steps < EARLY {
-                true if plausible => self.suspect = Some(pulse),
+                true if plausible => self.suspect(pulse),
                 true => self.extra(pulse, newest, rejected),
                 false => self.accept_late(pulse, steps, expected, rejected),
             };
@@ -422,17 +461,26 @@ impl Track {
         }
         self.extra(suspect, newest, rejected);
         if steps < EARLY {
-            self.suspect = Some(pulse);
+            self.suspect(pulse);
         } else {
             self.extra_in_a_row = u8::from(halves_alike);
             self.accept_late(pulse, steps, expected, rejected);
         }
     }
 
+    fn suspect(&mut self, pulse: Pulse) {
+        self.suspect = Some(pulse);
+        self.pace = 0;
+    }
+
     /// Drops a pulse between two expected ones; close behind a passage it is that passage, doubled.
     fn extra(&self, pulse: Pulse, newest: Instant, rejected: &mut Rejected) {
-        let behind = pulse.at.since(newest).nanos().saturating_sub(self.width);
-        if behind < self.width / 2 {
+        let behind = pulse
+            .at
+            .since(newest)
+            .nanos()
+            .saturating_sub(u64::from(self.width));
+        if behind < u64::from(self.width / 2) {
             rejected.doubled += 1;
         } else {
             rejected.extra += 1;
@@ -452,7 +500,7 @@ impl Track {
         let braked = (self.brake * interval).min(speed);
         let least = interval * (speed - braked / 2.0) * self.pulses as f32;
         let spacing = Duration::from_secs_f32(expected).nanos();
-        if self.width > spacing - spacing / 4 {
+        if u64::from(self.width) > spacing - spacing / 4 {
             rejected.merged = rejected.merged.saturating_add(1);
         }
         if self.late == 0 {
@@ -485,7 +533,8 @@ impl Track {
         rejected.missing = rejected.missing.saturating_sub(missing);
         self.missed = self.missed.checked_shr(missing + count).unwrap_or(0) << count;
         if let Some((newest, before)) = self.last().zip(self.marks.back(1)) {
-            self.paced(newest.since(before).nanos(), 1);
+            self.newest = before;
+            self.paced(newest);
         }
         self.begin_anew();
     }
@@ -527,45 +576,70 @@ impl Track {
         self.missed = self.missed.checked_shl(missing).unwrap_or(0) | ones;
     }
 
-    /// The pace of the newest pulse: its interval over `steps` magnets.
-    fn paced(&mut self, interval: u64, steps: u32) {
-        let interval = interval.clamp(1, LONGEST);
-        if steps == 1 {
-            self.interval = interval;
-            self.gap = self.placement.gap(self.magnet);
-        } else {
-            self.interval = (interval / u64::from(steps)).max(1);
-            let angle = self.placement.angle(self.magnet, steps, 0);
-            self.gap = ((angle * REV as f32 / steps as f32) as u32).max(1);
-        }
+    /// The pace of a pulse as the next magnet's.
+    fn paced(&mut self, at: Instant) {
+        let interval = at.nanos().wrapping_sub(self.newest.nanos());
+        self.newest = at;
+        self.interval = interval.clamp(1, LONGEST);
+        self.gap = self.placement.gap(self.magnet);
+        let next = self.placement.gap(self.next_magnet());
+        let alike = next.abs_diff(self.gap) <= self.gap >> GAP_SHIFT;
+        self.pace = u32::try_from(interval).ok().filter(|_| alike).unwrap_or(0);
+    }
+
+    /// The pace of the newest pulse where it came `steps` magnets after the one before.
+    fn paced_over(&mut self, interval: u64, steps: u32) {
+        self.pace = 0;
+        self.interval = (interval.clamp(1, LONGEST) / u64::from(steps)).max(1);
+        let angle = self.placement.angle(self.magnet, steps, 0);
+        self.gap = ((angle * REV as f32 / steps as f32) as u32).max(1);
     }
 
     /// Takes a pulse as the `steps`-th magnet after the newest one.
+    #[cold]
     fn accept(&mut self, pulse: Pulse, steps: u32, rejected: &mut Rejected) {
         let before = self.last();
-        self.width = pulse.width.nanos();
         if steps > 1 {
             self.skip(pulse.at, steps - 1, rejected);
         }
+        self.next(pulse, rejected);
+        match before {
+            Some(before) if steps > 1 => self.paced_over(pulse.at.since(before).nanos(), steps),
+            Some(_) => {}
+            // There is no interval before the first pulse.
+            None => {
+                self.interval = 0;
+                self.pace = 0;
+            }
+        }
+        if self.suspect.is_some() {
+            self.pace = 0;
+        }
+    }
+
+    /// Takes a pulse as the next magnet's.
+    fn next(&mut self, pulse: Pulse, rejected: &mut Rejected) {
         self.missed <<= 1;
         self.magnet = self.next_magnet();
+        self.paced(pulse.at);
         self.marks.push(pulse.at);
-        if let Some(before) = before {
-            self.paced(pulse.at.since(before).nanos(), steps);
-        }
-        self.low = self.low.wrapping_add(self.width);
+        self.width = pulse.width;
+        self.low = self.low.wrapping_add(u64::from(pulse.width));
         self.unbroken = self.unbroken.saturating_add(1);
         self.since_missing = self.since_missing.saturating_add(1);
         let mut at = pulse.at;
         if let Some(turn_ago) = self.marks.back(self.pulses) {
-            let off = self.calm.check(at.since(turn_ago).nanos(), turn_ago);
+            let turn = at.nanos().wrapping_sub(turn_ago.nanos());
+            let off = self.calm.check(turn, turn_ago);
             if self.is_noise(off) {
                 rejected.noise = rejected.noise.saturating_add(1);
                 at = turn_ago + Duration::from_nanos(self.calm.period().unwrap_or(0));
             }
         }
         self.calm.pulse(at);
-        self.turned(pulse.at);
+        if self.magnet == 0 {
+            self.turned(pulse.at);
+        }
     }
 
     /// Whether a steady spindle's newest pulse, so far off its time, was moved by noise: it alone is. A spindle that changes
@@ -611,10 +685,8 @@ impl Track {
     }
 
     /// At the end of a turn that was steady like the one before it: learns from it. O(pulses).
+    #[cold]
     fn turned(&mut self, at: Instant) {
-        if self.magnet != 0 {
-            return;
-        }
         let low = core::mem::take(&mut self.low);
         let [first, second] = self.turns_began;
         self.turns_began = [second, at];

@@ -20,13 +20,16 @@ use crate::board::{Capture, Signs};
 use crate::fault::{Cause, Task, at_work, check_in};
 use crate::{notice, profile};
 
-/// Edges are fetched this often while they come. With a picture being drawn in between an over-speed is shown within 6 ms.
+/// Edges are fetched this often while they come. With a picture being drawn in between an over-speed is shown within 5 ms.
 const FETCH: Duration = Duration::from_millis(2);
-/// The instrument is asked what to do at most this often on account of edges alone: a reading costs as much as twenty edges.
+/// The instrument is asked what to do at most this often on account of edges that keep their rhythm: a reading costs as much
+/// as twenty edges.
 const ASK: Duration = Duration::from_millis(10);
 /// Edges are fetched this often when none has come for [`REST`].
 const FETCH_AT_REST: Duration = Duration::from_millis(10);
 const REST: Duration = Duration::from_secs(1);
+/// The board's own lamp changes in this beat.
+const BEAT: Duration = Duration::from_millis(125);
 /// The reading is logged this often while the spindle may turn, the counts when they have changed.
 const LOG: Duration = Duration::from_millis(250);
 const LOG_COUNTS: Duration = Duration::from_secs(1);
@@ -63,12 +66,15 @@ pub(crate) struct Owner {
     stuck: bool,
     next_poll: Now,
     last_poll: Now,
+    last_fetch: Now,
     last_edge: Now,
     verdict: Verdict,
     signal: Signal,
     next_log: Now,
     next_count: Now,
     counted: Counts,
+    beat: u32,
+    next_beat: Now,
 }
 
 /// What is worth a line in the log when it changes.
@@ -93,16 +99,12 @@ impl Owner {
     pub(crate) fn new(capture: Capture, signs: Signs, cause: Cause) -> Self {
         let (machine, chosen) = profile::load();
         let pulses = chosen.map_or(machine.pulses(), |setup| setup.pulses_on(machine).get());
-        defmt::info!(
-            "machine {=str} pulses {=u16}",
-            machine.name(),
-            pulses.get()
-        );
+        defmt::info!("machine {=str} pulses {=u16}", machine.name(), pulses.get());
         let sense = Sense::new(capture, pulses.get());
         let start = Now::now();
         let instrument = start_instrument(machine, chosen);
         Owner {
-            verdict: instrument.view().verdict,
+            verdict: instrument.verdict(),
             instrument,
             sense,
             signs,
@@ -112,23 +114,25 @@ impl Owner {
             stuck: false,
             next_poll: start,
             last_poll: start,
+            last_fetch: start,
             last_edge: start,
             signal: Signal::Still,
             next_log: start,
             next_count: start + LOG_COUNTS,
             counted: Counts::default(),
+            beat: 0,
+            next_beat: start,
         }
     }
 
     /// When to step again, at the latest.
     fn wake_at(&self) -> Now {
-        let now = Now::now();
-        let fetch = if now - self.last_edge < REST {
+        let fetch = if self.last_fetch - self.last_edge < REST {
             FETCH
         } else {
             FETCH_AT_REST
         };
-        self.next_poll.min(now + fetch)
+        self.next_poll.min(self.last_fetch + fetch)
     }
 
     /// Fetches edges, and where anything is due lets the instrument say what to do. Says whether more edges wait.
@@ -139,15 +143,19 @@ impl Owner {
             .sense
             .take(|edges| instrument.handle(Instant::ZERO, Event::Edges(edges)));
         let time = Now::now();
+        self.last_fetch = time;
         if taken.lost {
             defmt::error!("capture: window lost");
             instrument.handle(Instant::ZERO, Event::CaptureLost);
         }
         if taken.edges > 0 {
             self.last_edge = time;
-        }
-        if taken.edges > 0 {
-            self.next_poll = self.next_poll.min(self.last_poll + ASK);
+            let ask = if instrument.is_urgent() {
+                time
+            } else {
+                self.last_poll + ASK
+            };
+            self.next_poll = self.next_poll.min(ask);
         }
         if time >= self.next_poll || self.repaint {
             self.poll(taken.until);
@@ -187,9 +195,9 @@ impl Owner {
         // Rounded up: woken before its time the instrument would only say so again.
         self.next_poll = Now::from_micros(poll.next.nanos().div_ceil(1000));
         let mut outputs = poll.outputs;
-        let verdict = self.instrument.view().verdict;
+        let verdict = self.instrument.verdict();
         if !self.display && is_dark(verdict) {
-            outputs = without_display(outputs, Now::now());
+            outputs = without_display(outputs, self.beat);
         }
         outputs.relay &= matches!(self.cause, Cause::Power);
         self.signs.show(outputs);
@@ -216,21 +224,25 @@ impl Owner {
 
     /// The board's own lamp: short and seldom while all is well.
     fn status(&mut self, time: Now) {
+        if time < self.next_beat {
+            return;
+        }
+        self.next_beat = time + BEAT;
+        self.beat = self.beat.wrapping_add(1);
         let well = self.display && !self.stuck && matches!(self.cause, Cause::Power);
-        let tick = time.as_millis() / 125;
         self.signs.status(if well {
-            tick.is_multiple_of(16)
+            self.beat.is_multiple_of(16)
         } else {
-            tick.is_multiple_of(2)
+            self.beat.is_multiple_of(2)
         });
         if !self.display {
             // The lamp code has the same beat.
-            self.next_poll = self.next_poll.min(Now::from_millis((tick + 1) * 125));
+            self.next_poll = time;
         }
     }
 
     fn log(&mut self, time: Now) {
-        let reading = self.instrument.view().reading;
+        let reading = self.instrument.reading();
         if time >= self.next_log || reading.signal != self.signal {
             self.next_log = time + LOG;
             if reading.is_running() || reading.signal != self.signal {
@@ -289,8 +301,8 @@ fn is_dark(verdict: Verdict) -> bool {
 
 /// The lamp code for a display that does not answer: over and under together, two short flashes every two seconds. Warnings
 /// come first: it shows only where the lamps have nothing of their own to say.
-fn without_display(outputs: Outputs, time: Now) -> Outputs {
-    let on = matches!(time.as_millis() / 125 % 16, 0 | 2);
+fn without_display(outputs: Outputs, beat: u32) -> Outputs {
+    let on = matches!(beat % 16, 0 | 2);
     Outputs {
         over: on,
         under: on,

@@ -2,7 +2,7 @@
 
 use embassy_time::{Duration, Instant as Now};
 use heapless::Vec;
-use rimrate_core::time::{Edge, Instant};
+use rimrate_core::time::{Edge, EdgeKind, Instant};
 
 use crate::board::Capture;
 
@@ -10,20 +10,61 @@ use crate::board::Capture;
 const BATCH: usize = 16;
 /// A step ends with the batch in which this time runs out; a picture may be due after it, and both stay below 5 ms.
 const STEP: Duration = Duration::from_micros(1000);
-const MASK: u32 = (1 << Capture::BITS) - 1;
-/// The count is taken to begin this long before it wraps, so that every power-up passes the wrap (51.5 s apart
-/// otherwise) and no build can get by without it.
-const FIRST: u64 = (1 << Capture::BITS) - 5 * 1_000_000_000 / Capture::TICK_NS;
+/// In a silence the anchor goes on in such steps: a quarter of the count's range,
+const STRIDE: u32 = 1 << 30;
+const STRIDE_NS: u64 = STRIDE as u64 * HALF_TICK_NS as u64;
+/// and stays behind by more than this, ns: every edge that has not been handed on yet is later.
+const BEHIND_NS: u64 = 2_000_000_000;
+/// A word holds the count above its lowest bit, so that words count half ticks and wrap as the count does.
+const HALF_TICK_NS: u32 = {
+    assert!(Capture::BITS == 31 && Capture::TICK_NS.is_multiple_of(2));
+    Capture::TICK_NS as u32 / 2
+};
 
 /// Time as the instrument means it.
 pub(crate) fn now() -> Instant {
     Instant::from_nanos(Now::now().as_micros() * 1000)
 }
 
+/// A count whose time is known: that of the last edge, or a later one in a silence. The count passes all of its range in
+/// 51.5 s, so from an anchor on that is younger than half of that every edge has one time only. Timer and PIO run from the
+/// same crystal, so that no error adds up.
+struct Anchor {
+    /// As a word has it, without the edge's kind; it counts down from 0, so that it wraps with the first tick.
+    count: u32,
+    ns: u64,
+}
+
+impl Anchor {
+    /// Follows the timer through a silence.
+    fn follow(&mut self, now_ns: u64) {
+        while now_ns.saturating_sub(self.ns) > STRIDE_NS + BEHIND_NS {
+            self.count = self.count.wrapping_sub(STRIDE);
+            self.ns += STRIDE_NS;
+        }
+    }
+
+    /// The time of the next edge, which is not earlier than the one before, ns.
+    fn advance(&mut self, count: u32) -> u64 {
+        let half_ticks = self.count.wrapping_sub(count);
+        if half_ticks <= u32::MAX / HALF_TICK_NS {
+            // Up to 4.3 s: the chip has no longer product.
+            self.ns += u64::from(half_ticks * HALF_TICK_NS);
+        } else if half_ticks <= u32::MAX / 2 {
+            self.ns += u64::from(half_ticks) * u64::from(HALF_TICK_NS);
+        } else {
+            // Earlier by a count or two, as a fall is that comes with a rise.
+            return self.ns;
+        }
+        self.count = count;
+        self.ns
+    }
+}
+
 /// Takes the edges.
 pub(crate) struct Sense {
     capture: Capture,
-    started: u64,
+    anchor: Anchor,
     wiring: Wiring,
     edges: u32,
     lost: u32,
@@ -47,7 +88,10 @@ impl Sense {
     /// `pulses` in a revolution: with many, as with teeth, both ways of wiring are alike.
     pub(crate) fn new(capture: Capture, pulses: u16) -> Self {
         Sense {
-            started: capture.started().as_micros() * 1000,
+            anchor: Anchor {
+                count: 0,
+                ns: capture.started().as_micros() * 1000,
+            },
             wiring: Wiring::new(pulses),
             edges: 0,
             lost: 0,
@@ -63,9 +107,8 @@ impl Sense {
     /// Hands on what has come, oldest first.
     pub(crate) fn take(&mut self, mut hand_on: impl FnMut(&[Edge])) -> Taken {
         let until = now();
+        self.anchor.follow(until.nanos());
         let fresh = self.capture.look();
-        // After the look, so that no edge is later than now.
-        let now = Now::now().as_micros() * 1000;
         if fresh.lost {
             self.lost = self.lost.wrapping_add(1);
             self.wiring.forget();
@@ -77,22 +120,25 @@ impl Sense {
                 ..Taken::default()
             };
         }
-        // Timer and PIO run from the same crystal: the timer tells which turn of the 31-bit count it is, the count the rest.
-        let ticks_now = FIRST + now.saturating_sub(self.started) / Capture::TICK_NS;
         let enough = Now::now() + STEP;
         let mut left = fresh.count;
         let mut reached = Instant::ZERO;
         let mut batch: Vec<Edge, BATCH> = Vec::new();
         while left > 0 {
             batch.clear();
-            while left > 0 && !batch.is_full() {
-                let edge = self.edge(ticks_now, &mut reached);
-                if let Some(edge) = edge {
-                    // Room was just seen.
-                    let _ = batch.push(edge);
-                }
-                left -= 1;
+            let some = left.min(BATCH as u32);
+            for _ in 0..some {
+                let (at, fall) = self.next();
+                reached = at;
+                let kind = match self.wiring.straighten(at, fall) {
+                    Some(true) => EdgeKind::Fall,
+                    Some(false) => EdgeKind::Rise,
+                    None => continue,
+                };
+                // There is room for so many.
+                let _ = batch.push(Edge { at, kind });
             }
+            left -= some;
             hand_on(&batch);
             if Now::now() >= enough {
                 break;
@@ -112,28 +158,14 @@ impl Sense {
         }
     }
 
-    /// The next word as an edge, if it is worth one, and its time.
-    fn edge(&mut self, ticks_now: u64, at: &mut Instant) -> Option<Edge> {
+    /// The time of the next word, and whether the line fell.
+    fn next(&mut self) -> (Instant, bool) {
         let word = self.capture.pull();
-        let fall = word & 1 == 1;
-        // X counts down from 0.
-        let elapsed =
-            0_u32
-                .wrapping_sub(word >> 1)
-                .wrapping_sub(if fall { Capture::FALL_LATE } else { 0 });
-        let tick = elapsed.wrapping_add(FIRST as u32) & MASK;
-        let age = (ticks_now as u32).wrapping_sub(tick) & MASK;
-        // The timer counts microseconds, the PIO less: the newest edge may seem to lie ahead.
-        let age = if age > MASK / 2 { 0 } else { age };
-        let ticks = (ticks_now - FIRST).saturating_sub(u64::from(age));
-        *at = Instant::from_nanos(self.started + ticks * Capture::TICK_NS);
-        self.wiring.straighten(tick, fall).map(|fall| {
-            if fall {
-                Edge::fall(*at)
-            } else {
-                Edge::rise(*at)
-            }
-        })
+        let (count, fall) = (word & !1, word & 1 == 1);
+        // Late is lower: it counts down.
+        let late = if fall { 2 * Capture::FALL_LATE } else { 0 };
+        let ns = self.anchor.advance(count.wrapping_add(late));
+        (Instant::from_nanos(ns), fall)
     }
 }
 
@@ -145,8 +177,9 @@ struct Wiring {
     /// Teeth are as wide as their gaps: nothing can be told.
     ambiguous: bool,
     inverted: bool,
-    last_fall: Option<u32>,
-    last_rise: Option<u32>,
+    last_fall: Option<Instant>,
+    last_rise: Option<Instant>,
+    /// In 1024 ns.
     last_period: Option<u32>,
     /// Periods in a row that are mostly low and regular.
     regular: u8,
@@ -183,27 +216,27 @@ impl Wiring {
 
     /// Takes an edge as the line shows it and says whether it is a fall as the instrument means it, a magnet that arrives;
     /// `None` where it is better not handed on.
-    fn straighten(&mut self, tick: u32, fall: bool) -> Option<bool> {
+    fn straighten(&mut self, at: Instant, fall: bool) -> Option<bool> {
         if self.ambiguous {
             return Some(fall);
         }
         let fall = fall != self.inverted;
         if !fall {
-            self.last_rise = Some(tick);
+            self.last_rise = Some(at);
             return (self.regular < Self::LIKELY).then_some(false);
         }
         if let (Some(fell), Some(rose)) = (self.last_fall, self.last_rise) {
-            let period = tick.wrapping_sub(fell) & MASK;
-            let low = rose.wrapping_sub(fell) & MASK;
-            // Within 0.7 and 1.4 of the one before, as core's tacho asks of a start.
-            let regular = self
-                .last_period
-                .is_some_and(|last| period / 14 < last / 10 && last / 14 < period / 10);
-            self.last_period = Some(period);
+            // In 1024 ns: 32 bits hold seven times four minutes.
+            let short =
+                |later: Instant, earlier| (later.since(earlier).nanos() >> 10).min(1 << 28) as u32;
+            let (period, low) = (short(at, fell), short(rose, fell));
+            let last = self.last_period.replace(period);
+            // Within 5/7 and 7/5 of the one before, as core's tacho asks of a start.
+            let regular = last.is_some_and(|last| 5 * period < 7 * last && 5 * last < 7 * period);
             let wide = low > period / 4 * 3;
             self.regular = if wide && regular { self.regular + 1 } else { 0 };
         }
-        self.last_fall = Some(tick);
+        self.last_fall = Some(at);
         if self.regular >= Self::SURE {
             self.inverted = !self.inverted;
             defmt::warn!("sensor: inverted {=bool}", self.inverted);
