@@ -30,6 +30,11 @@ struct Errors {
 }
 
 impl Errors {
+    fn add(&mut self, error: f64) {
+        self.count += 1.0;
+        self.squares += error * error;
+        self.worst = self.worst.max(error.abs());
+    }
     fn rms(&self) -> f64 {
         (self.squares / self.count).sqrt()
     }
@@ -498,4 +503,114 @@ fn one_missing_pulse_moves_neither_digits_nor_verdict() {
             }
         });
     }
+}
+
+/// What steady acceleration does to the calm view.
+#[derive(Clone, Copy, Debug, Default)]
+struct Ramped {
+    /// While it lasts, and after its first second.
+    during: Errors,
+    late: Errors,
+    /// Within a second of its end.
+    after: Errors,
+    /// Furthest beyond the speeds that it begins and ends with.
+    beyond: f64,
+}
+
+/// Steady for a while, then faster or slower by this share of the speed in a second for so many seconds, then steady.
+fn ramped(sensor: &Capture, speed: f64, per_s: f64, secs: f64, seeds: u64) -> Ramped {
+    let mut all = Ramped::default();
+    for seed in 0..seeds {
+        let way = if seed % 2 == 0 { 1.0 } else { -1.0 };
+        let steady = f64::max(2.0, 8.0 * 60.0 / speed);
+        let end = speed * (1.0 + way * per_s * secs);
+        let capture = sensor
+            .clone()
+            .seeded(seed, 0.17 * seed as f64)
+            .jitter(jitter(speed))
+            .then(Piece::steady(speed, steady))
+            .then(Piece::ramp(speed, end, per_s * speed))
+            .then(Piece::steady(end, 3.0));
+        capture.watch(ROW, 0.0, &mut |row| {
+            let (t, n) = (row.at - steady, row.rpm());
+            if t < 0.0 {
+                return;
+            }
+            let error = n / capture.truth(row.at) - 1.0;
+            if t < secs {
+                all.during.add(error);
+            }
+            if (1.0..secs).contains(&t) {
+                all.late.add(error);
+            }
+            if (secs..secs + 1.0).contains(&t) {
+                all.after.add(error);
+            }
+            let beyond = f64::max(n / f64::max(speed, end), f64::min(speed, end) / n) - 1.0;
+            if !row.reading.bounded {
+                all.beyond = all.beyond.max(beyond);
+            }
+        });
+    }
+    all
+}
+
+#[test]
+fn steady_acceleration_is_followed() {
+    println!(
+        "rms error of the calm view in %: during 2 s of it, after the first, within a second of its end; beyond the extremes"
+    );
+    for (pulses, placed) in [(1, &[][..]), (2, PLACED_2), (6, PLACED_6)] {
+        for ripple in [0.0, 0.003] {
+            for speed in [203.7, 607.37, 2003.7] {
+                for per_s in [0.003, 0.01, 0.03, 0.1] {
+                    let sensor = Capture::new(pulses).placed(placed).rippled(ripple);
+                    let all = ramped(&sensor, speed, per_s, 2.0, 6);
+                    let [during, late, after] = [all.during, all.late, all.after].map(|e| e.rms());
+                    println!(
+                        "{pulses} magnets, ripple {:.1} %, {speed:6.0} rpm, {:4.1} %/s: {:.3} {:.3} {:.3}; {:.3}",
+                        100.0 * ripple,
+                        100.0 * per_s,
+                        100.0 * during,
+                        100.0 * late,
+                        100.0 * after,
+                        100.0 * all.beyond
+                    );
+                    // A line over 0.7 s or four turns is half of that behind.
+                    let line = per_s * f64::max(0.35, 2.0 * 60.0 / speed);
+                    let context = format!("{pulses} magnets, {ripple}, {speed} rpm, {per_s}/s");
+                    assert!(during < 1.1 * line, "{context}: {during:.2e}");
+                    assert!(all.beyond < 0.01, "{context}: {:.2e}", all.beyond);
+                    // Up to half a hundredth a turn, the parabola is a tenth of a second behind.
+                    if ripple == 0.0 && speed > 600.0 && per_s * 60.0 / speed < 0.005 {
+                        let most = f64::max(6e-4, 0.1 * per_s);
+                        assert!(late < most, "{context}: {late:.2e}, allowed {most:.2e}");
+                    }
+                }
+            }
+        }
+    }
+}
+
+#[test]
+fn no_end_of_an_acceleration_is_overshot() {
+    let mut most = 0.0_f64;
+    for (pulses, placed) in [(1, &[][..]), (2, PLACED_2), (6, PLACED_6), (60, &[])] {
+        for ripple in [0.0, 0.003] {
+            for speed in [203.7, 607.37, 2003.7] {
+                for per_s in [0.01, 0.04, 0.15, 0.3] {
+                    for secs in [0.15, 0.4, 0.8, 1.5] {
+                        let sensor = Capture::new(pulses).placed(placed).rippled(ripple);
+                        let beyond = ramped(&sensor, speed, per_s, secs, 4).beyond;
+                        assert!(
+                            beyond < 0.01,
+                            "{pulses} pulses, {ripple}, {speed} rpm, {per_s}/s for {secs} s: {beyond:.2e}"
+                        );
+                        most = most.max(beyond);
+                    }
+                }
+            }
+        }
+    }
+    println!("at most {:.2} % beyond", 100.0 * most);
 }

@@ -192,6 +192,72 @@ fn the_calm_speed_is_the_least_squares_of_a_numerical_library() {
 }
 
 #[test]
+fn the_speed_under_acceleration_is_the_parabola_of_a_numerical_library() {
+    // Through the mean times of seven turns, its slope at the newest pulse; the variance of a linear function g of the estimates
+    // is s^2 g (X' X)^-1 g (Draper and Smith, Applied Regression Analysis; from memory).
+    const TURNS: usize = 7;
+    let mut random = Random::new(22, 3);
+    for pulses in [1_usize, 2, 6, 24] {
+        for way in [-1.0, 1.0] {
+            for _ in 0..10 {
+                let turn = 0.25 + 0.1 * random.uniform();
+                let offsets: Vec<f64> = (0..pulses)
+                    .map(|_| turn * random.between(-2e-4, 2e-4))
+                    .collect();
+                let falls: Vec<u64> = (0..TURNS * pulses)
+                    .map(|k| {
+                        let turns = k as f64 / pulses as f64;
+                        let at = turn * turns * (1.0 + way * 0.0015 * turns) + offsets[k % pulses];
+                        ((1.0 + at + 2e-5 * random.normal()) * 1e9) as u64
+                    })
+                    .collect();
+                let means: Vec<f64> = falls
+                    .chunks(pulses)
+                    .map(|turn| {
+                        turn.iter().map(|&t| t as f64 / 1e9 - 1.0).sum::<f64>() / pulses as f64
+                    })
+                    .collect();
+                let rows: Vec<Vec<f64>> = (0..TURNS)
+                    .map(|r| vec![1.0, r as f64, (r * r) as f64])
+                    .collect();
+                let fit = solve(&rows, &means);
+                let n = pulses as f64;
+                let newest = (TURNS - 1) as f64 + (n - 1.0) / (2.0 * n);
+                let g = DVector::from_vec(vec![0.0, 1.0, 2.0 * newest]);
+                let period = g.dot(&fit);
+                let x = DMatrix::from_fn(TURNS, 3, |r, c| rows[r][c]);
+                let rest = &x * &fit - DVector::from_column_slice(&means);
+                let s2 = rest.dot(&rest) / (TURNS - 3) as f64;
+                let variance = s2 * g.dot(&((x.transpose() * &x).try_inverse().unwrap() * &g));
+
+                let mut tacho = Tacho::new(Capture::new(pulses as u32).config());
+                let low = (turn / n * 0.2 * 1e9) as u64;
+                for &fall in &falls {
+                    tacho.push(Edge::fall(Instant::from_nanos(fall)));
+                    tacho.push(Edge::rise(Instant::from_nanos(fall + low)));
+                }
+                let now = Instant::from_nanos(falls.last().unwrap() + low);
+                let reading = tacho.reading(now, |_| true);
+                let ours = f64::from(reading.speed.unwrap().get());
+                // Its sums are in single precision.
+                assert!(
+                    (ours * period / 60.0 - 1.0).abs() < 1e-6,
+                    "{pulses} pulses: {ours}, {}",
+                    60.0 / period
+                );
+                let clock = f64::from(CLOCK).powi(2) / 3.0;
+                let claimed = (f64::from(reading.uncertainty).powi(2) - clock).sqrt();
+                let want = variance.sqrt() / period;
+                assert!(
+                    (claimed - want).abs() < 0.01 * want + 1e-6,
+                    "{pulses} pulses: claimed {claimed:.3e}, {want:.3e}"
+                );
+            }
+        }
+    }
+}
+
+#[test]
 fn the_bound_for_unknown_placement_is_what_the_model_allows() {
     // The inverse of the normal equations gives the variance of a least-squares fit (Gauss and Markov).
     for (pulses, turns) in [(1_usize, 3_usize), (2, 4), (6, 3), (6, 10)] {

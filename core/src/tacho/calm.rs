@@ -8,10 +8,18 @@
 //! An edge costs one addition. Turns are gathered in blocks, so that any speed fits a fixed memory; a block of k turns among B
 //! loses a factor 1 / sqrt(1 - 1 / B^2) at most. The window grows to [`LONG`] or [`TURNS`] turns while one line explains the
 //! turns, and drops its past when a line no longer does: see [`RIPPLE`].
+//!
+//! A line is read at its middle, and so lags behind a speed that changes. Under steady acceleration, of up to about a hundredth
+//! a turn, a parabola explains the turns (see [`BENT`]) and is read at its end. Its relative error there is
+//! sqrt(192 / (N R^3)) sigma / T for many turns, four times that of a line: it is worth that only where the speed changes.
 
-use heapless::Deque;
+mod fit;
+
+use heapless::{Deque, Vec};
 
 use crate::time::{Duration, Instant};
+use fit::Point;
+use libm::{fabsf, sqrtf};
 
 /// The window grows to this, or to this many turns, whichever is longer: more than half a second and three turns, so that
 /// what is still in the open block is made up for; no more, for a reading is half a window old.
@@ -27,6 +35,24 @@ const CHANGE_SHIFT: u32 = 6;
 /// The ripple floor: belts and gears change a spindle's speed by 0.1 to 0.5 %, coming and going (common practice, no source).
 /// Two halves of a window that differ by more than 0.3 % each way are two speeds.
 const RIPPLE: f32 = 0.006;
+/// A parabola is looked for where the halves differ by more than this: ripple of 0.3 % that comes and goes in three turns bends
+/// a window of seven turns by 0.12 %.
+const BENT: f32 = 0.0015;
+/// It takes so many blocks, over up to so many times the turns of a line: its end is less exact.
+const MANY: usize = 5;
+const HISTORY: u32 = 2;
+/// Its bend is this many standard errors or it is chance,
+const SURE: f32 = 6.0;
+/// and it explains nothing where turns scatter about it by more than this, in turns: ripple as above does by 0.0007.
+const EXPLAINS: f32 = 0.001;
+/// Turns scatter by this at the least, in turns, for all that is known from so few: about a parabola, and about a line.
+const SCATTER: f32 = 0.000_1;
+const SCATTER_OF_LINE: f32 = 0.000_4;
+/// A newest block that is further than this from where the ones before put it, in standard deviations, is another motion's.
+const MISFIT: f32 = 4.0;
+/// The speed at a parabola's end is not further than this from the mean speed of the last two blocks, which no spindle's
+/// extremes can be within: where an acceleration ends, the reading is at most 0.8 % beyond.
+const CARRY: f32 = 0.008;
 /// Deviations are cut here, ns: more than any window that holds together has.
 const LATEST: i64 = 1 << 32;
 /// Fractional bits of a period.
@@ -68,6 +94,8 @@ pub(super) struct Calm {
     /// Time of a turn for all checks, ns; 0 until there is one.
     period: u64,
     line: Option<Line>,
+    /// The newest block is another motion's, or moved by noise: the next one tells.
+    misfit: bool,
     /// Since when one speed explains the pulses, and how many that were.
     since: Instant,
     steady: u32,
@@ -86,6 +114,7 @@ impl Calm {
             size: 1,
             period: 0,
             line: None,
+            misfit: false,
             since: Instant::ZERO,
             steady: 0,
         }
@@ -104,6 +133,7 @@ impl Calm {
         self.open(1);
         self.period = turn;
         self.line = None;
+        self.misfit = false;
         self.since = since;
         // With the pulse that ends it.
         self.steady = self.pulses - 1;
@@ -165,6 +195,7 @@ impl Calm {
         }
     }
 
+    #[inline(never)]
     fn close(&mut self) {
         let pulses = u64::from(self.size * self.pulses);
         let block = Block {
@@ -182,13 +213,12 @@ impl Calm {
 
         let wanted = self.wanted();
         while let Some(oldest) = self.blocks.front()
-            && self.turns - oldest.turns >= wanted
+            && self.turns - oldest.turns >= HISTORY * wanted
         {
             self.turns -= oldest.turns;
             self.blocks.pop_front();
         }
-        self.break_up();
-        self.fit();
+        self.fit(wanted);
         self.open(wanted.div_ceil(AIM).min(self.turns / 4).max(1));
     }
 
@@ -223,86 +253,152 @@ impl Calm {
         (half_turns as i64, late.clamp(-LATEST, LATEST))
     }
 
-    /// Drops the older half where it is another speed than the newer one.
-    fn break_up(&mut self) {
-        let (Some(oldest), Some(newest)) = (self.blocks.front(), self.blocks.back()) else {
-            return;
+    /// Where the window of a line begins: the newest blocks that have the turns wanted.
+    fn begin(&self, wanted: u32) -> usize {
+        let mut turns = self.turns;
+        self.blocks
+            .iter()
+            .take_while(|block| {
+                turns -= block.turns;
+                turns >= wanted
+            })
+            .count()
+    }
+
+    /// By how much the newer half of the blocks from `first` on is slower than the older one, as a share, and where it begins.
+    fn bend(&self, first: usize) -> (f32, usize) {
+        let (Some(oldest), Some(newest)) = (self.blocks.get(first), self.blocks.back()) else {
+            return (0.0, first);
         };
         let (whole, end) = self.deviation(newest, oldest);
-        let middle = self
-            .blocks
-            .iter()
-            .map(|b| self.deviation(b, oldest))
-            .enumerate()
-            .find(|(_, (x, _))| 2 * x >= whole);
-        let Some((half, (x, y))) = middle.filter(|_| self.turns > LINE) else {
-            return;
+        let past_middle =
+            |b: &Block| i64::from(b.middle.wrapping_sub(oldest.middle)) * 2 >= whole.max(1);
+        let half = self.blocks.iter().skip(first).position(past_middle);
+        let Some((half, block)) = half.and_then(|i| Some((first + i, self.blocks.get(first + i)?)))
+        else {
+            return (0.0, first);
         };
+        let (x, y) = self.deviation(block, oldest);
         // The sagitta of the bend over its chord: a quarter of the window's time times the difference of the speeds.
-        let sagitta = y as f32 - end as f32 * x as f32 / whole as f32;
-        if sagitta.abs() > RIPPLE * whole as f32 * self.period as f32 / 8.0 {
-            for _ in 0..half {
-                self.turns -= self.blocks.pop_front().map_or(0, |b| b.turns);
+        let sagitta = end as f32 * x as f32 / whole as f32 - y as f32;
+        (8.0 * sagitta / (whole as f32 * self.period as f32), half)
+    }
+
+    /// Drops so many of the oldest blocks: they had another speed.
+    fn forget(&mut self, count: usize) {
+        for _ in 0..count {
+            self.turns -= self.blocks.pop_front().map_or(0, |b| b.turns);
+        }
+        self.since = self
+            .blocks
+            .front()
+            .map_or(self.since, |b| Instant::from_nanos(b.mean));
+        self.steady = self.turns * self.pulses;
+    }
+
+    /// The blocks from `first` on as points, from the first of them.
+    fn points(&self, first: usize) -> Vec<Point, BLOCKS> {
+        let Some(oldest) = self.blocks.get(first) else {
+            return Vec::new();
+        };
+        self.blocks
+            .iter()
+            .skip(first)
+            .map(|block| {
+                let (x, y) = self.deviation(block, oldest);
+                (i64::from(block.turns), x, y)
+            })
+            .collect()
+    }
+
+    /// Finds what explains the newest blocks, and drops those before. Each round but the last drops some.
+    fn fit(&mut self, wanted: u32) {
+        self.line = None;
+        while self.turns >= LINE && self.blocks.len() >= LINE as usize {
+            let (bend, half) = self.bend(0);
+            if fabsf(bend) > BENT && self.blocks.len() >= MANY && self.parabola() {
+                return;
             }
-            self.since = self
-                .blocks
-                .front()
-                .map_or(self.since, |b| Instant::from_nanos(b.mean));
-            self.steady = self.turns * self.pulses;
+            if fabsf(bend) > RIPPLE && self.turns > LINE {
+                self.forget(half);
+                continue;
+            }
+            let first = self.begin(wanted);
+            let (bend, half) = self.bend(first);
+            if fabsf(bend) > RIPPLE && self.turns > LINE {
+                self.forget(half);
+                continue;
+            }
+            if self.straight(first) {
+                return;
+            }
         }
     }
 
-    /// The line through the blocks, each with the weight of its turns. Exact in whole numbers but for the last division.
-    fn fit(&mut self) {
-        self.line = None;
-        let Some(&oldest) = self.blocks.front() else {
-            return;
+    /// The line through the blocks from `first` on; no line where the two newest blocks do not fit the others, which are dropped.
+    fn straight(&mut self, first: usize) -> bool {
+        let points = self.points(first);
+        let line = fit::Line::through(&points);
+        let (scatter, error) = line.scatter(&points);
+        let misfit = scatter.misfit(MISFIT, SCATTER_OF_LINE * self.period as f32);
+        let again = core::mem::replace(&mut self.misfit, misfit) && misfit;
+        if again && self.blocks.len() > LINE as usize {
+            self.misfit = false;
+            self.forget(self.blocks.len() - LINE as usize);
+            return false;
+        }
+        self.read(line.slope, error);
+        true
+    }
+
+    /// The parabola through all blocks, read at the newest pulse, if it explains them.
+    fn parabola(&mut self) -> bool {
+        let mut newest_first = self.blocks.iter().rev();
+        let (Some(newest), Some(before), Some(oldest)) = (
+            newest_first.next(),
+            newest_first.next(),
+            self.blocks.front(),
+        ) else {
+            return false;
         };
-        if self.turns < LINE || self.blocks.len() < LINE as usize {
-            return;
+        let points = self.points(0);
+        let parabola = fit::Parabola::through(&points);
+        let turn = self.period as f32;
+        let scatter = sqrtf(parabola.scatter.variance());
+        if scatter > EXPLAINS * turn || parabola.bend() < SURE * scatter.max(SCATTER * turn) {
+            return false;
         }
-        let (mut sum, mut sx) = (0_i64, 0_i64);
-        for block in &self.blocks {
-            let (x, _) = self.deviation(block, &oldest);
-            sum += i64::from(block.turns);
-            sx += i64::from(block.turns) * x;
+        let (x, y) = self.deviation(newest, oldest);
+        let (x_before, y_before) = self.deviation(before, oldest);
+        let last = (y - y_before) as f32 / (x - x_before) as f32;
+        // A block's last pulse is half of its turns after its middle, less half of a spacing.
+        let beyond = newest.turns as f32 - 1.0 / self.pulses as f32;
+        let (slope, error) = parabola.slope(x, beyond);
+        let since = Instant::from_nanos(newest.mean);
+        let misfit = parabola.scatter.misfit(MISFIT, SCATTER * turn);
+        // In doubt no further than what has been.
+        let most = if misfit { 0.0 } else { CARRY * turn / 2.0 };
+        let read = last + (slope - last).clamp(-most, most);
+        self.read(read, error + fabsf(slope - read));
+        if core::mem::replace(&mut self.misfit, misfit) && misfit {
+            self.forget(self.blocks.len() - LINE as usize);
         }
-        // From about the middle, so that 64 bits hold every product.
-        let centre = sx / sum;
-        let (mut sx, mut sy, mut sxx, mut sxy) = (0_i64, 0_i64, 0_i64, 0_i64);
-        for block in &self.blocks {
-            let (x, y) = self.deviation(block, &oldest);
-            let (w, x) = (i64::from(block.turns), x - centre);
-            sx += w * x;
-            sy += w * y;
-            sxx += w * x * x;
-            sxy += w * x * y;
-        }
-        // What the middle lacks to the mean is less than half a turn, and single precision enough for it.
-        let (sum, sx, sy) = (sum as f32, sx as f32, sy as f32);
-        let spread = sxx as f32 - sx * sx / sum;
-        let slope = (sxy as f32 - sx * sy / sum) / spread;
+        // It is not steady.
+        self.since = since;
+        self.steady = 0;
+        true
+    }
+
+    /// The period is longer by so much a half-turn than that of all checks, with a standard error.
+    fn read(&mut self, slope: f32, error: f32) {
         // Two half-turns are a turn.
         let more = 2.0 * slope;
         let fixed = (self.period << FRACTION) as i64 + (more * (1 << FRACTION) as f32) as i64;
         let period = fixed.max(1) as u64;
-
-        let level = (sy - slope * sx) / sum;
-        let scatter: f32 = self
-            .blocks
-            .iter()
-            .map(|block| {
-                let (x, y) = self.deviation(block, &oldest);
-                let rest = y as f32 - level - slope * (x - centre) as f32;
-                block.turns as f32 * rest * rest
-            })
-            .sum();
-        let free = (self.blocks.len() - 2) as f32;
-        let variance = scatter / free / spread;
         let turn = (period >> FRACTION).max(1);
         self.line = Some(Line {
             period,
-            error: 2.0 * libm::sqrtf(variance) / turn as f32,
+            error: 2.0 * error / turn as f32,
         });
         self.period = turn;
     }

@@ -652,11 +652,27 @@ impl Track {
         }
         // Neither the next pulse is cut nor the one that is measured against this one.
         let after_one = since_odd == 0 || since_odd == self.pulses - 1;
-        let noise = !after_one && self.calm.is_steady();
+        let noise = !after_one && self.calm.is_steady() && self.off_alone();
         if noise {
             self.since_odd = 0;
         }
         noise
+    }
+
+    /// Whether the newest pulse is off its time and the one before it was not, by the turns that end with them: while the
+    /// speed changes, both are off.
+    #[cold]
+    #[inline(never)]
+    fn off_alone(&self) -> bool {
+        let turn = |back| {
+            let end = self.marks.back(back)?;
+            Some(end.since(self.marks.back(back + self.pulses)?).nanos())
+        };
+        let (Some(newest), Some(before), Some(period)) = (turn(0), turn(1), self.calm.period())
+        else {
+            return true;
+        };
+        newest.abs_diff(before) > self.usually && before.abs_diff(period) <= self.usually / 2
     }
 
     /// Passes magnets whose pulses are missing before the one at `at`; their times are filled in evenly by angle.
