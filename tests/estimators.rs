@@ -9,6 +9,9 @@ use rimrate_sim::random::Random;
 use rimrate_tests::capture::{Capture, bound, bound_unplaced};
 use rimrate_tests::methods::{EndPoints, GateCount, LeastSquares, Method, PulsesOverTime, slope};
 
+#[path = "benches/plot.rs"]
+mod plot;
+
 /// The value column of a published row.
 fn published(id: &str) -> String {
     csv::Reader::from_reader(include_str!("data/tachometer-formulas.csv").as_bytes())
@@ -274,4 +277,12 @@ fn the_bound_for_unknown_placement_is_what_the_model_allows() {
         let want = bound_unplaced(pulses as u32, turns as f64, 1.0, 1.0).powi(2);
         assert!((variance / want - 1.0).abs() < 1e-9, "{pulses}, {turns}");
     }
+}
+
+#[test]
+fn the_plot_is_what_the_bench_draws() {
+    assert!(
+        plot::draw().unwrap() == include_str!("benches/error-by-window.svg"),
+        "look at what `cargo bench -p rimrate-tests --bench tacho -- --plot FILE.svg` draws now"
+    );
 }

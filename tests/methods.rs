@@ -137,6 +137,13 @@ struct Window {
 }
 
 impl Window {
+    fn new(seconds: f64, edges: usize) -> Self {
+        Window {
+            seconds,
+            edges,
+            falls: VecDeque::new(),
+        }
+    }
     fn push(&mut self, at: f64) {
         self.falls.push_back(at);
         while self.falls.len() > self.edges
@@ -158,12 +165,15 @@ impl EndPoints {
     /// Over the last `seconds` or three revolutions, whichever is longer.
     pub fn new(pulses: u32, seconds: f64) -> Self {
         EndPoints {
+            window: Window::new(seconds, 3 * pulses as usize),
             pulses: f64::from(pulses),
-            window: Window {
-                seconds,
-                edges: 3 * pulses as usize,
-                falls: VecDeque::new(),
-            },
+        }
+    }
+    /// Over the last `seconds`.
+    pub fn over(pulses: u32, seconds: f64) -> Self {
+        EndPoints {
+            window: Window::new(seconds, 0),
+            pulses: f64::from(pulses),
         }
     }
 }
@@ -203,7 +213,14 @@ impl LeastSquares {
     pub fn new(pulses: u32, seconds: f64) -> Self {
         LeastSquares {
             pulses: f64::from(pulses),
-            window: EndPoints::new(pulses, seconds).window,
+            window: Window::new(seconds, 3 * pulses as usize),
+        }
+    }
+    /// Over the last `seconds`.
+    pub fn over(pulses: u32, seconds: f64) -> Self {
+        LeastSquares {
+            pulses: f64::from(pulses),
+            window: Window::new(seconds, 0),
         }
     }
 }
