@@ -72,10 +72,12 @@ impl Line {
     /// Scatter about the line, and the standard error of the slope.
     pub(super) fn scatter(&self, points: &[Point]) -> (Scatter, f32) {
         let mut scatter = Scatter::new(2.0);
+        let mut end = 0.0;
         for &(w, x, y) in points {
-            let (w, u) = (w as f32, self.place(x));
-            scatter.add(w, self.off(u, y), 1.0 / self.sum + u * u / self.spread);
+            end = self.place(x);
+            scatter.add(w as f32, self.off(end, y));
         }
+        scatter.lever = 1.0 / self.sum + end * end / self.spread;
         (scatter, sqrtf(scatter.variance() / self.spread))
     }
 }
@@ -86,8 +88,9 @@ pub(super) struct Scatter {
     sum: f32,
     /// Points beyond what the curve takes.
     free: f32,
-    /// The last point's weight, how far it is off, and its lever: how much of it the curve follows over its weight.
-    last: (f32, f32, f32),
+    /// The last point's weight, how far it is off, and how much of that the curve follows, over the weight.
+    last: (f32, f32),
+    lever: f32,
 }
 
 impl Scatter {
@@ -95,14 +98,15 @@ impl Scatter {
         Scatter {
             sum: 0.0,
             free: -parameters,
-            last: (0.0, 0.0, 0.0),
+            last: (0.0, 0.0),
+            lever: 0.0,
         }
     }
 
-    fn add(&mut self, w: f32, off: f32, lever: f32) {
+    fn add(&mut self, w: f32, off: f32) {
         self.sum += w * off * off;
         self.free += 1.0;
-        self.last = (w, off, lever);
+        self.last = (w, off);
     }
 
     /// Variance of a point of weight one, ns^2.
@@ -114,8 +118,8 @@ impl Scatter {
     /// `floor` ns at least (R. D. Cook and S. Weisberg, Residuals and Influence in Regression, 1982, 2.2: the externally
     /// studentized residual).
     pub(super) fn misfit(&self, most: f32, floor: f32) -> bool {
-        let (w, off, lever) = self.last;
-        let of_last = w * off * off / (1.0 - w * lever).max(LEAST_LEFT);
+        let (w, off) = self.last;
+        let of_last = w * off * off / (1.0 - w * self.lever).max(LEAST_LEFT);
         let of_others = (self.sum - of_last).max(0.0) / (self.free - 1.0);
         self.free > 1.0 && of_last > most * most * of_others.max(floor * floor)
     }
@@ -152,12 +156,13 @@ impl Parabola {
         }
         let curve = part / squares;
         let mut scatter = Scatter::new(3.0);
+        let (mut end, mut bent) = (0.0, 0.0);
         for &(w, x, y) in points {
-            let (w, u) = (w as f32, line.place(x));
-            let q = (u - a) * u - b;
-            let lever = 1.0 / line.sum + u * u / line.spread + q * q / squares;
-            scatter.add(w, line.off(u, y) - curve * q, lever);
+            end = line.place(x);
+            bent = (end - a) * end - b;
+            scatter.add(w as f32, line.off(end, y) - curve * bent);
         }
+        scatter.lever = 1.0 / line.sum + end * end / line.spread + bent * bent / squares;
         Parabola {
             line,
             a,
