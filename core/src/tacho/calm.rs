@@ -230,6 +230,7 @@ impl Calm {
     }
 
     /// The oldest blocks are the smallest ones: they come from when the window was short.
+    #[inline(never)]
     fn merge_oldest(&mut self) {
         let (Some(a), Some(b)) = (self.blocks.pop_front(), self.blocks.pop_front()) else {
             return;
@@ -285,6 +286,7 @@ impl Calm {
     }
 
     /// Drops so many of the oldest blocks: they had another speed.
+    #[inline(never)]
     fn forget(&mut self, count: usize) {
         for _ in 0..count {
             self.turns -= self.blocks.pop_front().map_or(0, |b| b.turns);
@@ -390,6 +392,7 @@ impl Calm {
     }
 
     /// The period is longer by so much a half-turn than that of all checks, with a standard error.
+    #[inline(never)]
     fn read(&mut self, slope: f32, error: f32) {
         // Two half-turns are a turn.
         let more = 2.0 * slope;
