@@ -245,44 +245,25 @@ impl Calm {
         let _ = self.blocks.push_front(merged);
     }
 
-    /// Half-turns and nanoseconds beyond a steady turn's worth since the oldest block.
-    fn deviation(&self, block: &Block, oldest: &Block) -> (i64, i64) {
-        let half_turns = u64::from(block.middle.wrapping_sub(oldest.middle));
-        let expected = half_turns * self.period / 2;
-        let time = block.mean.wrapping_sub(oldest.mean);
-        let late = time.wrapping_sub(expected) as i64;
-        (half_turns as i64, late.clamp(-LATEST, LATEST))
-    }
-
-    /// Where the window of a line begins: the newest blocks that have the turns wanted.
-    fn begin(&self, wanted: u32) -> usize {
-        let mut turns = self.turns;
-        self.blocks
-            .iter()
-            .take_while(|block| {
-                turns -= block.turns;
-                turns >= wanted
-            })
-            .count()
-    }
-
-    /// By how much the newer half of the blocks from `first` on is slower than the older one, as a share, and where it begins.
-    fn bend(&self, first: usize) -> (f32, usize) {
-        let (Some(oldest), Some(newest)) = (self.blocks.get(first), self.blocks.back()) else {
-            return (0.0, first);
+    /// The blocks as points: half-turns, and nanoseconds beyond a steady turn's worth, since the oldest one.
+    #[inline(never)]
+    fn points(&self) -> Vec<Point, BLOCKS> {
+        let mut points = Vec::new();
+        let Some(&oldest) = self.blocks.front() else {
+            return points;
         };
-        let (whole, end) = self.deviation(newest, oldest);
-        let past_middle =
-            |b: &Block| i64::from(b.middle.wrapping_sub(oldest.middle)) * 2 >= whole.max(1);
-        let half = self.blocks.iter().skip(first).position(past_middle);
-        let Some((half, block)) = half.and_then(|i| Some((first + i, self.blocks.get(first + i)?)))
-        else {
-            return (0.0, first);
-        };
-        let (x, y) = self.deviation(block, oldest);
-        // The sagitta of the bend over its chord: a quarter of the window's time times the difference of the speeds.
-        let sagitta = end as f32 * x as f32 / whole as f32 - y as f32;
-        (8.0 * sagitta / (whole as f32 * self.period as f32), half)
+        for block in &self.blocks {
+            let half_turns = block.middle.wrapping_sub(oldest.middle);
+            let expected = u64::from(half_turns) * self.period / 2;
+            let late = block.mean.wrapping_sub(oldest.mean).wrapping_sub(expected) as i64;
+            // There are as many places.
+            let _ = points.push(Point {
+                turns: block.turns as i32,
+                at: half_turns as i32,
+                late: late.clamp(-LATEST, LATEST),
+            });
+        }
+        points
     }
 
     /// Drops so many of the oldest blocks: they had another speed.
@@ -298,27 +279,25 @@ impl Calm {
         self.steady = self.turns * self.pulses;
     }
 
-    /// The blocks from `first` on as points, from the first of them.
-    fn points(&self, first: usize) -> Vec<Point, BLOCKS> {
-        let Some(oldest) = self.blocks.get(first) else {
-            return Vec::new();
-        };
+    /// Where the window of a line begins: the newest blocks that have the turns wanted.
+    fn begin(&self, wanted: u32) -> usize {
+        let mut turns = self.turns;
         self.blocks
             .iter()
-            .skip(first)
-            .map(|block| {
-                let (x, y) = self.deviation(block, oldest);
-                (i64::from(block.turns), x, y)
+            .take_while(|block| {
+                turns -= block.turns;
+                turns >= wanted
             })
-            .collect()
+            .count()
     }
 
     /// Finds what explains the newest blocks, and drops those before. Each round but the last drops some.
     fn fit(&mut self, wanted: u32) {
         self.line = None;
         while self.turns >= LINE && self.blocks.len() >= LINE as usize {
-            let (bend, half) = self.bend(0);
-            if fabsf(bend) > BENT && self.blocks.len() >= MANY && self.parabola() {
+            let points = self.points();
+            let (bend, half) = fit::bend(&points, self.period as f32);
+            if fabsf(bend) > BENT && points.len() >= MANY && self.parabola(&points) {
                 return;
             }
             if fabsf(bend) > RIPPLE && self.turns > LINE {
@@ -326,22 +305,22 @@ impl Calm {
                 continue;
             }
             let first = self.begin(wanted);
-            let (bend, half) = self.bend(first);
+            let points = points.get(first..).unwrap_or_default();
+            let (bend, half) = fit::bend(points, self.period as f32);
             if fabsf(bend) > RIPPLE && self.turns > LINE {
-                self.forget(half);
+                self.forget(first + half);
                 continue;
             }
-            if self.straight(first) {
+            if self.straight(points) {
                 return;
             }
         }
     }
 
-    /// The line through the blocks from `first` on; no line where the two newest blocks do not fit the others, which are dropped.
-    fn straight(&mut self, first: usize) -> bool {
-        let points = self.points(first);
-        let line = fit::Line::through(&points);
-        let (scatter, error) = line.scatter(&points);
+    /// The line through these points; none where the two newest ones do not fit the others, which are dropped.
+    fn straight(&mut self, points: &[Point]) -> bool {
+        let line = fit::Line::through(points);
+        let (scatter, error) = line.scatter(points);
         let misfit = scatter.misfit(MISFIT, SCATTER_OF_LINE * self.period as f32);
         let again = core::mem::replace(&mut self.misfit, misfit) && misfit;
         if again && self.blocks.len() > LINE as usize {
@@ -354,29 +333,20 @@ impl Calm {
     }
 
     /// The parabola through all blocks, read at the newest pulse, if it explains them.
-    fn parabola(&mut self) -> bool {
-        let mut newest_first = self.blocks.iter().rev();
-        let (Some(newest), Some(before), Some(oldest)) = (
-            newest_first.next(),
-            newest_first.next(),
-            self.blocks.front(),
-        ) else {
+    fn parabola(&mut self, points: &[Point]) -> bool {
+        let [.., before, newest] = points else {
             return false;
         };
-        let points = self.points(0);
-        let parabola = fit::Parabola::through(&points);
+        let parabola = fit::Parabola::through(points);
         let turn = self.period as f32;
         let scatter = sqrtf(parabola.scatter.variance());
         if scatter > EXPLAINS * turn || parabola.bend() < SURE * scatter.max(SCATTER * turn) {
             return false;
         }
-        let (x, y) = self.deviation(newest, oldest);
-        let (x_before, y_before) = self.deviation(before, oldest);
-        let last = (y - y_before) as f32 / (x - x_before) as f32;
+        let last = (newest.late - before.late) as f32 / (newest.at - before.at) as f32;
         // A block's last pulse is half of its turns after its middle, less half of a spacing.
         let beyond = newest.turns as f32 - 1.0 / self.pulses as f32;
-        let (slope, error) = parabola.slope(x, beyond);
-        let since = Instant::from_nanos(newest.mean);
+        let (slope, error) = parabola.slope(newest.at, beyond);
         let misfit = parabola.scatter.misfit(MISFIT, SCATTER * turn);
         // In doubt no further than what has been.
         let most = if misfit { 0.0 } else { CARRY * turn / 2.0 };
@@ -386,7 +356,9 @@ impl Calm {
             self.forget(self.blocks.len() - LINE as usize);
         }
         // It is not steady.
-        self.since = since;
+        if let Some(newest) = self.blocks.back() {
+            self.since = Instant::from_nanos(newest.mean);
+        }
         self.steady = 0;
         true
     }

@@ -9,14 +9,40 @@ use libm::{fabsf, sqrtf};
 /// A curve leaves at least this share of a point's error, or nothing can be said of it.
 const LEAST_LEFT: f32 = 1e-3;
 
-/// A point: its weight, its place in half-turns, and by how much it is late, ns.
-pub(super) type Point = (i64, i64, i64);
+/// A point.
+#[derive(Clone, Copy, Debug)]
+pub(super) struct Point {
+    /// Its weight.
+    pub(super) turns: i32,
+    /// Its place, half-turns.
+    pub(super) at: i32,
+    /// ns.
+    pub(super) late: i64,
+}
+
+/// By how much the newer half of the points is slower than the older one, as a share, and where it begins.
+#[inline(never)]
+pub(super) fn bend(points: &[Point], period: f32) -> (f32, usize) {
+    let [oldest, .., newest] = points else {
+        return (0.0, 0);
+    };
+    let whole = (newest.at - oldest.at).max(1);
+    let past_middle = |p: &Point| 2 * (p.at - oldest.at) >= whole;
+    let Some((half, middle)) = points.iter().enumerate().find(|(_, p)| past_middle(p)) else {
+        return (0.0, 0);
+    };
+    let (part, whole) = ((middle.at - oldest.at) as f32, whole as f32);
+    // The sagitta of the bend over its chord: a quarter of the window's time times the difference of the speeds.
+    let chord = (newest.late - oldest.late) as f32 * part / whole;
+    let sagitta = chord - (middle.late - oldest.late) as f32;
+    (8.0 * sagitta / (whole * period), half)
+}
 
 /// The straight line.
 #[derive(Clone, Copy, Debug)]
 pub(super) struct Line {
     /// Mean place: a whole number and the rest.
-    centre: i64,
+    centre: i32,
     rest: f32,
     sum: f32,
     /// Squares of the places from their mean.
@@ -29,21 +55,23 @@ pub(super) struct Line {
 
 impl Line {
     /// Through two points at least, at different places. Exact in whole numbers but for the last division.
+    #[inline(never)]
     pub(super) fn through(points: &[Point]) -> Line {
-        let (mut sum, mut sx) = (0_i64, 0_i64);
-        for &(w, x, _) in points {
-            sum += w;
-            sx += w * x;
+        // Of 20,000 turns a second at most: 32 bits hold this.
+        let (mut sum, mut sx) = (0_i32, 0_i32);
+        for p in points {
+            sum += p.turns;
+            sx += p.turns * p.at;
         }
         // From about the middle, so that 64 bits hold every product.
         let centre = sx / sum.max(1);
-        let (mut sx, mut sy, mut sxx, mut sxy) = (0_i64, 0_i64, 0_i64, 0_i64);
-        for &(w, x, y) in points {
-            let x = x - centre;
-            sx += w * x;
-            sy += w * y;
-            sxx += w * x * x;
-            sxy += w * x * y;
+        let (mut sx, mut sy, mut sxx, mut sxy) = (0_i32, 0_i64, 0_i64, 0_i64);
+        for p in points {
+            let x = p.at - centre;
+            sx += p.turns * x;
+            sy += i64::from(p.turns) * p.late;
+            sxx += i64::from(p.turns * x) * i64::from(x);
+            sxy += i64::from(p.turns * x) * p.late;
         }
         // What the middle lacks to the mean is less than half a turn, and single precision enough for it.
         let (sum, sx, sy) = (sum as f32, sx as f32, sy as f32);
@@ -60,7 +88,7 @@ impl Line {
     }
 
     /// Place from the mean one.
-    fn place(&self, x: i64) -> f32 {
+    fn place(&self, x: i32) -> f32 {
         (x - self.centre) as f32 - self.rest
     }
 
@@ -73,9 +101,9 @@ impl Line {
     pub(super) fn scatter(&self, points: &[Point]) -> (Scatter, f32) {
         let mut scatter = Scatter::new(2.0);
         let mut end = 0.0;
-        for &(w, x, y) in points {
-            end = self.place(x);
-            scatter.add(w as f32, self.off(end, y));
+        for p in points {
+            end = self.place(p.at);
+            scatter.add(p.turns as f32, self.off(end, p.late));
         }
         scatter.lever = 1.0 / self.sum + end * end / self.spread;
         (scatter, sqrtf(scatter.variance() / self.spread))
@@ -142,25 +170,26 @@ impl Parabola {
     pub(super) fn through(points: &[Point]) -> Parabola {
         let line = Line::through(points);
         let mut cubes = 0.0;
-        for &(w, x, _) in points {
-            let u = line.place(x);
-            cubes += w as f32 * u * u * u;
+        for p in points {
+            let u = line.place(p.at);
+            cubes += p.turns as f32 * u * u * u;
         }
         let (a, b) = (cubes / line.spread, line.spread / line.sum);
         let (mut squares, mut part) = (0.0, 0.0);
-        for &(w, x, y) in points {
-            let u = line.place(x);
+        for p in points {
+            let u = line.place(p.at);
             let q = (u - a) * u - b;
-            squares += w as f32 * q * q;
-            part += w as f32 * q * line.off(u, y);
+            let weighted = p.turns as f32 * q;
+            squares += weighted * q;
+            part += weighted * line.off(u, p.late);
         }
         let curve = part / squares;
         let mut scatter = Scatter::new(3.0);
         let (mut end, mut bent) = (0.0, 0.0);
-        for &(w, x, y) in points {
-            end = line.place(x);
+        for p in points {
+            end = line.place(p.at);
             bent = (end - a) * end - b;
-            scatter.add(w as f32, line.off(end, y) - curve * bent);
+            scatter.add(p.turns as f32, line.off(end, p.late) - curve * bent);
         }
         scatter.lever = 1.0 / line.sum + end * end / line.spread + bent * bent / squares;
         Parabola {
@@ -178,7 +207,7 @@ impl Parabola {
     }
 
     /// Slope at a place that is `beyond` half-turns after `x`, and its standard error.
-    pub(super) fn slope(&self, x: i64, beyond: f32) -> (f32, f32) {
+    pub(super) fn slope(&self, x: i32, beyond: f32) -> (f32, f32) {
         let steepness = 2.0 * (self.line.place(x) + beyond) - self.a;
         let parts = 1.0 / self.line.spread + steepness * steepness / self.squares;
         (
