@@ -3,9 +3,11 @@
 //! Speed is then the angle between two pulses over the time between them. Over whole revolutions the angle is exact, for a
 //! span starts and ends at the same magnet; over parts of one it is as exact as the placement learned so far.
 //!
-//! A pulse costs whole numbers only. Single precision comes in where a pulse is early or late, and where something is read.
+//! Here is what nearly every pulse takes, and what a turn teaches: whole numbers only. `rhythm` is for the pulses that come early
+//! or late, `views` for what is read; there single precision comes in.
 
-use heapless::Vec;
+mod rhythm;
+mod views;
 
 use super::UNKNOWN_GAP;
 use super::calm::Calm;
@@ -22,44 +24,13 @@ const LEARN_EVERY: Duration = Duration::from_millis(100);
 /// between 0.82 and 1.2 of what is expected.
 const PACE_SHIFT: u32 = 3;
 const GAP_SHIFT: u32 = 4;
-/// A pulse earlier than this share of the expected spacing is suspected to be an extra one.
-const EARLY: f32 = 0.75;
-/// A pulse after a suspected one that keeps the rhythm so closely, in spacings, makes that one an extra one.
-const IN_TIME: f32 = 0.08;
-/// The second of two early intervals may be shorter than the first by so much: a spindle that is clutched in.
-const FASTER: f32 = 0.55;
-const ALIKE: f32 = 1.3;
-/// Noise is shorter than this, ns (common practice, no source); with few magnets passages are longer.
-const NOISE: u32 = 200_000;
-const MANY: u32 = 8;
-/// A pulse later than this share may mean that pulses are missing.
-const LATE: f32 = 1.5;
-/// A whole number of spacings must be met this closely, in spacings, to say that pulses are missing.
-const MISSING_WITHIN: f32 = 0.25;
-/// A spindle that slows down is not late by whole spacings time and again: so closely,
-const EXACT: f32 = 0.1;
-/// nor for longer than this, s, or this often in a row where that is longer.
-const LATE_FOR: f32 = 0.3;
-const LATE_OF_TWO: usize = 2;
-const LATE_OF_OTHERS: usize = 4;
-const LATE_IN_A_ROW: usize = 8;
 /// A sensor that missed a pulse among so many misses pulses now and then.
 const RESTLESS: u32 = 200;
-/// Fewer missing pulses in a row than this, or than a turn, are filled in for the calm view.
-const FILLED: u32 = 4;
 /// Intervals are cut here, ns (a minute): what is slower is no speed.
 const LONGEST: u64 = 1 << 36;
 /// New turns weigh 2^-4 in the mean scatter when there are so many.
 const SCATTER_SHIFT: u32 = 4;
 const SCATTERS: u32 = 1 + (1 << SCATTER_SHIFT);
-/// Mean size of the third difference of four times with white noise, over the noise's standard deviation:
-/// sqrt(20) sqrt(2 / pi). A steady acceleration is not in it.
-const SCATTER: f32 = 3.568_2;
-/// The fast view is carried on to its newest pulse by at most this share: where an acceleration ends, it is then still
-/// no more than 0.8 % beyond the truth.
-const CARRY: f32 = 0.008;
-/// Only a change by more is an acceleration and no ripple.
-const RIPPLE: f32 = 0.006;
 
 /// A stretch of motion: an angle in revolutions and the time that it took in seconds.
 #[derive(Clone, Copy, Debug)]
@@ -206,135 +177,6 @@ impl Track {
         }
     }
 
-    /// The stretch between the pulses `from` and `to` magnets before the newest one.
-    pub(super) fn span(&self, from: u32, to: u32) -> Option<Span> {
-        let time = self
-            .marks
-            .back(to)?
-            .since(self.marks.back(from)?)
-            .secs_f32();
-        let angle = self.placement.angle(self.magnet, from, to);
-        (time > 0.0 && angle > 0.0).then_some(Span { angle, time })
-    }
-
-    /// The stretch from the newest pulse to one that may be coming at `at`; where placement is unknown it may be shorter than
-    /// an even one by the factor `unknown`.
-    pub(super) fn next_span(&self, at: Instant, unknown: f32) -> Span {
-        let even = rev(self.placement.gap(self.next_magnet()));
-        let angle = if self.placement.known() {
-            even
-        } else {
-            even / unknown
-        };
-        let time = self
-            .last()
-            .map_or(Duration::ZERO, |last| at.since(last))
-            .secs_f32();
-        Span {
-            angle,
-            time: time.max(f32::MIN_POSITIVE),
-        }
-    }
-
-    /// The last whole turn, or all that is known where that is less.
-    pub(super) fn turn(&self) -> Option<Span> {
-        (1..=self.pulses)
-            .rev()
-            .find_map(|back| self.span(back, 0))
-            .or_else(|| (self.pulses..self.marks.held()).find_map(|back| self.span(back, 0)))
-    }
-
-    /// The fast view, rev/s: a quarter of a turn where placement is known, a whole one before. While the speed changes it
-    /// is carried on from the middle of that stretch to its end, as far as it is safe.
-    pub(super) fn quick(&self) -> Option<f32> {
-        let part = self.pulses.div_ceil(4);
-        let (speed, back) = match self.span(part, 0).filter(|_| self.placement.known()) {
-            Some(span) => (span.speed(), part),
-            None => (self.turn()?.speed(), self.pulses),
-        };
-        let Some(before) = self.span(2 * back, back).map(Span::speed) else {
-            return Some(speed);
-        };
-        let gain = (speed - before) / 2.0;
-        if gain.abs() < RIPPLE * speed || self.calm.is_steady() {
-            return Some(speed);
-        }
-        Some(speed + gain.clamp(-CARRY * speed, CARRY * speed))
-    }
-
-    /// The calm view, rev/s, and its standard error as a share of it: the line through the window, or whole turns from
-    /// end to end where there is none yet.
-    pub(super) fn calm(&self) -> Option<(f64, f32)> {
-        if let Some(speed) = self.calm.speed() {
-            return Some(speed);
-        }
-        let turns = self
-            .calm
-            .steady_turns()
-            .min(self.marks.held() / self.pulses);
-        let span = (1..=turns)
-            .rev()
-            .find_map(|turns| self.span(turns * self.pulses, 0))
-            .or_else(|| self.turn())?;
-        let speed = span.speed();
-        // Nothing is known of the scatter about a line yet: what the last two turns differ by stands for it.
-        let before = self.span(2 * self.pulses, self.pulses).map(Span::speed);
-        let last = self.span(self.pulses, 0).map_or(speed, Span::speed);
-        let error = before.map_or(UNKNOWN, |before| (before / last - 1.0).abs());
-        Some((
-            f64::from(speed),
-            error.max(self.jitter().unwrap_or(0.0) / span.time),
-        ))
-    }
-
-    /// Whether one speed has explained the pulses for this long and for three turns.
-    pub(super) fn steady_for(&self, time: Duration) -> bool {
-        let last = self.last().unwrap_or(Instant::ZERO);
-        self.calm.is_steady() && last.since(self.calm.since()) >= time
-    }
-
-    /// Standard deviation of a pulse's time, s, from how much turns differ; ripple is in it. `None` before it is known.
-    pub(super) fn jitter(&self) -> Option<f32> {
-        (self.scatter > 0).then(|| Duration::from_nanos(self.scatter).secs_f32() / SCATTER)
-    }
-
-    /// Low share of the spacing over the last steady turn, once.
-    pub(super) fn take_low_share(&mut self) -> Option<f32> {
-        self.low_share.take()
-    }
-
-    /// More than a quarter of the last 32 magnets gave no pulse.
-    pub(super) fn often_missing(&self) -> bool {
-        self.missed.count_ones() > 8
-    }
-
-    /// The longest row of magnets without a pulse among the last 32.
-    pub(super) fn longest_missing(&self) -> u32 {
-        let mut rest = self.missed;
-        let mut longest = 0;
-        while rest != 0 {
-            rest &= rest << 1;
-            longest += 1;
-        }
-        longest
-    }
-
-    /// When the next pulse is expected after the newest one, s.
-    pub(super) fn expected(&self) -> Option<f32> {
-        let next = self.placement.gap(self.next_magnet()) as f32;
-        (self.interval > 0)
-            .then(|| Duration::from_nanos(self.interval).secs_f32() * next / self.gap as f32)
-    }
-
-    /// Whether a pulse at this time keeps the rhythm of those before.
-    pub(super) fn goes_on(&self, at: Instant) -> bool {
-        let steps = self
-            .last()
-            .zip(self.expected())
-            .map(|(last, expected)| at.since(last).secs_f32() / expected);
-        self.marks.held() > 2 && steps.is_some_and(|steps| (EARLY..1.0 / EARLY).contains(&steps))
-    }
-
     /// Takes the next pulse; O(1), but for the end of a turn.
     ///
     /// An early pulse with an implausible width never makes the spindle faster: a magnet parked at its switching point
@@ -356,226 +198,6 @@ impl Track {
         self.low_share.is_some()
     }
 
-    /// Takes a pulse that takes a closer look.
-    #[cold]
-    fn irregular(&mut self, pulse: Pulse, plausible: bool, rejected: &mut Rejected) {
-        self.irregular = true;
-        let Some(newest) = self.last().filter(|_| self.interval > 0) else {
-            return self.accept(pulse, 1, rejected);
-        };
-        if self.is_due(pulse.at, newest) && self.suspect.is_none() {
-            self.late = 0;
-            self.before = None;
-            self.accept(pulse, 1, rejected);
-        } else {
-            self.out_of_time(pulse, newest, plausible, rejected);
-        }
-    }
-
-    /// Whether a pulse comes at 3/4 to 3/2 of what is expected, without a division.
-    fn is_due(&self, at: Instant, newest: Instant) -> bool {
-        let interval = at.since(newest).nanos().min(LONGEST);
-        let come = interval * u64::from(self.gap);
-        let due = self.interval * u64::from(self.placement.gap(self.next_magnet()));
-        let thrice = due + (due << 1);
-        come << 2 >= thrice && come << 1 < thrice
-    }
-
-    /// A piece of noise just before a passage looks like its beginning: of all the pieces' falls the one that a steady spindle
-    /// makes one expect, and else the first.
-    #[cold]
-    pub(super) fn likeliest(&self, begins: &[Instant]) -> Instant {
-        let first = begins.first().copied().unwrap_or(Instant::ZERO);
-        let turn_ago = self.marks.back(self.pulses - 1);
-        match turn_ago.zip(self.calm.period()) {
-            Some((turn_ago, period)) if self.calm.is_steady() => {
-                let expected = turn_ago + Duration::from_nanos(period);
-                let off = |at: &Instant| at.since(expected).max(expected.since(*at));
-                begins.iter().copied().min_by_key(off).unwrap_or(first)
-            }
-            _ => first,
-        }
-    }
-
-    /// Takes a pulse that is early or late, or one that decides about those before it.
-    fn out_of_time(
-        &mut self,
-        pulse: Pulse,
-        newest: Instant,
-        plausible: bool,
-        rejected: &mut Rejected,
-    ) {
-        let at = pulse.at;
-        let Some(expected) = self.expected() else {
-            return self.accept(pulse, 1, rejected);
-        };
-        let steps = at.since(newest).secs_f32() / expected;
-        if self.late > 0 && steps >= LATE {
-            let odd = (steps - libm::roundf(steps)).abs();
-            // Of two magnets one may be gone: then every other pulse is missing for good, where none was before.
-            let least = match self.pulses == 2 && !self.restless {
-                true => LATE_OF_TWO,
-                false => LATE_OF_OTHERS,
-            };
-            let enough = ((LATE_FOR / (steps * expected)) as usize).clamp(least, LATE_IN_A_ROW);
-            if odd > EXACT || self.late >= enough {
-                // Late again: the spindle has become slower, and none was missing.
-                self.before = Some((self.interval, self.gap));
-                self.retreat(rejected);
-                return self.accept(pulse, 1, rejected);
-            }
-        } else {
-            self.late = 0;
-        }
-        if let Some((interval, gap)) = self.before.take() {
-            let come = at.since(newest).nanos().min(LONGEST) * u64::from(gap);
-            let due = interval * u64::from(self.placement.gap(self.next_magnet()));
-            if come.abs_diff(due) < due / 16 {
-                // The rhythm from before the late ones returns: they were missing pulses.
-                self.accept(pulse, 1, rejected);
-                return self.begin_anew();
-            }
-        }
-        let Some(suspect) = self.suspect.take() else {
-            return match steps < EARLY {
-                true if plausible => self.suspect(pulse),
-                true => self.extra(pulse, newest, rejected),
-                false => self.accept_late(pulse, steps, expected, rejected),
-            };
-        };
-        let (first, second) = (
-            suspect.at.since(newest).secs_f32(),
-            at.since(suspect.at).secs_f32(),
-        );
-        let halves_alike = alike(first, second);
-        // A pulse of noise does not move the one after it.
-        let out_of_time = (steps - libm::roundf(steps)).abs() > IN_TIME;
-        let no_noise = suspect.width >= NOISE && self.pulses < MANY;
-        let faster = (FASTER * first..ALIKE * first).contains(&second) && (out_of_time || no_noise);
-        if plausible && (faster || halves_alike && self.extra_in_a_row > 0) {
-            // Early twice, out of the rhythm or time and again: the spindle is faster.
-            self.extra_in_a_row = 0;
-            self.accept(suspect, 1, rejected);
-            self.accept(pulse, 1, rejected);
-            return;
-        }
-        self.extra(suspect, newest, rejected);
-        if steps < EARLY {
-            self.suspect(pulse);
-        } else {
-            self.extra_in_a_row = u8::from(halves_alike);
-            self.accept_late(pulse, steps, expected, rejected);
-        }
-    }
-
-    fn suspect(&mut self, pulse: Pulse) {
-        self.suspect = Some(pulse);
-        self.pace = 0;
-    }
-
-    /// Drops a pulse between two expected ones; close behind a passage it is that passage, doubled.
-    fn extra(&self, pulse: Pulse, newest: Instant, rejected: &mut Rejected) {
-        let behind = pulse
-            .at
-            .since(newest)
-            .nanos()
-            .saturating_sub(u64::from(self.width));
-        if behind < u64::from(self.width / 2) {
-            rejected.doubled += 1;
-        } else {
-            rejected.extra += 1;
-        }
-    }
-
-    /// Takes a pulse that is not early. Whole spacings late, it is taken as a sign of missing pulses, which is the higher
-    /// speed; where braking might explain the gap as well, the next pulse tells.
-    fn accept_late(&mut self, pulse: Pulse, steps: f32, expected: f32, rejected: &mut Rejected) {
-        let whole = libm::roundf(steps);
-        if steps < LATE || (steps - whole).abs() > MISSING_WITHIN {
-            return self.accept(pulse, 1, rejected);
-        }
-        let interval = expected * steps;
-        // Braking may have begun with the interval before.
-        let speed = 1.0 / (expected * self.pulses as f32) - self.brake * expected / 2.0;
-        let braked = (self.brake * interval).min(speed);
-        let least = interval * (speed - braked / 2.0) * self.pulses as f32;
-        let spacing = Duration::from_secs_f32(expected).nanos();
-        if u64::from(self.width) > spacing - spacing / 4 {
-            rejected.merged = rejected.merged.saturating_add(1);
-        }
-        if self.late == 0 {
-            self.restless = self.since_missing < RESTLESS;
-        }
-        self.accept(pulse, whole as u32, rejected);
-        self.late = if least < 1.0 + MISSING_WITHIN {
-            self.late + 1
-        } else {
-            0
-        };
-    }
-
-    /// No pulses were missing before the newest marks after all.
-    fn retreat(&mut self, rejected: &mut Rejected) {
-        let mut late: Vec<Instant, LATE_IN_A_ROW> = Vec::new();
-        let mut missing = 0;
-        for _ in 0..core::mem::take(&mut self.late) {
-            if let Some((at, before)) = self.marks.pop() {
-                missing += before;
-                // There are never more of them.
-                let _ = late.push(at);
-            }
-        }
-        let count = late.len() as u32;
-        while let Some(at) = late.pop() {
-            self.marks.push(at);
-        }
-        self.turn_back(missing);
-        rejected.missing = rejected.missing.saturating_sub(missing);
-        self.missed = self.missed.checked_shr(missing + count).unwrap_or(0) << count;
-        if let Some((newest, before)) = self.last().zip(self.marks.back(1)) {
-            self.newest = before;
-            self.paced(newest);
-        }
-        self.begin_anew();
-    }
-
-    /// The count of magnets was too high by so many.
-    fn turn_back(&mut self, magnets: u32) {
-        self.magnet = (self.magnet + self.pulses - magnets % self.pulses) % self.pulses;
-    }
-
-    /// The count of magnets has been corrected: no window goes through that.
-    fn begin_anew(&mut self) {
-        self.unbroken = 0;
-        let turn = self.span(self.pulses, 0).map(|turn| turn.time);
-        let turn = turn.map_or(0, |time| Duration::from_secs_f32(time).nanos());
-        let since = self.marks.back(self.pulses).unwrap_or(Instant::ZERO);
-        self.calm.restart(turn, since);
-    }
-
-    /// The last interval, if it may have been one slow spacing as well as several with pulses missing.
-    pub(super) fn doubtful_interval(&self, unknown: f32) -> Option<Span> {
-        if self.late == 0 {
-            return None;
-        }
-        let missing = (1..self.marks.held()).find(|&back| self.marks.back(back).is_some())? - 1;
-        let time = self
-            .marks
-            .last()?
-            .since(self.marks.back(missing + 1)?)
-            .secs_f32();
-        // The first of those magnets.
-        let first = (self.magnet + self.pulses - missing % self.pulses) % self.pulses;
-        let angle = rev(self.placement.gap(first)) / unknown;
-        (time > 0.0).then_some(Span { angle, time })
-    }
-
-    fn miss(&mut self, missing: u32, rejected: &mut Rejected) {
-        rejected.missing = rejected.missing.saturating_add(missing);
-        let ones = 1_u32.checked_shl(missing).map_or(u32::MAX, |bit| bit - 1);
-        self.missed = self.missed.checked_shl(missing).unwrap_or(0) | ones;
-    }
-
     /// The pace of a pulse as the next magnet's.
     fn paced(&mut self, at: Instant) {
         let interval = at.nanos().wrapping_sub(self.newest.nanos());
@@ -585,36 +207,6 @@ impl Track {
         let next = self.placement.gap(self.next_magnet());
         let alike = next.abs_diff(self.gap) <= self.gap >> GAP_SHIFT;
         self.pace = u32::try_from(interval).ok().filter(|_| alike).unwrap_or(0);
-    }
-
-    /// The pace of the newest pulse where it came `steps` magnets after the one before.
-    fn paced_over(&mut self, interval: u64, steps: u32) {
-        self.pace = 0;
-        self.interval = (interval.clamp(1, LONGEST) / u64::from(steps)).max(1);
-        let angle = self.placement.angle(self.magnet, steps, 0);
-        self.gap = ((angle * REV as f32 / steps as f32) as u32).max(1);
-    }
-
-    /// Takes a pulse as the `steps`-th magnet after the newest one.
-    #[cold]
-    fn accept(&mut self, pulse: Pulse, steps: u32, rejected: &mut Rejected) {
-        let before = self.last();
-        if steps > 1 {
-            self.skip(pulse.at, steps - 1, rejected);
-        }
-        self.next(pulse, rejected);
-        match before {
-            Some(before) if steps > 1 => self.paced_over(pulse.at.since(before).nanos(), steps),
-            Some(_) => {}
-            // There is no interval before the first pulse.
-            None => {
-                self.interval = 0;
-                self.pace = 0;
-            }
-        }
-        if self.suspect.is_some() {
-            self.pace = 0;
-        }
     }
 
     /// Takes a pulse as the next magnet's.
@@ -675,31 +267,6 @@ impl Track {
         newest.abs_diff(before) > self.usually && before.abs_diff(period) <= self.usually / 2
     }
 
-    /// Passes magnets whose pulses are missing before the one at `at`; their times are filled in evenly by angle.
-    fn skip(&mut self, at: Instant, missing: u32, rejected: &mut Rejected) {
-        self.miss(missing, rejected);
-        let before = self.last().unwrap_or(at);
-        let interval = at.since(before).secs_f32();
-        self.unbroken = 0;
-        self.since_missing = 0;
-        let fill = missing < self.pulses.max(FILLED);
-        let next = (self.magnet + missing + 1) % self.pulses;
-        let whole = self.placement.angle(next, missing + 1, 0);
-        for skipped in 1..=missing.min(u32::from(u8::MAX)) {
-            self.marks.push_missing();
-            if fill {
-                self.magnet = self.next_magnet();
-                let part = self.placement.angle(self.magnet, skipped, 0) / whole;
-                self.calm
-                    .pulse(before + Duration::from_secs_f32(interval * part));
-            }
-        }
-        if !fill {
-            self.magnet = (self.magnet + missing) % self.pulses;
-            self.calm.clear();
-        }
-    }
-
     /// At the end of a turn that was steady like the one before it: learns from it. O(pulses).
     #[cold]
     fn turned(&mut self, at: Instant) {
@@ -737,12 +304,4 @@ impl Track {
         }
         self.low_share = Some(low as f32 / turn as f32);
     }
-}
-
-/// The error of a speed of which nothing but one turn is known: the largest error that placement makes (see the start).
-const UNKNOWN: f32 = 0.1;
-
-/// Within 30 % of each other.
-fn alike(a: f32, b: f32) -> bool {
-    a < ALIKE * b && b < ALIKE * a
 }
