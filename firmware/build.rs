@@ -7,7 +7,7 @@ use std::{env, fs};
 use rimrate_core::machine::{Machine, MachineSpec};
 use start::StartSpec;
 
-#[path = "src/start.rs"]
+#[path = "flash/src/start.rs"]
 mod start;
 
 /// Room for the packed profile; the largest one allowed, 32 steps and 10 holders with full names, takes 1.6 KiB.

@@ -115,15 +115,40 @@ fn a_setup_is_handed_out_once_five_seconds_after_its_last_change() {
     assert!(clocked.last().next <= at(9.0));
     clocked.rest(100.0);
     assert_eq!(clocked.saved(), [(at(9.0), bar(30.0))]);
-    // The same while the spindle runs, and for a cap taken away by a hold.
+    // The same for a cap taken away by a hold.
     let mut clocked = confirmed(Setup {
         cap: Some(rpm(200.0)),
         ..bar(25.0)
     });
     clocked.event(Event::Press(Knob::Right));
     let due = clocked.now + HOLD + Duration::from_secs(5);
-    clocked.spin(150.0, 60.0);
+    clocked.rest(60.0);
     assert_eq!(clocked.saved(), [(due, bar(25.0))]);
+}
+
+/// Keeping may hold the box up: not while the spindle may turn, whatever the signal is then.
+#[test]
+fn a_setup_that_was_changed_while_turning_is_handed_out_at_rest() {
+    let mut clocked = confirmed(bar(25.0));
+    clocked.spin(290.0, 3.0);
+    clocked.event(Event::Turn(Knob::Right, 1));
+    clocked.spin(290.0, 30.0);
+    assert_eq!(clocked.saved(), []);
+    assert_eq!(clocked.instrument.view().reading.signal, Signal::Turning);
+    let stopped = clocked.now;
+    clocked.rest(20.0);
+    let saved = clocked.saved();
+    assert_eq!(saved.len(), 1, "{saved:?}");
+    let (at, setup) = saved[0];
+    assert_eq!(setup.diameter, bar(26.0).diameter);
+    assert!(at > stopped);
+    let before = clocked.polls.iter().rev().find(|(t, _)| *t < at);
+    assert!(before.is_some_and(|(_, poll)| poll.save.is_none()));
+    // Asked for no more often on its account than otherwise.
+    let asked = clocked.polls.iter().filter(|(t, _)| *t < stopped).count();
+    let mut other = confirmed(bar(25.0));
+    other.spin(290.0, 33.0);
+    assert!(asked <= other.polls.len() + 20, "{asked} times");
 }
 
 #[test]

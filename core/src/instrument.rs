@@ -54,7 +54,8 @@ pub struct Poll {
     pub outputs: Outputs,
     /// The picture has changed: call [`Instrument::draw`].
     pub redraw: bool,
-    /// Keep this setup, and hand it to [`Instrument::new`] at the next start.
+    /// Keep this setup, and hand it to [`Instrument::new`] at the next start. Only ever given while no pulses come: a memory
+    /// may hold everything else up for as long as it erases.
     pub save: Option<Setup>,
 }
 
@@ -242,26 +243,26 @@ impl Instrument {
         if redraw {
             self.drawn = Some((now, shown));
         }
-        let save = self
+        let running = self.reading.is_running();
+        // While it may turn, this waits: the look that finds it at rest hands it out.
+        let due = self
             .unsaved_since
-            .is_some_and(|since| now.since(since) >= SAVE_AFTER)
-            .then_some(self.setup);
+            .filter(|_| !running)
+            .map(|since| since + SAVE_AFTER);
+        let save = due.filter(|&due| now >= due).map(|_| self.setup);
         if save.is_some() {
             self.unsaved_since = None;
         }
         let look = now
-            + if self.reading.is_running() {
+            + if running {
                 LOOK
             } else if matches!(page, Page::TenTurns | Page::PlateSpeed) {
                 REDRAW
             } else {
                 LOOK_AT_REST
             };
-        let next = [
-            beacon_next,
-            self.panel.next_change(),
-            self.unsaved_since.map(|since| since + SAVE_AFTER),
-        ];
+        let due = due.filter(|_| save.is_none());
+        let next = [beacon_next, self.panel.next_change(), due];
         Poll {
             next: next.into_iter().flatten().fold(look, Instant::min),
             outputs,

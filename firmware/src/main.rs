@@ -8,7 +8,8 @@
 //!
 //! Invariants:
 //! - an edge gets its time from the PIO, never from a task: neither interrupts nor drawing reach a measurement;
-//! - one task owns the `Instrument`; none of its steps takes longer than 5 ms, and it never waits for the display;
+//! - one task owns the `Instrument`; none of its steps takes longer than 5 ms but the one that keeps a setup, at rest; it never
+//!   waits for the display;
 //! - nothing is allocated; what is lost is counted, and a window with a loss in it is dropped as a whole;
 //! - the relay is open after every reset, and stays open after a panic or a watchdog reset until a knob is pressed;
 //! - the watchdog is fed only when every task has checked in.
@@ -21,8 +22,6 @@ mod fault;
 mod frame;
 mod notice;
 mod oled;
-mod profile;
-mod start;
 mod tasks;
 
 use embassy_executor::{Executor, InterruptExecutor};
@@ -76,7 +75,7 @@ fn main() -> ! {
     let knobs = KNOBS.start(interrupt::SWI_IRQ_1);
     knobs.spawn(tasks::knobs::run(parts.knobs).expect("the first of its kind"));
 
-    let owner = OWNER.init_with(|| Owner::new(parts.capture, parts.signs, cause));
+    let owner = OWNER.init_with(|| Owner::new(parts.capture, parts.signs, parts.flash, cause));
     REST.init(Executor::new()).run(|rest| {
         rest.spawn(tasks::owner::run(owner).expect("the first of its kind"));
         rest.spawn(tasks::screen::run(parts.display).expect("the first of its kind"));

@@ -11,4 +11,5 @@ mod image;
 mod parity;
 mod rig;
 mod sense;
+mod stored;
 mod support;

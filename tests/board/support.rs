@@ -2,7 +2,7 @@
 
 use rimrate_core::machine::MachineSpec;
 use rimrate_core::setup::Setup;
-use rimrate_core::time::{Edge, Instant};
+use rimrate_core::time::{Edge, EdgeKind, Instant};
 use rimrate_tests::bar;
 
 use crate::rig::{Emulator, Start};
@@ -87,9 +87,22 @@ pub(crate) fn run_up(rpm: f64, pulses: u32, from: u64, until: u64) -> Vec<Edge> 
         .collect()
 }
 
+/// Edges of a spindle that turns evenly, runs down evenly within the last second, and stands at `until`.
+pub(crate) fn run_down(rpm: f64, pulses: u32, from: u64, until: u64) -> Vec<Edge> {
+    let mirrored = |at: Instant| Instant::from_nanos(from + until - at.nanos());
+    run_up(rpm, pulses, from, until)
+        .iter()
+        .rev()
+        .map(|e| match e.kind {
+            EdgeKind::Fall => Edge::rise(mirrored(e.at)),
+            EdgeKind::Rise => Edge::fall(mirrored(e.at)),
+        })
+        .collect()
+}
+
 /// The same as [`spin`], with every edge turned round: a sensor that is high at the magnet.
 pub(crate) fn inverted(edges: &[Edge]) -> Vec<Edge> {
-    use rimrate_core::time::EdgeKind::{Fall, Rise};
+    use EdgeKind::{Fall, Rise};
     edges
         .iter()
         .map(|e| Edge {

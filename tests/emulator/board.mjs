@@ -5,9 +5,13 @@ import { SimulationClock } from './node_modules/rp2040js/dist/esm/clock/simulati
 import { Display } from './display.mjs';
 import * as measures from './measures.mjs';
 import { Pios } from './pio.mjs';
+import { Rom } from './rom.mjs';
 
 const CYCLE_NS = 8;
 const FLASH = 0x10000000;
+/** The Pico's flash. */
+const FLASH_BYTES = 2 * 1024 * 1024;
+const LOG_MAGIC = 'SEGGER RTT';
 const SRAM = 0x20000000;
 const VECTORS = 0x10000100;
 const ADDRESS = 0x3c;
@@ -24,9 +28,11 @@ export class Board {
    * @param pins what is wired to which pin: { over: 16, ... }
    * @param log address of the log's control block
    */
-  constructor({ flash, pins, log, display = 'ssd1306', timerUs = 0, firstCount = 0 }) {
-    // A power cut would leave a changed byte changed, as the chip does.
-    this.image = new Uint8Array(flash);
+  constructor({ flash, pins, log, display = 'ssd1306', timerUs = 0, firstCount = 0, programNs, eraseNs }) {
+    // A changed byte stays changed over a power cut, as in the chip.
+    this.image = new Uint8Array(FLASH_BYTES).fill(0xff);
+    this.image.set(flash);
+    this.flashTimes = { programNs, eraseNs };
     this.pins = pins;
     this.log = log - SRAM;
     this.display = new Display(display);
@@ -84,7 +90,8 @@ export class Board {
       watchdog.reason = kept.reason;
       watchdog.scratchData.set(kept.scratch);
     }
-    measures.faults(mcu, (pc) => this.problems.push(`locked up at 0x${pc.toString(16)}`));
+    this.rom = new Rom(mcu, this.image, this.flashTimes, this.problems);
+    measures.faults(mcu, this.rom, (pc) => this.problems.push(`locked up at 0x${pc.toString(16)}`));
     measures.flashControl(mcu);
     measures.timer(mcu);
     measures.pulls(mcu, new Set(this.levels.keys()));
@@ -178,12 +185,17 @@ export class Board {
   #happen([, what, value]) {
     if (what === 'display') {
       this.#displayFault(value);
+    } else if (what === 'power') {
+      this.reset = 'power';
     } else {
       this.#pin(what, value);
     }
   }
 
-  /** Lets `ns` pass. `stimuli` are [ns from now, pin or 'display', level or fault], in order of time. */
+  /**
+   * Lets `ns` pass. `stimuli` are [ns from now, pin or 'display', level or fault], in order of time; with 'power' the board is
+   * switched off and on.
+   */
   run(ns, stimuli = []) {
     const from = this.now;
     const end = from + ns;
@@ -193,16 +205,19 @@ export class Board {
     this.resets = [];
     this.calls = [];
     while (this.now < end) {
-      const { epoch, clock, mcu, pios } = this;
+      const { epoch, clock, mcu, pios, rom } = this;
       const { core } = mcu;
       const stop = end - epoch;
       const stimulus = () => (next < stimuli.length ? from + stimuli[next][0] - epoch : Infinity);
       let due = Math.min(stimulus(), pios.due, this.nextLog, stop);
       const watched = this.watched.size > 0;
       while (!this.reset) {
-        if (core.waiting) {
+        if (core.waiting || rom.work) {
           const alarm = clock.nextAlarm ? clock.nextAlarm.nanos : Infinity;
-          clock.tick(Math.max(Math.min(alarm, due) - clock.nanos, 0));
+          clock.tick(Math.max(Math.min(alarm, due, rom.until) - clock.nanos, 0));
+          if (clock.nanos >= rom.until) {
+            rom.finish();
+          }
         } else {
           if (watched) {
             this.#watch(core);
@@ -213,7 +228,7 @@ export class Board {
           due = pios.due;
         }
         if (clock.nanos >= due) {
-          while (clock.nanos >= stimulus()) {
+          while (clock.nanos >= stimulus() && !this.reset) {
             this.#happen(stimuli[next++]);
           }
           if (clock.nanos >= pios.due) {
@@ -250,25 +265,40 @@ export class Board {
     };
   }
 
-  /** Everything but the SRAM and the watchdog starts anew (RP2040 data sheet, 4.7); outputs fall to their pulls. */
+  /**
+   * After a reset everything but the SRAM and the watchdog starts anew (RP2040 data sheet, 4.7), after a power cut these, too,
+   * and the SRAM is noise; outputs fall to their pulls.
+   */
   #restart() {
     this.#drain();
-    const { reason, scratchData } = this.reset;
-    this.resets.push([this.now, reason === 2 ? 'forced' : 'timer']);
+    const cut = this.reset === 'power';
+    const kept = { sram: this.mcu.sram, reason: this.reset.reason, scratch: this.reset.scratchData };
+    if (cut) {
+      this.rom.cut();
+      this.display.powerUp();
+      kept.sram = this.mcu.sram.map((_, i) => Math.imul(i ^ this.boot, 0x9e3779b1) >>> 24);
+      kept.reason = 0;
+      kept.scratch = new Uint32Array(8);
+    } else {
+      if (this.rom.work) {
+        // The flash chip does not notice.
+        this.rom.finish();
+      }
+      this.resets.push([this.now, kept.reason === 2 ? 'forced' : 'timer']);
+    }
     this.boot++;
     this.awakeBefore += this.mcu.core.cycles;
     for (const name of ['over', 'right', 'under', 'relay', 'status', 'buzzer']) {
       this.events.push([this.now, name, 0]);
     }
-    this.#start({
-      nanos: 0,
-      epoch: this.now,
-      kept: { sram: this.mcu.sram, reason, scratch: scratchData },
-    });
+    this.#start({ nanos: 0, epoch: this.now, kept });
   }
 
   #drain() {
     const view = this.mcu.sramView;
+    if (LOG_MAGIC !== String.fromCharCode(...this.mcu.sram.subarray(this.log, this.log + LOG_MAGIC.length))) {
+      return;
+    }
     // Up channel 0 of the log's control block: name, buffer, size, write, read, flags.
     const [buffer, size, write, read] = [28, 32, 36, 40].map((at) => view.getUint32(this.log + at, true));
     if (write === read || size === 0 || write >= size || read >= size) {

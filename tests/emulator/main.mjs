@@ -1,7 +1,8 @@
 // One request a line on standard input, one answer a line on standard output, both JSON.
 //
-//   {"do":"start","flash":base64,"pins":{...},"log":ADDRESS,"display":"ssd1306","timerUs":0,"firstCount":0}
-//   {"do":"run","ns":N,"stimuli":[[dt, pin or "display", level or fault],...]}
+//   {"do":"start","flash":base64,"pins":{...},"log":ADDRESS,"display":"ssd1306","timerUs":0,"firstCount":0,
+//    "programNs":N,"eraseNs":N}
+//   {"do":"run","ns":N,"stimuli":[[dt, pin or "display" or "power", level or fault],...]}
 //       -> {"t","awake","log":[[t,boot,base64]],"events":[[t,what,value]],"resets":[[t,reason]],"calls":[[name,cycles,t]],
 //           "feeds","longestUnfed","displayBytes","picture","problems":[text]}
 //          `picture` is base64 of 8 pages of 128 bytes, there when the display was written to since it was told last;

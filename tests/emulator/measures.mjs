@@ -33,10 +33,17 @@ export function logger(core, problems) {
   };
 }
 
-/** UDF only calls a hook: it becomes the hard fault that it is (ARMv6-M architecture reference, B1.5.6). */
-export function faults(mcu, onLockUp) {
-  mcu.onBreak = () => {
+/**
+ * UDF and BKPT only call a hook: outside of the boot ROM they become the hard fault that they are (ARMv6-M architecture
+ * reference, B1.5.6).
+ */
+export function faults(mcu, rom, onLockUp) {
+  mcu.onBreak = (code) => {
     const { core } = mcu;
+    if (rom.has(core.PC - core.breakRewind)) {
+      rom.call(code);
+      return;
+    }
     core.PC -= core.breakRewind;
     // A fault inside the hard fault's own handler locks the core up.
     if (core.IPSR === HARD_FAULT) {

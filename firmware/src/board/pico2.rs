@@ -9,6 +9,9 @@ pub(crate) const NAME: &str = "Pico 2 (RP2350)";
 /// The system clock that `embassy_rp` sets: PLL_SYS at 150 MHz from the 12 MHz crystal (RP2350 data sheet, 8.6).
 pub(crate) const SYS_HZ: u32 = 150_000_000;
 
+/// Bytes of flash: the Pico 2 has 4 MiB (Raspberry Pi Pico 2 data sheet, 1).
+pub(crate) const FLASH_BYTES: u32 = 4 * 1024 * 1024;
+
 /// The display's I2C.
 pub(crate) type DisplayI2c = embassy_rp::peripherals::I2C0;
 /// The display's data pin.
@@ -67,6 +70,8 @@ parts! {
     tone: PWM_SLICE7,
     /// Restarts what hangs.
     watchdog: WATCHDOG,
+    /// Holds the program, and what the operator chose last.
+    flash: FLASH,
 }
 
 /// Transfers that a DMA channel has left (RP2350 data sheet, 12.6.10).

@@ -6,7 +6,7 @@ use embassy_rp::Peri;
 use embassy_rp::gpio::{Flex, Input, Level, Output, Pull};
 use embassy_rp::i2c::{Async, I2c};
 use embassy_rp::pac;
-use embassy_rp::peripherals::{DMA_CH0, DMA_CH1};
+use embassy_rp::peripherals::{DMA_CH0, DMA_CH1, FLASH};
 use embassy_rp::pio::{Config, FifoJoin, Pio, ShiftDirection};
 use embassy_rp::pwm::{self, Pwm};
 use embassy_rp::watchdog::Watchdog;
@@ -30,6 +30,8 @@ pub(crate) struct Parts {
     pub(crate) signs: Signs,
     /// The watchdog, not yet started.
     pub(crate) watchdog: Watchdog,
+    /// Where something may be kept.
+    pub(crate) flash: Peri<'static, FLASH>,
 }
 
 impl Board {
@@ -65,6 +67,7 @@ impl Board {
             },
             signs,
             watchdog: Watchdog::new(self.watchdog),
+            flash: self.flash,
         }
     }
 }
@@ -99,7 +102,8 @@ const RING_MARGIN: u32 = 64;
 /// Words after which the DMA is triggered anew; a power of two, so that counts subtract across it, and within the 28 bits
 /// of the RP2350 (RP2350 data sheet, 12.6.2.1). At the limit that happens every 56 minutes.
 const BLOCK: u32 = 1 << 27;
-/// What the second channel writes into the first one's count.
+/// What the second channel writes into the first one's count. In RAM: the flash may be busy when it is read.
+#[unsafe(link_section = ".data.rearm")]
 static REARM: u32 = BLOCK;
 
 /// The ring that the DMA fills.

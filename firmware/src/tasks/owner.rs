@@ -2,6 +2,8 @@
 
 use embassy_futures::select::{Either, select};
 use embassy_futures::yield_now;
+use embassy_rp::Peri;
+use embassy_rp::peripherals::FLASH;
 use embassy_time::{Duration, Instant as Now, Timer};
 use embedded_graphics::pixelcolor::BinaryColor;
 use embedded_graphics::prelude::DrawTarget;
@@ -12,13 +14,15 @@ use rimrate_core::setup::Setup;
 use rimrate_core::tacho::{Rejected, Signal};
 use rimrate_core::time::Instant;
 use rimrate_core::verdict::Verdict;
+use rimrate_flash::profile;
+use rimrate_flash::stored::Stored;
 use static_cell::StaticCell;
 
 use super::sense::{Sense, now};
 use super::{MESSAGES, Message, knobs, screen};
-use crate::board::{Capture, Signs};
+use crate::board::{Capture, FLASH_BYTES, Signs};
 use crate::fault::{Cause, Task, at_work, check_in};
-use crate::{notice, profile};
+use crate::notice;
 
 /// Edges are fetched this often while they come. With a picture being drawn in between an over-speed is shown within 5 ms.
 const FETCH: Duration = Duration::from_millis(2);
@@ -58,6 +62,7 @@ pub(crate) struct Owner {
     instrument: &'static mut Instrument,
     sense: Sense,
     signs: Signs,
+    stored: Stored,
     /// Shown, and the relay held open, until a knob is pressed.
     cause: Cause,
     /// The picture has to be drawn though the instrument has not changed.
@@ -87,6 +92,16 @@ struct Counts {
     unheard: u32,
 }
 
+/// The machine's profile as `build.rs` packed it: in flash, under this name, on its own.
+#[used]
+#[unsafe(no_mangle)]
+static RIMRATE_PROFILE: [u8; 2048] = *include_bytes!(concat!(env!("OUT_DIR"), "/profile.bin"));
+
+fn packed_profile() -> &'static [u8] {
+    // As it is in flash, not as the compiler remembers it.
+    core::hint::black_box(&RIMRATE_PROFILE)
+}
+
 /// A few kilobytes: it lives in a static of its own, and nobody else's frame holds it meanwhile.
 #[inline(never)]
 fn start_instrument(machine: &Machine, chosen: Option<Setup>) -> &'static mut Instrument {
@@ -96,8 +111,15 @@ fn start_instrument(machine: &Machine, chosen: Option<Setup>) -> &'static mut In
 
 impl Owner {
     /// Loads the machine's profile and starts the instrument on it.
-    pub(crate) fn new(capture: Capture, signs: Signs, cause: Cause) -> Self {
-        let (machine, chosen) = profile::load();
+    pub(crate) fn new(
+        capture: Capture,
+        signs: Signs,
+        flash: Peri<'static, FLASH>,
+        cause: Cause,
+    ) -> Self {
+        let (machine, start, mark) = profile::load(packed_profile());
+        let mut stored = Stored::new(flash, FLASH_BYTES, mark);
+        let chosen = stored.load(start);
         let pulses = chosen.map_or(machine.pulses(), |setup| setup.pulses_on(machine).get());
         defmt::info!("machine {=str} pulses {=u16}", machine.name(), pulses.get());
         let sense = Sense::new(capture, pulses.get());
@@ -108,6 +130,7 @@ impl Owner {
             instrument,
             sense,
             signs,
+            stored,
             repaint: !matches!(cause, Cause::Power),
             cause,
             display: true,
@@ -160,6 +183,9 @@ impl Owner {
         if time >= self.next_poll || self.repaint {
             self.poll(taken.until);
         }
+        if !self.instrument.view().reading.is_running() {
+            self.stored.go_on();
+        }
         self.status(time);
         self.log(time);
         taken.more
@@ -194,6 +220,9 @@ impl Owner {
         let poll = self.instrument.poll(now);
         // Rounded up: woken before its time the instrument would only say so again.
         self.next_poll = Now::from_micros(poll.next.nanos().div_ceil(1000));
+        if let Some(setup) = &poll.save {
+            self.stored.keep(setup);
+        }
         let mut outputs = poll.outputs;
         let verdict = self.instrument.verdict();
         if !self.display && is_dark(verdict) {

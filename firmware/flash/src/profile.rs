@@ -1,4 +1,5 @@
-//! The machine's profile as `build.rs` packed it.
+//! The machine's profile as the firmware's `build.rs` packed it: length (u16) and CRC-32 (u32), both little-endian, then a
+//! postcard record.
 
 use crc::{CRC_32_ISO_HDLC, Crc, NoTable};
 use rimrate_core::machine::{Machine, MachineSpec};
@@ -7,24 +8,17 @@ use static_cell::StaticCell;
 
 use crate::start::StartSpec;
 
-/// Bytes reserved in flash.
-const ROOM: usize = 2048;
-
-/// In flash, under this name, on its own: length (u16) and CRC-32 (u32), both little-endian, then a postcard record.
-#[used]
-#[unsafe(no_mangle)]
-static RIMRATE_PROFILE: [u8; ROOM] = *include_bytes!(concat!(env!("OUT_DIR"), "/profile.bin"));
-
-/// The machine and what is chosen at the start, checked once more by the same rules as at build time.
+/// The machine and what is chosen at the start, checked once more by the same rules as at build time, and a number that
+/// another profile does not have.
 ///
 /// Panics, and so restarts, where the flash does not hold what was built.
 ///
 /// A machine takes three kilobytes, its unchecked form as much, and moving them takes copies: hence the statics and the
 /// functions that are not inlined. What they need on the stack they need one after the other.
 #[inline(never)]
-pub(crate) fn load() -> (&'static Machine, Option<Setup>) {
+pub fn load(packed: &'static [u8]) -> (&'static Machine, Option<Setup>, u32) {
     static MACHINE: StaticCell<Machine> = StaticCell::new();
-    let record = record();
+    let (record, mark) = record(packed);
     let Ok((spec, rest)) = postcard::take_from_bytes::<MachineSpec>(record) else {
         panic!("profile: no machine");
     };
@@ -32,15 +26,13 @@ pub(crate) fn load() -> (&'static Machine, Option<Setup>) {
         Ok(machine) => machine,
         Err(refused) => panic!("profile: {}", refused),
     });
-    (machine, start(rest))
+    (machine, start(rest), mark)
 }
 
-/// The packed bytes, if they are whole.
+/// The packed bytes, if they are whole, and their checksum.
 #[inline(never)]
-fn record() -> &'static [u8] {
-    // Read as it is in flash, not as the compiler remembers it.
-    let bytes: &'static [u8] = core::hint::black_box(&RIMRATE_PROFILE);
-    let Some((&[l0, l1, c0, c1, c2, c3], rest)) = bytes.split_first_chunk::<6>() else {
+fn record(packed: &'static [u8]) -> (&'static [u8], u32) {
+    let Some((&[l0, l1, c0, c1, c2, c3], rest)) = packed.split_first_chunk::<6>() else {
         panic!("profile: no header");
     };
     let length = usize::from(u16::from_le_bytes([l0, l1]));
@@ -49,7 +41,7 @@ fn record() -> &'static [u8] {
     if crc != u32::from_le_bytes([c0, c1, c2, c3]) {
         panic!("profile: checksum differs");
     }
-    record
+    (record, crc)
 }
 
 #[inline(never)]

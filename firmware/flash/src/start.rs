@@ -30,6 +30,21 @@ pub(crate) struct StartSpec {
 }
 
 impl StartSpec {
+    /// As it is kept over a power cut. `build.rs` has no use for it.
+    #[allow(dead_code)]
+    pub(crate) fn of(setup: &Setup) -> Self {
+        StartSpec {
+            material: setup.material,
+            tool: setup.tool,
+            operation: setup.operation,
+            coolant: setup.coolant,
+            diameter_mm: setup.diameter.mm(),
+            holder: setup.holder,
+            cap_rpm: setup.cap.map(|n| n.get()),
+            pulses: setup.pulses.map(|n| n.get().get()),
+        }
+    }
+
     /// Checks it; the holder is checked by the instrument.
     pub(crate) fn check(&self) -> Result<Setup, Rejected> {
         let out_of_range =
