@@ -103,25 +103,25 @@ fn an_unconfirmed_box_warns_of_danger_all_the_same() {
 }
 
 #[test]
-fn a_setup_is_handed_out_once_five_seconds_after_its_last_change() {
+fn a_setup_is_handed_out_once_two_seconds_after_its_last_change() {
     let mut clocked = confirmed(bar(25.0));
     clocked.rest(0.9);
     clocked.event(Event::Turn(Knob::Right, 1));
-    clocked.rest(3.0);
+    clocked.rest(1.5);
     clocked.event(Event::Turn(Knob::Right, 4));
-    assert_eq!(clocked.now, at(4.0));
-    clocked.rest(4.999);
+    assert_eq!(clocked.now, at(2.5));
+    clocked.rest(1.999);
     assert_eq!(clocked.saved(), []);
-    assert!(clocked.last().next <= at(9.0));
+    assert!(clocked.last().next <= at(4.5));
     clocked.rest(100.0);
-    assert_eq!(clocked.saved(), [(at(9.0), bar(30.0))]);
+    assert_eq!(clocked.saved(), [(at(4.5), bar(30.0))]);
     // The same for a cap taken away by a hold.
     let mut clocked = confirmed(Setup {
         cap: Some(rpm(200.0)),
         ..bar(25.0)
     });
     clocked.event(Event::Press(Knob::Right));
-    let due = clocked.now + HOLD + Duration::from_secs(5);
+    let due = clocked.now + HOLD + Duration::from_secs(2);
     clocked.rest(60.0);
     assert_eq!(clocked.saved(), [(due, bar(25.0))]);
 }

@@ -368,7 +368,7 @@ fn ten_turns_by_hand_put_a_wrong_profile_right_and_outlive_a_power_cycle() {
     shows(&clocked, "3 a turn");
     shows(&clocked, "profile says 2");
     clocked.rest(20.0);
-    assert_eq!(clocked.saved(), [(taken + Duration::from_secs(5), counted)]);
+    assert_eq!(clocked.saved(), [(taken + Duration::from_secs(2), counted)]);
     // The right speed, now and after the box was off.
     spin(&mut clocked, 280.0, 3, 5.0);
     assert!((read(&clocked) / 280.0 - 1.0).abs() < 1e-3);

@@ -20,8 +20,9 @@ use crate::verdict::{Judge, Verdict};
 
 /// The picture is drawn anew at most this often; the fastest that a number can be read anyway.
 const REDRAW: Duration = Duration::from_millis(100);
-/// A setup is handed out for saving when it has stood unchanged for this long: knobs turn in bursts, flash wears.
-const SAVE_AFTER: Duration = Duration::from_secs(5);
+/// A setup is handed out for saving when it has stood unchanged for this long: knobs turn in bursts, flash wears. Short enough
+/// that whoever chooses and then starts the motor has been before it.
+const SAVE_AFTER: Duration = Duration::from_secs(2);
 /// While the spindle may turn, the reading is looked at this often,
 const LOOK: Duration = Duration::from_millis(20);
 /// else this often; edges and knobs come as events of their own.

@@ -30,7 +30,7 @@ fn board(slow_flash: bool) -> Emulator {
 fn choose(board: &mut Emulator, detents: i8) {
     let before = kept(board);
     board.touch(Touch::Turn(Knob::Right, detents));
-    board.run_ms(7_000);
+    board.run_ms(2_600);
     assert_eq!(kept(board), before + 1, "{:?}", board.log);
 }
 
@@ -139,7 +139,7 @@ fn a_setup_outlives_power_cuts() {
     println!("a setup is written in {write:.1} ms");
     assert!(write < 5.0, "{write} ms");
     board.touch(Touch::Turn(Knob::Left, 2));
-    board.run_ms(7_000);
+    board.run_ms(2_600);
     assert_eq!(kept(&board), 2);
     for _ in 0..2 {
         cycle(&mut board);
@@ -148,7 +148,7 @@ fn a_setup_outlives_power_cuts() {
     }
     assert_eq!(board.lines("stored setup: read").count(), 2);
     assert!(board.resets.is_empty());
-    // What has been changed for less than five seconds is forgotten.
+    // What has been changed for less than two seconds is forgotten.
     board.press(Knob::Left);
     board.run_ms(500);
     board.touch(Touch::Turn(Knob::Right, 2));
@@ -236,7 +236,7 @@ fn a_power_cut_while_writing_leaves_the_old_or_the_new() {
         };
         let mut whole = prepared();
         let turned = whole.now();
-        whole.run_ms(7_000);
+        whole.run_ms(2_600);
         let line = whole.lines("stored setup: kept").last().expect("is kept");
         let written = line.at - turned;
         // Two or three programmed pieces, before them an erasure where both sectors are full.
@@ -245,7 +245,7 @@ fn a_power_cut_while_writing_leaves_the_old_or_the_new() {
         for i in 0..8 {
             let mut board = prepared();
             board.cut_power(written + 500_000 - took + took * i / 7);
-            board.run_ms(6_500);
+            board.run_ms(3_000);
             let new = board.frame().shows("work 32 mm");
             assert!(
                 new || board.frame().shows("work 30 mm"),
@@ -321,14 +321,14 @@ fn edges_are_captured_while_the_flash_is_busy() {
     board.run_ms(500);
     board.touch(Touch::Turn(Knob::Right, 2));
     let turned = board.now();
-    board.run_ms(4_900);
-    // From before the erasure until long after it.
-    let edges = spin(640.0, 2, turned + 5_120_000_000, turned + 9_000_000_000);
+    board.run_ms(1_900);
+    // From before the end of the erasure until long after it.
+    let edges = spin(640.0, 2, turned + 2_120_000_000, turned + 6_000_000_000);
     board.edges(&edges);
     board.run_ms(2_500);
     let line = board.lines("stored setup: kept").last().expect("is kept");
     println!("kept {} ms after the turn", (line.at - turned) / 1_000_000);
-    assert!(line.at > turned + 5_350_000_000, "was busy meanwhile");
+    assert!(line.at > turned + 2_350_000_000, "was busy meanwhile");
     let speed = board.reading().speed.expect("is turning");
     assert!(
         (f64::from(speed.get()) / 640.0 - 1.0).abs() < 2e-4,
