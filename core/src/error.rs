@@ -22,6 +22,8 @@ pub struct Rejected {
 
 impl Rejected {
     /// Builds the error from anything that prints.
+    #[cold]
+    #[inline(never)]
     pub fn new(
         field: impl fmt::Display,
         value: impl fmt::Display,
@@ -38,6 +40,8 @@ impl Rejected {
 
     /// The same error about a field inside `parent`.
     #[must_use]
+    #[cold]
+    #[inline(never)]
     pub fn within(self, parent: impl fmt::Display) -> Self {
         Rejected {
             field: text(format_args!("{parent}.{}", self.field)),

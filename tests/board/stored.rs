@@ -133,7 +133,7 @@ fn a_setup_outlives_power_cuts() {
     let mut board = board(false);
     assert_eq!(board.lines("stored setup: none").count(), 1);
     assert!(board.frame().shows("work 25 mm"));
-    board.watch(&[("write", "rimrate_flash::stored::Stored::write")]);
+    board.watch(&[("write", "rimrate_flash::stored::Stored::go_on")]);
     choose(&mut board, 5);
     let write = board.calls.last().expect("was written").1 as f64 / 125e3;
     println!("a setup is written in {write:.1} ms");

@@ -95,15 +95,14 @@ impl Stored {
         self.waiting = Some(*setup);
     }
 
-    /// Writes what waits. To be called only while the spindle gives no pulses.
-    pub fn go_on(&mut self) {
-        if self.waiting.is_some() {
-            self.write();
-        }
+    /// Whether there is anything to write.
+    pub fn waits(&self) -> bool {
+        self.waiting.is_some()
     }
 
+    /// Writes what waits. To be called only while the spindle gives no pulses.
     #[inline(never)]
-    fn write(&mut self) {
+    pub fn go_on(&mut self) {
         if let Some(left) = self.spoilt.checked_sub(1) {
             self.spoilt = left;
             if self.records.erase(left).is_err() {

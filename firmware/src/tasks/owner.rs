@@ -183,7 +183,7 @@ impl Owner {
         if time >= self.next_poll || self.repaint {
             self.poll(taken.until);
         }
-        if !self.instrument.view().reading.is_running() {
+        if self.stored.waits() && !self.instrument.view().reading.is_running() {
             self.stored.go_on();
         }
         self.status(time);
