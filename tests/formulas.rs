@@ -3,7 +3,7 @@
 //! The rows under `data/` carry their sources. A printed figure is met to its last digit: rounded, or cut off as books do.
 
 use rimrate_core::advice::advise;
-use rimrate_core::machine::{ABOVE_PLATE, Drive};
+use rimrate_core::machine::{ABOVE_PLATE, BELOW_PLATE_LOADED, Drive};
 use rimrate_core::physics::cutting_speed::{spindle_speed, surface_speed_m_min};
 use rimrate_core::physics::slip;
 use rimrate_core::setup::{Diameter, Setup};
@@ -224,11 +224,12 @@ fn the_demo_steps_are_laid_out_on_iso_3_and_iso_229() {
 }
 
 #[test]
-fn loaded_speeds_may_lie_above_the_plate_by_what_iso_229_allows() {
+fn loaded_speeds_may_lie_off_the_plate_by_what_iso_229_allows() {
     let rows = rows(include_str!("data/preferred-numbers.csv"));
     let row = rows.iter().find(|r| &r[0] == "PV0378").unwrap();
-    let above: f32 = row[3].rsplit('+').next().unwrap().parse().unwrap();
-    assert_eq!(ABOVE_PLATE, 1.0 + above / 100.0);
+    let (below, above) = row[3].split_once(" to +").unwrap();
+    let off = |percent: &str| 1.0 + percent.parse::<f32>().unwrap() / 100.0;
+    assert_eq!((BELOW_PLATE_LOADED, ABOVE_PLATE), (off(below), off(above)));
 }
 
 /// Common practice, no source: the shop takes 4 v / D instead of 12 v / (pi D), which runs about 5 % fast.

@@ -4,6 +4,9 @@
 //! The lathe's motor is not built on the law under test: it follows Kloss's formula, with a belt that slips and creeps, and
 //! friction of its own in every step.
 
+#[path = "load/overload.rs"]
+mod overload;
+
 use rimrate_core::edge_account::Counted;
 use rimrate_core::instrument::{Event, Instrument};
 use rimrate_core::load::Mark;
@@ -205,12 +208,13 @@ fn shares(seen: &[Seen], settled: f64) -> Shares {
     }
 }
 
-fn assert_good(shares: Shares) {
+/// What DEVELOPERS.md states, less what one set of seeds may miss it by.
+fn assert_good(shares: Shares, exact: f64) {
     println!("{shares:?}");
-    assert!(shares.told >= 0.95, "{shares:?}");
-    assert!(shares.within_one >= 0.999, "{shares:?}");
-    assert!(shares.exact >= 0.9, "{shares:?}");
-    assert!(shares.false_cutting < 0.01, "{shares:?}");
+    assert!(shares.told >= 0.99, "{shares:?}");
+    assert!(shares.within_one == 1.0, "{shares:?}");
+    assert!(shares.exact >= exact, "{shares:?}");
+    assert!(shares.false_cutting < 0.003, "{shares:?}");
 }
 
 /// A session that the seed makes up: a lathe of its own, and on each of some steps cuts between free stretches.
@@ -310,10 +314,11 @@ fn a_session_with_warmth_and_a_wandering_mains() {
             shop.stop();
         }
     }
-    assert_good(shares(&all, 2.0));
+    // Half of the rated torque is, on the quicker steps, where the next mark begins.
+    assert_good(shares(&all, 2.0), 0.91);
     // Nobody has to wait for the two seconds.
     let early = shares(&all, 1.4);
-    assert!(early.told >= 0.95, "{early:?}");
+    assert!(early.told >= 0.99, "{early:?}");
 }
 
 /// Cuts of this share between free stretches of a lathe with this rated speed, on a profile that says another.
@@ -340,13 +345,21 @@ fn at_the_limit(real_rpm: f64, plate_rpm: f64, share: f64) -> Vec<Seen> {
 
 #[test]
 fn its_limits_are_where_they_are_stated() {
-    // Below a tenth a cut is not seen; it does not do harm either.
+    // A twentieth is never seen; it does not do harm either.
     let light = at_the_limit(1440.0, 1440.0, 0.05);
     assert!(light.iter().all(|s| s.mark == Some(Mark::Free)));
-    // 0.15 is, and 0.2 of a motor that slips little.
+    // A tenth is seen nine times in ten, not of a motor that slips by 1.3 %.
+    for (rated, expected) in [(1440.0, 0.9..1.0), (1480.0, 0.0..0.5)] {
+        let mut seen = at_the_limit(rated, rated, 0.1);
+        seen.retain(|s| s.cut > 0.0 && s.steady > 2.0);
+        let marked = seen.iter().filter(|s| s.mark > Some(Mark::Free)).count();
+        let share = marked as f64 / seen.len() as f64;
+        assert!(expected.contains(&share), "{rated} {share}");
+    }
+    // 0.15 is always, and 0.2 of a motor that slips little.
     for (rated, share) in [(1440.0, 0.15), (1480.0, 0.2)] {
         let shares = shares(&at_the_limit(rated, rated, share), 2.0);
-        assert!(shares.told >= 0.95, "{rated} {share} {shares:?}");
+        assert!(shares.told >= 0.98, "{rated} {share} {shares:?}");
     }
     // A warm motor slips more than its plate says: one mark at most.
     for share in [0.2, 0.5, 0.9] {
@@ -371,7 +384,7 @@ fn slow_steps_take_some_turns() {
         }
         shop.stop();
     }
-    assert_good(shares(&all, 2.0));
+    assert_good(shares(&all, 2.0), 0.95);
 }
 
 #[test]
@@ -382,12 +395,12 @@ fn any_lathe_any_session() {
         let seen = made_up(seed, 0.003);
         let alone = shares(&seen, 2.0);
         assert!(
-            alone.told >= 0.9 && alone.false_cutting < 0.01,
+            alone.told >= 0.97 && alone.false_cutting < 0.003,
             "{seed}: {alone:?}"
         );
         all.extend(seen);
     }
-    assert_good(shares(&all, 2.0));
+    assert_good(shares(&all, 2.0), 0.95);
 }
 
 /// How the bar stands after some seconds of this.

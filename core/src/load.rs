@@ -14,10 +14,13 @@
 //! - a cut that gets lighter, down to what the mains may have wandered meanwhile, from its end; until the next start or cut;
 //! - anything while the speed changes: it follows by about a second, at slow steps by some turns;
 //! - the load in a step in which the spindle was not seen to run up since the box was switched on;
-//! - neighbouring steps nearer than about 1.15 : 1 from each other: no load in either;
+//! - neighbouring steps nearer than about 1.15 : 1 from each other: no load in either; nearer than 1.25 : 1, an overload of
+//!   twice the rated torque from the slower step;
 //! - a warm motor, which slips more, or a slack belt from more load: by up to a third, one mark.
 
-use crate::machine::{ABOVE_PLATE, Drive, MAX_STEPS, Machine, Step};
+use crate::machine::{
+    ABOVE_PLATE, BELOW_PLATE, BELOW_PLATE_LOADED, Drive, MAX_STEPS, Machine, Step,
+};
 use crate::physics::slip;
 use crate::tacho::{Reading, Signal};
 use crate::time::{Duration, Instant};
@@ -53,12 +56,13 @@ const STEADY_TURNS: f32 = 1.0;
 /// stays known, and what was found may still settle.
 const HOLD: f32 = 1.5;
 const HOLD_TURNS: f32 = 6.0;
+/// Who is unsteady in one step for so many times as long does not pass through it: a coasting spindle leaves the fifth of its
+/// speed that a step takes sooner, unless it takes a quarter of a minute to stop (common practice, no source).
+const STAYS: f32 = 2.0;
 
 /// A first free speed is believed from here on, as a share of the plate's: ISO 229 allows 2 % below (from memory), and the
 /// mains and the rounding of plates as much again.
 const LEAST_OF_PLATE: f32 = 0.94;
-/// Plate speeds may be so much too high (ISO 229:1973, from memory).
-const BELOW: f32 = 0.98;
 
 /// Where the marks begin, and how far beyond, as loads, the last one holds.
 const HEAVY: f32 = 0.6;
@@ -170,6 +174,8 @@ pub struct Load {
     unsteady: Option<Instant>,
     /// It has been so for long.
     lapsed: bool,
+    /// So long that the spindle does not pass through the step on its way up or down.
+    stays: bool,
 }
 
 impl Default for Load {
@@ -184,6 +190,7 @@ impl Default for Load {
             near_since: Instant::ZERO,
             unsteady: None,
             lapsed: false,
+            stays: false,
         }
     }
 }
@@ -232,19 +239,20 @@ impl Load {
         }
     }
 
-    /// Whether the tool is in the metal, where that is known. Speeding up and slowing down is not cutting.
+    /// Whether the tool is in the metal, where that is known. Speeding up and slowing down is not cutting; where the
+    /// speed stays in a step and never settles nobody can say, for it may be an overload.
     pub fn cutting(&self) -> Option<bool> {
         match self.state {
-            State::Between => Some(false),
+            State::Between => (!self.stays).then_some(false),
             _ => self.mark().map(|mark| mark > Mark::Free),
         }
     }
 
     fn turning(&mut self, now: Instant, seconds: f32, n: f32, machine: &Machine) {
-        if !self.in_step(n, machine) {
+        let steady = self.is_steady(now, seconds, n);
+        if !self.in_step(n, steady, machine) {
             return;
         }
-        let steady = self.is_steady(now, seconds, n);
         let Some(mut step) = self.step else {
             return;
         };
@@ -285,21 +293,30 @@ impl Load {
     }
 
     /// Whether the spindle turns in a step in which its load can be told.
-    fn in_step(&mut self, n: f32, machine: &Machine) -> bool {
+    fn in_step(&mut self, n: f32, steady: bool, machine: &Machine) -> bool {
         if let Some(step) = &self.step {
-            // Before the free speed is known the plate's must do.
-            let free = if step.free > 0.0 {
-                step.free
+            // Before the free speed is known the step explains what it does at all, an overload included.
+            let low = if step.free > 0.0 {
+                step.free * (1.0 - 2.5 * step.span())
             } else {
-                step.plate
+                step.plate * BELOW_PLATE
             };
-            let (low, high) = (free * (1.0 - 2.5 * step.span()), step.plate * ABOVE_PLATE);
-            if n >= low && n <= high {
+            if n >= low && n <= step.plate * ABOVE_PLATE {
+                return true;
+            }
+            // Pulled down further than any cut should, it still cuts, until it turns steadily in another step or slows down.
+            let cuts = matches!(self.state, State::Cutting { .. }) && n < low && !self.lapsed;
+            let elsewhere = || {
+                let at = machine.step_at(crate::units::Rpm::saturating(n));
+                at.is_some_and(|at| at.rpm.get() != step.plate)
+            };
+            if cuts && !(steady && elsewhere()) {
                 return true;
             }
             // Nobody cuts while the speed goes from one step's to another's: it will have run up.
             self.leave(State::Between);
             self.run_up = true;
+            return false;
         }
         let found = match machine.drive() {
             Drive::Stepped(steps) if machine.tells_load().is_ok() => found(steps, n, machine),
@@ -311,6 +328,7 @@ impl Load {
             Some(Some(step)) => {
                 self.step = Some(step);
                 self.state = State::Between;
+                self.decided();
             }
         }
         self.step.is_some()
@@ -344,11 +362,12 @@ impl Load {
         let near = now.since(self.near_since).secs_f32();
         let steady = near >= STEADY_FOR.max(STEADY_TURNS * turn_s(n));
         if steady {
-            self.unsteady = None;
-            self.lapsed = false;
+            self.decided();
         } else {
             let since = *self.unsteady.get_or_insert(now);
-            self.lapsed |= now.since(since).secs_f32() > change_lasts(n);
+            let (lasted, change) = (now.since(since).secs_f32(), change_lasts(n));
+            self.lapsed |= lasted > change;
+            self.stays |= lasted > STAYS * change;
         }
         steady
     }
@@ -357,8 +376,13 @@ impl Load {
         self.state = state;
         self.step = None;
         self.reference = 0.0;
+        self.decided();
+    }
+
+    fn decided(&mut self) {
         self.unsteady = None;
         self.lapsed = false;
+        self.stays = false;
     }
 }
 
@@ -379,7 +403,7 @@ fn found(steps: &[Step], n: f32, machine: &Machine) -> Option<Option<InStep>> {
     // The slower of two neighbours, at its fastest, against the faster one, at its slowest and under load.
     let apart = |slower: &Step, faster: &Step| {
         let fall = STALLING * step.span();
-        slower.rpm.get() * ABOVE_PLATE < faster.rpm.get() * BELOW * (1.0 - fall)
+        slower.rpm.get() * ABOVE_PLATE < faster.rpm.get() * BELOW_PLATE_LOADED * (1.0 - fall)
     };
     let below = index.checked_sub(1).and_then(|i| steps.get(i));
     let told = below.is_none_or(|slower| apart(slower, at))

@@ -33,8 +33,10 @@ pub const MAX_PULSES: u16 = 240;
 /// Loaded speeds differ from the plate: at most 6 % above it, mechanical and electrical tolerance together
 /// (ISO 229:1973, limits of rotational speeds; from memory).
 pub const ABOVE_PLATE: f32 = 1.06;
-/// How far a loaded spindle may fall below its plate and still be explained by that step. ISO 229 allows 2 % at
-/// rated load; a heavy cut stretches belt and slip further (common practice, no source).
+/// And at most 2 % below it, at rated load (the same standard, from memory).
+pub const BELOW_PLATE_LOADED: f32 = 0.98;
+/// How far a loaded spindle may fall below its plate and still be explained by that step: further than at rated load, for a
+/// heavy cut stretches belt and slip further (common practice, no source).
 pub const BELOW_PLATE: f32 = 0.85;
 
 /// Label of a step or range as the machine's own plates show it; it may name several levers.

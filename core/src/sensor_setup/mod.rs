@@ -17,7 +17,7 @@ use crate::time::{Edge, Instant};
 use crate::units::Rpm;
 
 pub use passages::Passages;
-pub use timing::{BELOW_PLATE_LOADED, CLEAR, Fit, PULSES_SEEN, fit};
+pub use timing::{CLEAR, Fit, PULSES_SEEN, fit};
 
 use timing::Rate;
 

@@ -4,13 +4,10 @@
 //! often as turns, and n is only known within those percents. From ten pulses on several whole numbers fit, and no number is
 //! said; evenly spaced magnets cannot be counted from timing alone.
 
-use crate::machine::{ABOVE_PLATE, MAX_PULSES};
+use crate::machine::{ABOVE_PLATE, BELOW_PLATE_LOADED, MAX_PULSES};
 use crate::setup::Pulses;
 use crate::time::{Duration, Instant};
 use crate::units::Rpm;
-
-/// A loaded spindle turns at 0.98 to 1.06 of its plate (ISO 229:1973, limits of rotational speeds; from memory).
-pub const BELOW_PLATE_LOADED: f32 = 0.98;
 
 /// Up to this number of pulses the band of 8 % leaves a gap to the next number that a spindle which is not quite steady yet, or
 /// pulled down by a cut, does not cross: 2 % at least.
