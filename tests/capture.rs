@@ -25,6 +25,7 @@ pub struct Capture {
     seed: u64,
     start: f64,
     ripple: f64,
+    belt_per_turn: f64,
     pieces: Vec<(Piece, Vec<(Fault, bool)>)>,
 }
 
@@ -66,6 +67,7 @@ impl Capture {
             seed: 1,
             start: 0.3,
             ripple: 0.0,
+            belt_per_turn: 0.37,
             pieces: Vec::new(),
         }
     }
@@ -90,6 +92,11 @@ impl Capture {
         self.ripple = share;
         self
     }
+    /// The belt's ripple comes so often in a turn; seldom, it is a wobble.
+    pub fn belt(mut self, per_turn: f64) -> Self {
+        self.belt_per_turn = per_turn;
+        self
+    }
     /// A piece of motion more.
     pub fn then(self, piece: Piece) -> Self {
         self.with(piece, &[])
@@ -112,7 +119,7 @@ impl Capture {
             },
             belt: Wave {
                 share: self.ripple,
-                per_turn: 0.37,
+                per_turn: self.belt_per_turn,
                 phase: 1.1,
             },
         };

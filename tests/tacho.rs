@@ -386,6 +386,52 @@ fn a_steady_speed_that_no_step_explains_is_doubtful() {
     );
 }
 
+/// A slow wobble within the ripple floor puts off no doubt: it is neither a line nor another speed.
+#[test]
+fn a_speed_that_wobbles_and_that_no_step_explains_is_doubtful() {
+    let rpm = 345.0;
+    for (pulses, period) in [(1, 2.0), (2, 2.0), (2, 3.0), (6, 4.0), (2, 6.0), (6, 10.0)] {
+        let capture = Capture::new(pulses)
+            .rippled(0.003)
+            .belt(60.0 / (rpm * period))
+            .then(Piece::steady(rpm, 40.0));
+        let mut tacho = Tacho::new(capture.config());
+        let (mut looks, mut doubts, mut next) = (0, 0, 3.0);
+        capture.play(&mut |edge| {
+            let at = edge.at.nanos() as f64 / 1e9;
+            if at >= next {
+                next = at + 0.02;
+                looks += 1;
+                let reading = tacho.reading(edge.at, |_| false);
+                doubts += usize::from(reading.signal == Signal::Doubtful);
+            }
+            tacho.push(edge);
+        });
+        let share = f64::from(doubts as u32) / f64::from(looks);
+        println!("{pulses} pulses, {period} s: {share}");
+        assert!(share > 0.95, "{pulses} pulses, {period} s: {share}");
+    }
+}
+
+/// Fine teeth that pass wide, and a long pause before the next one: the product of interval and share is past 32 bits.
+#[test]
+fn a_wide_tooth_after_a_pause_of_seconds_is_a_pulse() {
+    for pause in [3.0, 4.0, 4.2, 4.29, 4.3, 5.0] {
+        let mut capture = Capture::new(24);
+        capture.sensor.width = 0.75 * 360.0 / 24.0;
+        let capture = capture.then(Piece::steady(120.0, 5.0));
+        let (edges, end) = capture.edges();
+        let mut tacho = Tacho::new(capture.config());
+        edges.into_iter().for_each(|edge| tacho.push(edge));
+        let before = tacho.rejected();
+        let later = |s: f64| end + Duration::from_secs_f32((pause + s) as f32);
+        tacho.push(Edge::rise(later(-0.5 * pause)));
+        tacho.push(Edge::fall(later(0.0)));
+        tacho.push(Edge::rise(later(0.001)));
+        assert_eq!(tacho.rejected().shaken, before.shaken, "{pause} s");
+    }
+}
+
 #[test]
 fn a_runaway_is_shown_at_its_real_speed() {
     let capture = Capture::new(1)

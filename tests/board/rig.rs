@@ -489,7 +489,7 @@ fn verdict_named(name: &str) -> Verdict {
         .unwrap_or_else(|| panic!("the log speaks of a verdict `{name}`"))
 }
 
-/// From `Turning calm 640.0 quick 640.0 overdue false`.
+/// From `Turning calm 640.0 quick 640.0 overdue false uncertainty 0.00003`.
 fn reading_of(text: &str) -> Reading {
     let words: Vec<&str> = text.split_whitespace().collect();
     let signal = match words[0] {
@@ -505,6 +505,7 @@ fn reading_of(text: &str) -> Reading {
         speed: speed(words[2]),
         quick: speed(words[4]),
         overdue: words[6] == "true",
+        uncertainty: words[8].parse().expect("a number"),
         ..Reading::NOTHING
     }
 }

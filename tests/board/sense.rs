@@ -1,6 +1,6 @@
 //! What the board measures, against what was put in.
 
-use rimrate_core::tacho::Signal;
+use rimrate_core::tacho::{Reading, Signal};
 use rimrate_sim::rig::Rig;
 
 use crate::rig::{Emulator, Start};
@@ -11,13 +11,11 @@ use crate::support::{STARTED_MS, inverted, setup, spin, wide_board, wide_machine
 const STEADY: f64 = 2e-4;
 
 /// Runs at a steady speed and gives the last reading.
-fn read(board: &mut Emulator, rpm: f64, pulses: u32, ms: u64) -> (Signal, f64) {
+fn read(board: &mut Emulator, rpm: f64, pulses: u32, ms: u64) -> Reading {
     let from = board.now() + 3_000_000;
     board.edges(&spin(rpm, pulses, from, from + ms * 1_000_000));
     board.run_ms(ms);
-    let reading = board.reading();
-    let speed = reading.speed.map_or(-1.0, |n| f64::from(n.get()));
-    (reading.signal, speed)
+    board.reading()
 }
 
 fn steady(pulses: u32, slow_turns: f64) {
@@ -31,13 +29,24 @@ fn steady(pulses: u32, slow_turns: f64) {
         // Revolutions enough for a start and a calm reading.
         let ms = (turns * 60e3 / rpm).max(800.0) as u64;
         let mut board = wide_board(pulses, 25.0);
-        let (signal, speed) = read(&mut board, rpm, pulses, ms);
-        let error = speed / rpm - 1.0;
+        let reading = read(&mut board, rpm, pulses, ms);
+        let speed = f64::from(reading.speed.expect("is turning").get());
+        let (error, said) = (speed / rpm - 1.0, f64::from(reading.uncertainty));
         println!(
-            "{rpm} rpm, {pulses} pulses: read {speed}, error {:.1} ppm",
-            error * 1e6
+            "{rpm} rpm, {pulses} pulses: read {speed}, error {:.1} ppm, uncertainty {:.1} ppm",
+            error * 1e6,
+            said * 1e6
         );
-        assert_eq!(signal, Signal::Turning, "{rpm} rpm with {pulses} pulses");
+        assert_eq!(
+            reading.signal,
+            Signal::Turning,
+            "{rpm} rpm with {pulses} pulses"
+        );
+        // Never better than the crystal, and on clean edges nearly as good.
+        assert!(
+            said > 25e-6 && said <= STEADY,
+            "{rpm} rpm with {pulses} pulses: {said}"
+        );
         assert!(
             error.abs() <= STEADY,
             "{rpm} rpm with {pulses} pulses: read {speed}"

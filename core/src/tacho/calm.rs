@@ -298,6 +298,9 @@ impl Calm {
             let points = self.points();
             let (bend, half) = fit::bend(&points, self.period as f32);
             if fabsf(bend) > BENT && points.len() >= MANY && self.parabola(&points) {
+                if fabsf(bend) > RIPPLE {
+                    self.unsteady();
+                }
                 return;
             }
             if fabsf(bend) > RIPPLE && self.turns > LINE {
@@ -355,12 +358,16 @@ impl Calm {
         if core::mem::replace(&mut self.misfit, misfit) && misfit {
             self.forget(self.blocks.len() - LINE as usize);
         }
-        // It is not steady.
+        true
+    }
+
+    /// The speed changes by more than ripple: it is none that a step must explain. A wobble within it is: it must not put off
+    /// the doubt.
+    fn unsteady(&mut self) {
         if let Some(newest) = self.blocks.back() {
             self.since = Instant::from_nanos(newest.mean);
         }
         self.steady = 0;
-        true
     }
 
     /// The period is longer by so much a half-turn than that of all checks, with a standard error.

@@ -167,7 +167,7 @@ impl Gate {
     /// Takes one edge; O(1).
     pub(super) fn push(&mut self, edge: Edge) -> Option<Pulse> {
         if edge.at < self.last_edge {
-            self.rejected.disordered += 1;
+            self.rejected.disordered = self.rejected.disordered.saturating_add(1);
             return None;
         }
         self.last_edge = edge.at;
@@ -182,7 +182,7 @@ impl Gate {
             }
             // The edge between these two was lost: the longer low, or the longer high, is the safer guess.
             (EdgeKind::Fall, Some(_)) | (EdgeKind::Rise, None) => {
-                self.rejected.disordered += 1;
+                self.rejected.disordered = self.rejected.disordered.saturating_add(1);
                 None
             }
         }
@@ -216,7 +216,7 @@ impl Gate {
             return None;
         }
         if short(first, self.reported_at) < SHORTEST_PERIOD {
-            self.rejected.too_close += 1;
+            self.rejected.too_close = self.rejected.too_close.saturating_add(1);
             return None;
         }
         self.reported_at = first;
@@ -250,7 +250,7 @@ impl Gate {
         if !joins {
             return false;
         }
-        self.rejected.joined += 1;
+        self.rejected.joined = self.rejected.joined.saturating_add(1);
         if !p.reported {
             if self.begins.is_full() {
                 self.begins.remove(1);
@@ -290,7 +290,7 @@ impl Gate {
     /// The passage was a sliver; `before` is when the one before it began.
     #[cold]
     fn sliver(&mut self, before: Instant) {
-        self.rejected.slivers += 1;
+        self.rejected.slivers = self.rejected.slivers.saturating_add(1);
         let Some(passage) = &self.passage else {
             return;
         };

@@ -214,7 +214,7 @@ const MOMENT: Duration = Duration::from_millis(150);
 const JITTER: Duration = Duration::from_micros(5);
 /// So many standard deviations of the jitter as measured may stand between two pulses.
 const JITTERS: f32 = 8.0;
-/// What shares are counted in: an interval has 175 of its 256th parts at least, and so many of them fit 32 bits.
+/// What shares are counted in: the shortest interval has 175 ns of these parts, which is fine enough.
 const SHARE: u32 = 1 << 8;
 
 impl Tacho {
@@ -353,7 +353,7 @@ impl Tacho {
                 let interval = pulse.at.since(before.at).nanos() / u64::from(SHARE);
                 u64::from(pulse.width) <= interval.saturating_mul(u64::from(self.widest))
             }
-            interval => pulse.width <= interval / SHARE * self.widest,
+            interval => pulse.width <= (interval / SHARE).saturating_mul(self.widest),
         }
     }
 

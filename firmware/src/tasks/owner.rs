@@ -277,11 +277,12 @@ impl Owner {
             if reading.is_running() || reading.signal != self.signal {
                 self.signal = reading.signal;
                 defmt::info!(
-                    "reading {} calm {=f32} quick {=f32} overdue {=bool}",
+                    "reading {} calm {=f32} quick {=f32} overdue {=bool} uncertainty {=f32}",
                     reading.signal,
                     reading.speed.map_or(-1.0, |n| n.get()),
                     reading.quick.map_or(-1.0, |n| n.get()),
-                    reading.overdue
+                    reading.overdue,
+                    reading.uncertainty
                 );
             }
         }

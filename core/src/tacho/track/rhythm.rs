@@ -141,9 +141,9 @@ impl Track {
             .nanos()
             .saturating_sub(u64::from(self.width));
         if behind < u64::from(self.width / 2) {
-            rejected.doubled += 1;
+            rejected.doubled = rejected.doubled.saturating_add(1);
         } else {
-            rejected.extra += 1;
+            rejected.extra = rejected.extra.saturating_add(1);
         }
     }
 
