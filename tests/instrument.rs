@@ -151,6 +151,23 @@ fn a_setup_that_was_changed_while_turning_is_handed_out_at_rest() {
     assert!(asked <= other.polls.len() + 20, "{asked} times");
 }
 
+/// A signal that is lost stays so until pulses come: a cap or a counted number must not wait for that.
+#[test]
+fn a_setup_is_handed_out_ten_seconds_after_the_last_pulse_of_a_lost_signal() {
+    let mut clocked = confirmed(bar(25.0));
+    clocked.spin(1400.0, 3.0);
+    clocked.event(Event::Turn(Knob::Right, 1));
+    clocked.spin(1400.0, 1.0);
+    clocked.rest(9.8);
+    assert_eq!(clocked.instrument.view().reading.signal, Signal::Lost);
+    assert_eq!(clocked.saved(), []);
+    clocked.rest(0.4);
+    assert_eq!(clocked.saved().len(), 1);
+    assert_eq!(clocked.saved()[0].1.diameter, bar(26.0).diameter);
+    clocked.rest(60.0);
+    assert_eq!(clocked.saved().len(), 1);
+}
+
 #[test]
 fn what_was_kept_is_what_the_next_start_shows() {
     let mut clocked = confirmed(bar(25.0));

@@ -23,6 +23,8 @@ const REDRAW: Duration = Duration::from_millis(100);
 /// A setup is handed out for saving when it has stood unchanged for this long: knobs turn in bursts, flash wears. Short enough
 /// that whoever chooses and then starts the motor has been before it.
 const SAVE_AFTER: Duration = Duration::from_secs(2);
+/// So long after the last pulse a lost signal holds it up no more.
+const SAVE_WHILE_LOST: Duration = Duration::from_secs(10);
 /// While the spindle may turn, the reading is looked at this often,
 const LOOK: Duration = Duration::from_millis(20);
 /// else this often; edges and knobs come as events of their own.
@@ -245,11 +247,7 @@ impl Instrument {
             self.drawn = Some((now, shown));
         }
         let running = self.reading.is_running();
-        // While it may turn, this waits: the look that finds it at rest hands it out.
-        let due = self
-            .unsaved_since
-            .filter(|_| !running)
-            .map(|since| since + SAVE_AFTER);
+        let due = self.unsaved_since.and_then(|since| self.save_due(since));
         let save = due.filter(|&due| now >= due).map(|_| self.setup);
         if save.is_some() {
             self.unsaved_since = None;
@@ -269,6 +267,17 @@ impl Instrument {
             outputs,
             redraw,
             save,
+        }
+    }
+
+    /// When a setup changed at `since` is handed out. While the spindle may turn, it waits: the look that finds it at rest
+    /// hands it out, and one that has lost the signal when there has been nothing to measure for long.
+    fn save_due(&self, since: Instant) -> Option<Instant> {
+        let settled = since + SAVE_AFTER;
+        match self.reading.signal {
+            Signal::Still => Some(settled),
+            Signal::Turning | Signal::Doubtful => None,
+            Signal::Lost => Some(settled.max(self.tacho.silent_since() + SAVE_WHILE_LOST)),
         }
     }
 

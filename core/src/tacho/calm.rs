@@ -17,6 +17,7 @@ mod fit;
 
 use heapless::{Deque, Vec};
 
+use super::{CARRY, RIPPLE};
 use crate::time::{Duration, Instant};
 use fit::Point;
 use libm::{fabsf, sqrtf};
@@ -32,9 +33,6 @@ const AIM: u32 = 12;
 const BLOCKS: usize = 24;
 /// A turn that differs from the window by more than 1/64 begins a new window: the speed is changing.
 const CHANGE_SHIFT: u32 = 6;
-/// The ripple floor: belts and gears change a spindle's speed by 0.1 to 0.5 %, coming and going (common practice, no source).
-/// Two halves of a window that differ by more than 0.3 % each way are two speeds.
-const RIPPLE: f32 = 0.006;
 /// A parabola is looked for where the halves differ by more than this: ripple of 0.3 % that comes and goes in three turns bends
 /// a window of seven turns by 0.12 %.
 const BENT: f32 = 0.0015;
@@ -50,9 +48,6 @@ const SCATTER: f32 = 0.000_1;
 const SCATTER_OF_LINE: f32 = 0.000_4;
 /// A newest block that is further than this from where the ones before put it, in standard deviations, is another motion's.
 const MISFIT: f32 = 4.0;
-/// The speed at a parabola's end is not further than this from the mean speed of the last two blocks, which no spindle's
-/// extremes can be within: where an acceleration ends, the reading is at most 0.8 % beyond.
-const CARRY: f32 = 0.008;
 /// Deviations are cut here, ns: more than any window that holds together has.
 const LATEST: i64 = 1 << 32;
 /// Fractional bits of a period.
@@ -96,8 +91,9 @@ pub(super) struct Calm {
     line: Option<Line>,
     /// The newest block is another motion's, or moved by noise: the next one tells.
     misfit: bool,
-    /// Since when one speed explains the pulses, and how many that were.
+    /// Since when one speed explains the pulses, within the ripple floor.
     since: Instant,
+    /// How many a line explains.
     steady: u32,
 }
 
@@ -150,12 +146,17 @@ impl Calm {
         (self.period > 0).then_some(self.period)
     }
 
-    /// Since when one speed explains the pulses.
-    pub(super) fn since(&self) -> Instant {
-        self.since
+    /// For how long one speed, within the ripple floor, has explained the pulses up to `last`; not at all before three turns.
+    pub(super) fn one_speed_for(&self, last: Instant) -> Duration {
+        let past = last.since(self.since);
+        if self.period > 0 && past.nanos() >= u64::from(LINE) * self.period {
+            past
+        } else {
+            Duration::ZERO
+        }
     }
 
-    /// Whole turns that one speed explains.
+    /// Whole turns that a line explains.
     pub(super) fn steady_turns(&self) -> u32 {
         self.steady / self.pulses
     }
@@ -298,8 +299,10 @@ impl Calm {
             let points = self.points();
             let (bend, half) = fit::bend(&points, self.period as f32);
             if fabsf(bend) > BENT && points.len() >= MANY && self.parabola(&points) {
+                self.steady = 0;
+                // A wobble within the ripple floor is a speed that a step must explain: it puts off no doubt.
                 if fabsf(bend) > RIPPLE {
-                    self.unsteady();
+                    self.since = Instant::from_nanos(self.blocks.back().map_or(0, |b| b.mean));
                 }
                 return;
             }
@@ -351,7 +354,7 @@ impl Calm {
         let beyond = newest.turns as f32 - 1.0 / self.pulses as f32;
         let (slope, error) = parabola.slope(newest.at, beyond);
         let misfit = parabola.scatter.misfit(MISFIT, SCATTER * turn);
-        // In doubt no further than what has been.
+        // In doubt no further than the mean speed of the last two blocks, which no spindle's extremes can be within.
         let most = if misfit { 0.0 } else { CARRY * turn / 2.0 };
         let read = last + (slope - last).clamp(-most, most);
         self.read(read, error + fabsf(slope - read));
@@ -359,15 +362,6 @@ impl Calm {
             self.forget(self.blocks.len() - LINE as usize);
         }
         true
-    }
-
-    /// The speed changes by more than ripple: it is none that a step must explain. A wobble within it is: it must not put off
-    /// the doubt.
-    fn unsteady(&mut self) {
-        if let Some(newest) = self.blocks.back() {
-            self.since = Instant::from_nanos(newest.mean);
-        }
-        self.steady = 0;
     }
 
     /// The period is longer by so much a half-turn than that of all checks, with a standard error.

@@ -26,6 +26,12 @@ use gate::{Gate, HIGHEST_RATE, Pulse, short};
 use hold::Hold;
 use track::{Span, Track};
 
+/// The ripple floor: belts and gears change a spindle's speed by 0.1 to 0.5 % each, coming and going (common practice, no
+/// source). Turns, or halves of a window, that differ by more are two speeds.
+const RIPPLE: f32 = 0.006;
+/// A view is carried on to its newest pulse by at most this share: where an acceleration ends, it is then still no more than
+/// 0.8 % beyond the truth.
+const CARRY: f32 = 0.008;
 /// A speed is doubted only after it has been steady for this long.
 const DOUBT_AFTER: Duration = Duration::from_secs(1);
 
@@ -357,10 +363,15 @@ impl Tacho {
         }
     }
 
+    /// When the last pulse came; the clock's start where none has.
+    pub fn silent_since(&self) -> Instant {
+        self.quiet_from
+    }
+
     /// Whether the speed may be another one than at the last reading: a pulse did not keep the rhythm since, or the last turns
     /// do not agree.
     pub fn is_changing(&self) -> bool {
-        self.track.irregular || !self.track.calm.is_steady()
+        self.track.irregular || !self.track.steady_for(Duration::ZERO)
     }
 
     /// What is known at `now`; `explains` says whether the machine can turn at a speed at all.

@@ -5,6 +5,7 @@
 //! longer than (w - sqrt(w^2 - 2 a g)) / a cannot be a stop, so the signal is lost. Below that speed a dead sensor and a
 //! stop look the same, and nobody can know.
 
+use super::RIPPLE;
 use super::track::Span;
 use crate::time::{Duration, Instant};
 
@@ -12,8 +13,6 @@ use crate::time::{Duration, Instant};
 pub(super) const LOST_AFTER: Duration = Duration::from_millis(500);
 /// and after this many expected pulses.
 const LOST_AFTER_PULSES: f32 = 4.0;
-/// How closely two turns at the same speed agree: belt and gears ripple by 0.1 to 0.5 % each (common practice, no source).
-const RIPPLE: f32 = 0.006;
 /// A spindle whose last turn is faster than expected by more is still speeding up.
 const SPEEDING_UP: f32 = 0.01;
 /// Ripple comes on top of the hardest braking.

@@ -2,16 +2,12 @@
 
 use super::rhythm::EARLY;
 use super::{Span, Track, rev};
+use crate::tacho::{CARRY, RIPPLE};
 use crate::time::{Duration, Instant};
 
 /// Mean size of the third difference of four times with white noise, over the noise's standard deviation:
 /// sqrt(20) sqrt(2 / pi). A steady acceleration is not in it.
 const SCATTER: f32 = 3.568_2;
-/// The fast view is carried on to its newest pulse by at most this share: where an acceleration ends, it is then still
-/// no more than 0.8 % beyond the truth.
-const CARRY: f32 = 0.008;
-/// Only a change by more is an acceleration and no ripple.
-const RIPPLE: f32 = 0.006;
 /// The error of a speed of which nothing but one turn is known: the largest error that placement makes (see the start).
 const UNKNOWN: f32 = 0.1;
 
@@ -99,8 +95,10 @@ impl Track {
 
     /// Whether one speed has explained the pulses for this long and for three turns.
     pub(in crate::tacho) fn steady_for(&self, time: Duration) -> bool {
-        let last = self.last().unwrap_or(Instant::ZERO);
-        self.calm.is_steady() && last.since(self.calm.since()) >= time
+        let past = self
+            .calm
+            .one_speed_for(self.last().unwrap_or(Instant::ZERO));
+        past > Duration::ZERO && past >= time
     }
 
     /// Standard deviation of a pulse's time, s, from how much turns differ; ripple is in it. `None` before it is known.
