@@ -432,6 +432,80 @@ fn a_wide_tooth_after_a_pause_of_seconds_is_a_pulse() {
     }
 }
 
+/// A magnet that passes in a five-hundredth of the spacing, or in less.
+#[test]
+fn narrow_magnets_are_read() {
+    for (pulses, share) in [(1, 0.0015), (1, 0.002), (2, 0.004), (6, 0.0043), (6, 0.002)] {
+        for speed in [60.0, 600.0, 3000.0] {
+            let mut capture = Capture::new(pulses).jitter(0.0);
+            capture.sensor.width = share * 360.0 / f64::from(pulses);
+            capture.sensor.hysteresis = capture.sensor.width / 4.0;
+            let capture = capture.then(Piece::steady(speed, 20.0));
+            let worst = worst_after(&capture, 15.0);
+            assert!(worst < 1e-3, "{pulses} pulses, {share}: {worst:.2e}");
+        }
+    }
+}
+
+/// Somebody moves the sensor while the machine stands: the magnets pass twice, or half, as wide as before.
+#[test]
+fn a_sensor_that_was_moved_is_read_again() {
+    for pulses in [1, 2, 6, 12, 60] {
+        for factor in [0.4, 2.0, 3.0] {
+            let mut capture = Capture::new(pulses);
+            capture.sensor.width = 0.05 * 360.0 / f64::from(pulses);
+            let before = capture.clone().then(Piece::steady(600.0, 20.0));
+            capture.sensor.width *= factor;
+            let after = capture.then(Piece::steady(600.0, 5.0));
+            let mut tacho = Tacho::new(before.config());
+            let end = before.play(&mut |edge| tacho.push(edge));
+            let later = (end + Duration::from_secs(10)).since(Instant::ZERO);
+            let _ = tacho.reading(end + Duration::from_secs(9), |_| true);
+            let end = after.play(&mut |edge| {
+                tacho.push(Edge {
+                    at: edge.at + later,
+                    ..edge
+                });
+            });
+            let reading = tacho.reading(end + later, |_| true);
+            assert_eq!(reading.signal, Signal::Turning, "{pulses} pulses, {factor}");
+            let off = (rpm(&reading) / 600.0 - 1.0).abs();
+            assert!(off < 1e-3, "{pulses} pulses, {factor}: {off:.2e}");
+        }
+    }
+}
+
+/// Spikes that run into one another are not as wide as they lie apart.
+#[test]
+fn a_slow_spindle_is_read_under_spikes() {
+    for (pulses, share) in [(1, 0.10), (2, 0.20), (1, 0.05), (2, 0.10)] {
+        for seed in 0..10 {
+            let mut capture = Capture::new(pulses).seeded(seed, 0.2);
+            capture.sensor.width = share * 360.0 / f64::from(pulses);
+            capture.sensor.spike_rate = 60.0;
+            let capture = capture
+                .then(Piece::steady(60.0, 10.0))
+                .with(Piece::steady(60.0, 60.0), &[(Fault::Spikes, true)]);
+            let worst = worst_after(&capture, 6.0);
+            assert!(
+                worst < 0.02,
+                "{pulses} pulses, {share}, seed {seed}: {worst:.2e}"
+            );
+        }
+    }
+}
+
+/// Turned slowly by hand, then the motor: no tooth of a wheel is taken for an extra one for long.
+#[test]
+fn a_wheel_that_was_turned_slowly_and_then_starts_is_read_soon() {
+    let capture = Capture::new(8)
+        .then(Piece::steady(10.5, 20.0))
+        .then(Piece::ramp(10.5, 600.0, 1000.0))
+        .then(Piece::steady(600.0, 3.0));
+    let worst = worst_after(&capture, 20.0 + 0.59 + 1.0);
+    assert!(worst < 0.01, "{worst:.2e}");
+}
+
 #[test]
 fn a_runaway_is_shown_at_its_real_speed() {
     let capture = Capture::new(1)

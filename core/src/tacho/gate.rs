@@ -294,7 +294,8 @@ impl Gate {
         let Some(passage) = &self.passage else {
             return;
         };
-        let could_turn = passage.width >= short(passage.first, before) / THINNEST;
+        // Its lows: pieces of noise that were joined are as wide as they lie apart.
+        let could_turn = passage.low >= short(passage.first, before) / THINNEST;
         self.narrow = if could_turn { self.narrow + 1 } else { 0 };
         if self.narrow >= NARROW_IS_USUAL {
             self.forget_width();

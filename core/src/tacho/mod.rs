@@ -122,7 +122,7 @@ pub struct Tacho {
     too_wide: u8,
     /// Low share of the pulse spacing as seen while turning; it tells turning from a parked magnet that shakes.
     low_share: Option<f32>,
-    /// The widest low share at which a spindle may turn, in 1/[`SHARE`].
+    /// The widest low share at which a spindle may turn, in 1/[`SHARE`], less than all of them.
     widest: u32,
     /// A silence shorter than this, ns, never means anything;
     patience: u32,
@@ -162,37 +162,54 @@ struct Start {
     interval: f32,
     /// How far, as a factor, neighbouring low shares may differ.
     share: f32,
-    /// Whether the low share must be known from turning, and met.
-    experienced: bool,
+    by: Experience,
+}
+
+/// What the low shares of a start are held against.
+#[derive(Clone, Copy, PartialEq)]
+enum Experience {
+    /// Experience where there is any, else the widest that turning explains.
+    Any,
+    /// Experience, closely.
+    Needed,
+    /// Half of the widest that turning explains: the sensor was moved, or experience began with an odd turn. No parked magnet
+    /// shakes so evenly and passes so narrow. What was known is forgotten.
+    Outdated,
 }
 
 /// Any of these is a start. A run-up from rest at constant torque shortens its third interval to 0.77 of its second, its
 /// seventh to 0.93 of its sixth; six magnets each 3 degrees off make neighbouring intervals differ by up to a fifth.
 /// A magnet that shakes at random meets each of them less than once in an hour (see the tests).
-const STARTS: [Start; 4] = [
+const STARTS: [Start; 5] = [
     Start {
         intervals: 3,
         interval: 1.03,
         share: 1.08,
-        experienced: false,
+        by: Experience::Any,
     },
     Start {
         intervals: 3,
         interval: 1.05,
         share: 1.08,
-        experienced: true,
+        by: Experience::Needed,
     },
     Start {
         intervals: 5,
         interval: 1.40,
         share: 1.40,
-        experienced: true,
+        by: Experience::Needed,
     },
     Start {
         intervals: 7,
         interval: 1.38,
         share: 1.50,
-        experienced: false,
+        by: Experience::Any,
+    },
+    Start {
+        intervals: 7,
+        interval: 1.03,
+        share: 1.08,
+        by: Experience::Outdated,
     },
 ];
 /// Six magnets each 3 degrees off: 66 degrees after 54.
@@ -206,7 +223,7 @@ const RETURN: Start = Start {
     intervals: 2,
     interval: 1.40,
     share: 1.60,
-    experienced: false,
+    by: Experience::Any,
 };
 /// How far the speed may be from the last one to end a loss.
 const SPEEDS_AGREE: f32 = 0.10;
@@ -220,8 +237,8 @@ const MOMENT: Duration = Duration::from_millis(150);
 const JITTER: Duration = Duration::from_micros(5);
 /// So many standard deviations of the jitter as measured may stand between two pulses.
 const JITTERS: f32 = 8.0;
-/// What shares are counted in: the shortest interval has 175 ns of these parts, which is fine enough.
-const SHARE: u32 = 1 << 8;
+/// What shares are counted in: fine enough for a magnet that passes in a thousandth of a turn.
+const SHARE: u32 = 1 << 16;
 
 impl Tacho {
     /// Starts without knowing anything of the spindle.
@@ -243,7 +260,7 @@ impl Tacho {
             hold: Hold::default(),
             config,
         };
-        tacho.widest = (tacho.widest_share() * SHARE as f32) as u32;
+        tacho.widest = tacho.widest();
         tacho.patience = tacho.patience();
         tacho
     }
@@ -353,13 +370,13 @@ impl Tacho {
         let Some(before) = self.latest.recent() else {
             return true;
         };
-        match short(pulse.at, before.at) {
-            // Too long for 32 bits.
-            u32::MAX => {
-                let interval = pulse.at.since(before.at).nanos() / u64::from(SHARE);
-                u64::from(pulse.width) <= interval.saturating_mul(u64::from(self.widest))
-            }
-            interval => pulse.width <= (interval / SHARE).saturating_mul(self.widest),
+        // Cut off twice, for 32 bits: what is below that is below the product. Else the product decides.
+        let interval = short(pulse.at, before.at);
+        let surely = (interval >> 8) * (self.widest >> 8);
+        pulse.width <= surely || {
+            let interval = pulse.at.since(before.at).nanos();
+            let widest = interval.saturating_mul(u64::from(self.widest));
+            u64::from(pulse.width) <= widest / u64::from(SHARE)
         }
     }
 
@@ -483,13 +500,21 @@ impl Tacho {
 
     /// The widest low share of the spacing at which a spindle may turn.
     fn widest_share(&self) -> f32 {
-        let without_experience = if self.config.pulses.get() < MANY_PULSES {
+        self.low_share
+            .map_or(self.without_experience(), |s| s * LOW_SHARE_AGREES)
+    }
+
+    /// The same where nothing is known of the magnets yet.
+    fn without_experience(&self) -> f32 {
+        if self.config.pulses.get() < MANY_PULSES {
             LOW_SHARE_FEW
         } else {
             LOW_SHARE_MANY
-        };
-        self.low_share
-            .map_or(without_experience, |s| s * LOW_SHARE_AGREES)
+        }
+    }
+
+    fn widest(&self) -> u32 {
+        ((self.widest_share() * SHARE as f32) as u32).min(SHARE - 1)
     }
 
     /// The last pulse, or the fall of one that may be under way.
@@ -575,12 +600,16 @@ impl Tacho {
     }
 
     /// How many of the last pulses are a start.
-    fn starts(&self) -> Option<usize> {
+    fn starts(&mut self) -> Option<usize> {
         // More magnets are more chances for one that shakes, and a pulse more costs less time.
         let more = usize::from(self.config.pulses.get() >= SEVERAL);
         for start in &STARTS {
             let intervals = (start.intervals + more).min(START_PULSES - 1);
             if self.agree(intervals, start) {
+                if start.by == Experience::Outdated {
+                    self.low_share = None;
+                    self.widest = self.widest();
+                }
                 return Some(intervals + 1);
             }
         }
@@ -600,11 +629,12 @@ impl Tacho {
             return false;
         };
         // With experience at both ends, without only at the wide one.
-        let (narrowest, widest) = match (start.experienced, self.low_share) {
-            (true, None) => return false,
-            (true, Some(share)) => (share / START_AGREES, share * START_AGREES),
-            (false, Some(share)) => (share / LOW_SHARE_AGREES, share * LOW_SHARE_AGREES),
-            (false, None) => (0.0, self.widest_share()),
+        let (narrowest, widest) = match (start.by, self.low_share) {
+            (Experience::Needed, None) => return false,
+            (Experience::Needed, Some(share)) => (share / START_AGREES, share * START_AGREES),
+            (Experience::Any, Some(share)) => (share / LOW_SHARE_AGREES, share * LOW_SHARE_AGREES),
+            (Experience::Any, None) => (0.0, self.widest_share()),
+            (Experience::Outdated, _) => (0.0, self.without_experience() / 2.0),
         };
         let alike = |a: f32, b: f32, factor: f32| a < factor * b && b < factor * a;
         // A spindle that starts does not slow down: longer intervals come from placement alone.
@@ -660,7 +690,7 @@ impl Tacho {
             }
             None => share,
         });
-        self.widest = (self.widest_share() * SHARE as f32) as u32;
+        self.widest = self.widest();
         self.patience = self.patience();
     }
 }

@@ -109,7 +109,7 @@ impl Track {
         );
         let halves_alike = alike(first, second);
         // A pulse of noise does not move the one after it.
-        let out_of_time = (steps - libm::roundf(steps)).abs() > IN_TIME;
+        let out_of_time = (steps - libm::roundf(steps).max(1.0)).abs() > IN_TIME;
         let no_noise = suspect.width >= NOISE && self.pulses < MANY;
         let faster = (FASTER * first..ALIKE * first).contains(&second) && (out_of_time || no_noise);
         if plausible && (faster || halves_alike && self.extra_in_a_row > 0) {
