@@ -70,6 +70,8 @@ pub(crate) enum Cause {
     Panic(String<LONGEST>),
     /// These tasks hung or had not checked in when the watchdog's time ran out.
     Starved(Tasks),
+    /// Power came on, and what the operator chose before cannot be read.
+    Forgotten,
 }
 
 #[repr(C)]

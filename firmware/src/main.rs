@@ -63,7 +63,7 @@ fn main() -> ! {
         board::NAME
     );
     match &cause {
-        fault::Cause::Power => defmt::info!("start: power-up"),
+        fault::Cause::Power | fault::Cause::Forgotten => defmt::info!("start: power-up"),
         fault::Cause::Panic(message) => defmt::error!("start: after panic: {=str}", message),
         fault::Cause::Starved(missing) => {
             defmt::error!("start: after watchdog, missing {}", missing)

@@ -1,4 +1,4 @@
-//! What the display shows after a panic or a watchdog reset, until a knob is pressed.
+//! What the display shows after a panic, a watchdog reset or the loss of what was chosen, until a knob is pressed.
 
 use core::fmt::Write;
 
@@ -18,6 +18,13 @@ const ROW: usize = 25;
 /// Rows left for the message.
 const ROWS: usize = 4;
 
+/// In whole rows.
+const FORGOTTEN: &str = concat!(
+    "Choose again, and look at",
+    "the pulses in a turn on  ",
+    "the Sensor page.         "
+);
+
 /// Draws the notice; `None` where there is nothing to say.
 pub(crate) fn draw(cause: &Cause, frame: &mut Frame) -> Option<()> {
     let (title, message) = match cause {
@@ -27,6 +34,11 @@ pub(crate) fn draw(cause: &Cause, frame: &mut Frame) -> Option<()> {
             let mut message = String::new();
             let _ = write!(message, "no answer from: {}", missing.names());
             ("RESTARTED: TASK HUNG", message)
+        }
+        Cause::Forgotten => {
+            let mut message = String::new();
+            let _ = message.write_str(FORGOTTEN);
+            ("WHAT WAS CHOSEN IS LOST", message)
         }
     };
     let mut build: String<ROW> = String::new();

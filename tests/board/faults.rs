@@ -60,7 +60,7 @@ fn after_restart(mut board: Emulator) {
     );
     board.press(Knob::Left);
     board.run_ms(400);
-    assert_eq!(board.lines("restart acknowledged").count(), 1);
+    assert_eq!(board.lines("notice acknowledged").count(), 1);
     assert!(
         board.outputs().relay,
         "acknowledged: danger closes it again"

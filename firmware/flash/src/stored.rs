@@ -26,6 +26,9 @@ struct Record {
     load: bool,
 }
 
+/// What was kept is there and cannot be used.
+pub struct Unreadable;
+
 /// The setups that were kept, and what is still to be done.
 pub struct Stored {
     records: Records,
@@ -50,15 +53,18 @@ impl Stored {
         }
     }
 
-    /// The setup that was kept last. Without one it is `start`; where there is one that cannot be used, the instrument gets
-    /// none, and so begins with the most cautious.
+    /// The setup that was kept last; without one it is `start`.
+    ///
+    /// # Errors
+    /// There is one that cannot be used. The most cautious setup is not cautious in everything: the pulses in a revolution that
+    /// were counted are lost with it, so somebody must be told.
     #[inline(never)]
-    pub fn load(&mut self, start: Option<Setup>) -> Option<Setup> {
+    pub fn load(&mut self, start: Option<Setup>) -> Result<Option<Setup>, Unreadable> {
         let mut bytes = [0; ROOM];
         let record = match self.records.last(&mut bytes) {
             Found::Nothing => {
                 defmt::info!("stored setup: none");
-                return start;
+                return Ok(start);
             }
             Found::Record(length) => bytes
                 .get(..length)
@@ -68,24 +74,24 @@ impl Stored {
         };
         let Some((record, _)) = record else {
             defmt::error!("stored setup: unreadable, the most cautious instead");
-            return None;
+            return Err(Unreadable);
         };
         if record.profile != self.profile {
             defmt::warn!("stored setup: of another profile, passed over");
-            return start;
+            return Ok(start);
         }
         match record.setup.check() {
             Ok(setup) => {
                 defmt::info!("stored setup: read");
-                Some(Setup {
+                Ok(Some(Setup {
                     cap_is_old: record.cap_is_old,
                     load: record.load,
                     ..setup
-                })
+                }))
             }
             Err(refused) => {
                 defmt::error!("stored setup: {}, the most cautious instead", refused);
-                None
+                Err(Unreadable)
             }
         }
     }

@@ -119,7 +119,11 @@ impl Owner {
     ) -> Self {
         let (machine, start, mark) = profile::load(packed_profile());
         let mut stored = Stored::new(flash, FLASH_BYTES, mark);
-        let chosen = stored.load(start);
+        let (chosen, cause) = match (stored.load(start), cause) {
+            (Ok(chosen), cause) => (chosen, cause),
+            (Err(_), Cause::Power) => (None, Cause::Forgotten),
+            (Err(_), cause) => (None, cause),
+        };
         let pulses = chosen.map_or(machine.pulses(), |setup| setup.pulses_on(machine).get());
         defmt::info!("machine {=str} pulses {=u16}", machine.name(), pulses.get());
         let sense = Sense::new(capture, pulses.get());
@@ -198,9 +202,11 @@ impl Owner {
             }
             Message::Press(knob) => {
                 if !matches!(self.cause, Cause::Power) {
-                    defmt::info!("restart acknowledged");
+                    // That is all this press is: what it would confirm has not been seen.
+                    defmt::info!("notice acknowledged");
                     self.cause = Cause::Power;
                     self.repaint = true;
+                    return;
                 }
                 self.instrument.handle(now(), Event::Press(knob));
             }

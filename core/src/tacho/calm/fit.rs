@@ -2,7 +2,7 @@
 //!
 //! The parabola is the line and a multiple of the polynomial of second degree that is orthogonal to it over the points
 //! (G. E. Forsythe, Generation and use of orthogonal polynomials for data-fitting with a digital computer, J. SIAM 5, 1957,
-//! 74-88): line and scatter stay as they are, and the standard errors add as squares.
+//! 74-88; from memory): line and scatter stay as they are, and the standard errors add as squares.
 
 use libm::{fabsf, sqrtf};
 
