@@ -11,7 +11,7 @@ use crate::machine::Machine;
 use crate::panel::{Bench, Knob, Page, Panel, Wish};
 use crate::physics::cutting_speed::surface_speed_m_min;
 use crate::screen::{self, View};
-use crate::sensor_setup::{Fit, Offer, SensorSetup};
+use crate::sensor_setup::{Doubt, Fit, Offer, SensorSetup};
 use crate::setup::Setup;
 use crate::tacho::{Config, Reading, Rejected, Signal, Tacho};
 use crate::time::{Duration, Edge, Instant};
@@ -99,6 +99,7 @@ struct Shown {
     counted: Option<u32>,
     /// Where the count of pulses in a revolution stands.
     offer: Option<Offer>,
+    doubt: Option<Doubt>,
     plate: Option<Rpm>,
     fit: Option<Fit>,
     /// How hard the motor works, where that is switched on and known.
@@ -170,6 +171,16 @@ impl Instrument {
         }
     }
 
+    /// Edges were held back, as a sensor that seems to be wired the other way round gives them: no count outlives that.
+    pub fn edges_withheld(&mut self) {
+        self.sensor_setup.edges_lost();
+    }
+
+    /// Pulses in a revolution that it goes by.
+    pub fn pulses(&self) -> u16 {
+        self.setup.pulses_on(&self.machine).get().get()
+    }
+
     /// Whether the spindle's speed is changing: then a poll should not wait long after a pulse.
     pub fn is_urgent(&self) -> bool {
         self.tacho.is_changing()
@@ -223,7 +234,11 @@ impl Instrument {
             },
             offer: match page {
                 Page::TenTurns => Some(self.sensor_setup.hand_offer(used)),
-                Page::PlateSpeed => Some(self.sensor_setup.plate_offer(used)),
+                Page::PlateSpeed => Some(self.sensor_setup.plate_offer(used, &self.machine)),
+                _ => None,
+            },
+            doubt: match page {
+                Page::PlateSpeed => self.sensor_setup.doubt(used, &self.machine),
                 _ => None,
             },
             plate: self.sensor_setup.plate(),

@@ -1,7 +1,9 @@
 //! What the board measures, against what was put in.
 
+use rimrate_core::panel::Knob;
 use rimrate_core::tacho::{Reading, Signal};
-use rimrate_sim::rig::Rig;
+use rimrate_core::time::{Edge, EdgeKind, Instant};
+use rimrate_sim::rig::{Rig, Touch};
 
 use crate::rig::{Emulator, Start};
 use crate::support::{STARTED_MS, inverted, setup, spin, wide_board, wide_machine};
@@ -242,6 +244,74 @@ fn a_sensor_wired_inverted_is_reported_and_read() {
     assert_eq!(reading.signal, Signal::Turning);
     let speed = f64::from(reading.speed.expect("is turning").get());
     assert!((speed / rpm - 1.0).abs() <= STEADY, "{speed}");
+}
+
+/// Ten turns by hand past a wheel of 60 teeth, in pulls of a fifth of a turn, that hold the line low for this share.
+fn turn_wheel(board: &mut Emulator, low_ms: u64) {
+    const MS: u64 = 1_000_000;
+    let mut at = board.now() + 200 * MS;
+    let mut edges = Vec::new();
+    for pull in 0..50 {
+        for _ in 0..12 {
+            edges.push(Edge::fall(Instant::from_nanos(at)));
+            edges.push(Edge::rise(Instant::from_nanos(at + low_ms * MS)));
+            at += 20 * MS;
+        }
+        at += (150 + 50 * (pull * pull % 7)) * MS;
+    }
+    board.edges(&edges);
+    board.run_ms((at - board.now()) / MS + 200);
+}
+
+/// On a machine that is said to have two magnets, teeth with narrow gaps look like a sensor that is wired the other way round,
+/// and edges are held back: a count by hand then says so and gives no number. Once the number of teeth is in use they do not.
+#[test]
+fn teeth_that_look_inverted_spoil_a_count_by_hand() {
+    let mut board = wide_board(2, 25.0);
+    let press = |board: &mut Emulator, knob| {
+        board.press(knob);
+        board.run_ms(200);
+    };
+    press(&mut board, Knob::Right);
+    press(&mut board, Knob::Left);
+    board.touch(Touch::Turn(Knob::Left, 1));
+    board.run_ms(200);
+    press(&mut board, Knob::Right);
+    assert!(board.frame().shows("press right: turns done"));
+    turn_wheel(&mut board, 16);
+    assert!(
+        board.frame().shows("Pulses were lost while"),
+        "{:?}",
+        board.frame()
+    );
+    press(&mut board, Knob::Right);
+    turn_wheel(&mut board, 10);
+    press(&mut board, Knob::Right);
+    assert!(
+        board.frame().shows("60 a turn, in use 2"),
+        "{:?}",
+        board.frame()
+    );
+    press(&mut board, Knob::Right);
+    assert!(board.frame().shows("profile says 2"), "{:?}", board.frame());
+    turn_wheel(&mut board, 16);
+    let from = board.now() + 3_000_000;
+    let low = |edge: Edge| match edge.kind {
+        EdgeKind::Fall => edge,
+        // 2.7 ms of 3.3.
+        EdgeKind::Rise => Edge::rise(Instant::from_nanos(edge.at.nanos() + 1_000_000)),
+    };
+    let edges: Vec<Edge> = spin(300.0, 60, from, from + 1_500_000_000)
+        .into_iter()
+        .map(low)
+        .collect();
+    board.edges(&edges);
+    board.run_ms(1500);
+    assert_eq!(board.lines("sensor: inverted").count(), 0);
+    let speed = board.reading().speed.map_or(0.0, |n| f64::from(n.get()));
+    assert!((speed / 300.0 - 1.0).abs() <= STEADY, "{speed}");
+    assert_eq!(board.count("lost"), 0);
+    assert!(board.resets.is_empty());
 }
 
 /// A line that never moves, high or low, through the wrap of the count: no pulses, no reset.

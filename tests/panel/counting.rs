@@ -17,10 +17,10 @@ fn at_ten_turns(machine: Machine) -> Hand {
     hand
 }
 
-/// So many magnets pass, one a second.
+/// So many magnets pass, about one a second, as unevenly as a hand turns.
 fn pass(hand: &mut Hand, passages: u32) {
-    for _ in 0..passages {
-        hand.now += Duration::from_millis(900);
+    for i in 0..passages {
+        hand.now += Duration::from_millis(600 + 97 * u64::from((i % 7).pow(2) % 7));
         let fall = hand.now;
         hand.now += Duration::from_millis(100);
         hand.sensor.edges(&[Edge::fall(fall), Edge::rise(hand.now)]);
@@ -99,6 +99,21 @@ fn a_count_is_given_up_by_the_left_knob_and_a_wrong_one_is_counted_again() {
     hand.click(Knob::Left);
     assert_eq!(hand.panel.page(), Page::Run);
     assert_eq!(*hand.sensor.hand(), Turns::Waiting);
+    // What was counted and not taken over is no more once the operator leaves, from this page or by way of the Sensor page.
+    for by_sensor_page in [false, true] {
+        let mut hand = at_ten_turns(machine("geared-lathe"));
+        hand.click(Knob::Right);
+        pass(&mut hand, 30);
+        hand.click(Knob::Right);
+        assert!(matches!(hand.sensor.hand(), Turns::Counted(30, Ok(_))));
+        if by_sensor_page {
+            hand.turn(Knob::Left, -1);
+            assert!(matches!(hand.sensor.hand(), Turns::Counted(30, Ok(_))));
+        }
+        hand.click(Knob::Left);
+        assert_eq!(hand.panel.page(), Page::Run);
+        assert_eq!(*hand.sensor.hand(), Turns::Waiting);
+    }
     let mut hand = at_ten_turns(machine("geared-lathe"));
     hand.click(Knob::Right);
     pass(&mut hand, 25);

@@ -54,10 +54,11 @@ impl Counter {
     }
     /// So many magnets pass by hand.
     fn pass(&mut self, passages: u32) {
-        for _ in 0..passages {
+        for i in 0..passages {
             let (fall, rise) = (at(self.now + 0.45), at(self.now + 0.55));
             self.sensor.edges(&[Edge::fall(fall), Edge::rise(rise)]);
-            self.now += 1.0;
+            // No hand is even.
+            self.now += 0.7 + 0.1 * f64::from((i % 7).pow(2) % 7);
         }
         self.sensor.look(at(self.now), None);
     }
@@ -211,6 +212,15 @@ pub(super) fn scenes() -> Vec<(&'static str, Scene)> {
             }),
         ),
         (
+            "count-motor-runs",
+            counting(2, |c| {
+                c.press(Knob::Right);
+                for _ in 0..13 {
+                    c.pass(1);
+                }
+            }),
+        ),
+        (
             "count-chatter",
             counting(2, |c| {
                 c.press(Knob::Right);
@@ -251,9 +261,33 @@ pub(super) fn scenes() -> Vec<(&'static str, Scene)> {
         (
             "plate-new-number",
             counting(2, |c| {
-                c.plate(7, 14.2);
                 c.turn(Knob::Left, 1);
-                c.rate(14.2, 10);
+                c.turn(Knob::Right, 1);
+                c.rate(1.8, 30);
+            }),
+        ),
+        (
+            "plate-another-step",
+            counting(2, |c| {
+                c.turn(Knob::Left, 1);
+                c.turn(Knob::Right, 7);
+                c.rate(37.33, 10);
+            }),
+        ),
+        (
+            "plate-fits-in-use-too",
+            counting(9, |c| {
+                c.turn(Knob::Left, 1);
+                c.turn(Knob::Right, 7);
+                c.rate(37.33, 10);
+            }),
+        ),
+        (
+            "plate-several-steps",
+            counting(2, |c| {
+                c.turn(Knob::Left, 1);
+                c.turn(Knob::Right, 7);
+                c.rate(4.667, 20);
             }),
         ),
         (

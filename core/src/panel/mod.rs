@@ -264,7 +264,7 @@ impl Panel {
             (Page::Sensor, _) => Page::TenTurns,
             (Page::TenTurns, Knob::Left) if !matches!(bench.sensor.hand(), Hand::Counting(_)) => {
                 if detents > 0 {
-                    bench.sensor.time_anew();
+                    bench.sensor.enter_plate();
                     Page::PlateSpeed
                 } else {
                     Page::Sensor
@@ -289,7 +289,7 @@ impl Panel {
         let used = bench.setup.pulses_on(bench.machine);
         let offer = match self.page {
             Page::TenTurns => bench.sensor.hand_offer(used),
-            Page::PlateSpeed => bench.sensor.plate_offer(used),
+            Page::PlateSpeed => bench.sensor.plate_offer(used, bench.machine),
             _ => Offer::Nothing,
         };
         self.page = match (self.page, knob) {
@@ -308,11 +308,11 @@ impl Panel {
                 }
                 Offer::Nothing => self.page,
             },
-            (Page::TenTurns | Page::PlateSpeed, Knob::Left) => {
-                bench.sensor.give_up();
+            (Page::TenTurns | Page::PlateSpeed, Knob::Left) | (Page::Sensor, _) => {
+                bench.sensor.leave();
                 Page::Run
             }
-            (Page::Choose(_) | Page::Why(_) | Page::Sensor, _) => Page::Run,
+            (Page::Choose(_) | Page::Why(_), _) => Page::Run,
         };
     }
 

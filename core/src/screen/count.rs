@@ -3,13 +3,13 @@
 //!
 //! ```text
 //!  Count: ten turns by hand             Count: by plate speed
-//!  CAUTION: lock out the supply, or     Run in one step, without a cut.
-//!  motor off, out of gear. Key out.     plate 280 rpm (turn right)
-//!  passages: 13                         18.67 pulses/s: 3.99 a turn
-//!  One way, back to the mark.           4 pulses a turn, in use 2
-//! [press right: turns done        ]    [press right: use 4              ]
-//!  press left: give up                  turn left back: by hand
-//!                                       press left: back to speed
+//!  CAUTION: lock out the supply, or     CAUTION: chuck key out first.
+//!  motor off, out of gear. Key out.     turn right: plate 280 rpm
+//!  passages: 13                         37.33 pulses/s: 8 a turn
+//!  One way, back to the mark            8 a turn, in use 2
+//! [press right: turns done        ]     or is it step 1120 rpm?
+//!                                       turn left back: by hand
+//!  press left: give up                  press left: back to speed
 //! ```
 
 use core::fmt;
@@ -23,7 +23,7 @@ use heapless::String;
 
 use super::{View, WIDTH, line, write};
 use crate::error::text;
-use crate::sensor_setup::{ALLOWED, Fit, Hand, Miscount, Offer, PULSES_SEEN, TURNS};
+use crate::sensor_setup::{ALLOWED, Doubt, Fit, Hand, Miscount, Offer, PULSES_SEEN, TURNS};
 use crate::setup::Pulses;
 use crate::units::Decimal;
 
@@ -31,6 +31,10 @@ use crate::units::Decimal;
 const ROW: i32 = 8;
 /// The line that says what a press does.
 const OFFER: i32 = 5;
+
+/// Before anybody turns the spindle by hand.
+const LOCK_OUT: &str = "CAUTION: lock out the supply, or";
+const OR_OUT_OF_GEAR: &str = "motor off, out of gear. Key out.";
 
 pub(super) fn ten_turns<D: DrawTarget<Color = BinaryColor>>(
     view: &View<'_>,
@@ -40,10 +44,16 @@ pub(super) fn ten_turns<D: DrawTarget<Color = BinaryColor>>(
     let mut page = Page { target };
     page.words(0, "Count: ten turns by hand")?;
     if matches!(setup.hand(), Hand::Waiting | Hand::Counting(_)) {
-        page.words(1, "CAUTION: lock out the supply, or")?;
-        page.words(2, "motor off, out of gear. Key out.")?;
+        page.words(1, LOCK_OUT)?;
+        page.words(2, OR_OUT_OF_GEAR)?;
     }
     match setup.hand() {
+        Hand::Driven => {
+            page.words(1, "No hand turns like that:")?;
+            page.words(2, "motor runs: switch it off")?;
+            page.words(3, LOCK_OUT)?;
+            page.words(4, OR_OUT_OF_GEAR)?;
+        }
         Hand::Waiting => {
             page.words(3, "Mark chuck and headstock.")?;
             page.words(4, "Ten whole turns, one way.")?;
@@ -89,7 +99,7 @@ pub(super) fn plate_speed<D: DrawTarget<Color = BinaryColor>>(
     let (setup, used) = (view.sensor_setup, view.setup.pulses_on(view.machine));
     let mut page = Page { target };
     page.words(0, "Count: by plate speed")?;
-    page.words(1, "Run in one step, without a cut.")?;
+    page.words(1, "CAUTION: chuck key out first.")?;
     match setup.plate() {
         None => page.words(2, "turn right: plate's speed")?,
         Some(plate) => page.line(2, format_args!("turn right: plate {plate}"))?,
@@ -114,14 +124,20 @@ pub(super) fn plate_speed<D: DrawTarget<Color = BinaryColor>>(
     }
     match (setup.contradiction(), setup.fit()) {
         (Some(both), _) => page.contradiction(4, both)?,
-        (None, None) => {}
+        (None, None) => page.words(4, "Run in one step, without a cut.")?,
         (None, Some(Fit::One(found))) => page.found(4, found, used)?,
         (None, Some(fit @ Fit::Several(..))) => {
             page.line(4, format_args!("{}: count by hand", Fitting(fit)))?;
         }
         (None, Some(Fit::Nothing(_))) => page.words(4, "no whole number: which step?")?,
     }
-    if let Offer::Use(pulses) = setup.plate_offer(used) {
+    match setup.doubt(used, view.machine) {
+        Some(Doubt::Step(rpm)) => page.line(OFFER, format_args!("or is it step {rpm}?"))?,
+        Some(Doubt::InUse) => page.line(OFFER, format_args!("{used} fits, too: count by hand"))?,
+        Some(Doubt::Several) => page.words(OFFER, "several fit: count by hand")?,
+        None => {}
+    }
+    if let Offer::Use(pulses) = setup.plate_offer(used, view.machine) {
         page.offer(format_args!("use {pulses}"))?;
     }
     page.words(6, "turn left back: by hand")?;

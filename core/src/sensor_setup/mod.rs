@@ -2,12 +2,15 @@
 //!
 //! ```text
 //! ten turns by hand:  Waiting -- press --> Counting -- press --> Counted -- press --> taken over, or counted again
-//!                                              +--- edges lost --> Lost -- press --> counted again
-//! plate's speed:      runs steadily, plate chosen --> fit --> One -- press --> taken over
+//!                                              +--- edges lost --> Lost ---- press --> counted again
+//!                                              +--- motor runs --> Driven -- press --> counted again
+//! plate's speed:      runs steadily, plate chosen --> fit --> One -- counted too, or no doubt --> press --> taken over
 //! ```
 //!
-//! Ten turns count, timing only confirms: where both were done and differ, nothing is taken over. Nothing changes by itself.
+//! Ten turns count, timing only confirms: where both were done and differ, nothing is taken over. Whoever chooses the plate may be
+//! mistaken, so timing alone is believed only where no other step explains the rate ([`Doubt`]). Nothing changes by itself.
 
+mod pace;
 mod passages;
 mod timing;
 
@@ -19,6 +22,7 @@ use crate::units::Rpm;
 pub use passages::Passages;
 pub use timing::{CLEAR, Fit, PULSES_SEEN, fit};
 
+use pace::Pace;
 use timing::Rate;
 
 /// Whole turns that are made by hand: so many that a pulse more or less at the mark does not matter.
@@ -95,6 +99,8 @@ pub enum Hand {
     Counted(u32, Result<Pulses, Miscount>),
     /// Edges were lost meanwhile.
     Lost,
+    /// The passages were too even or too fast for a hand: the motor runs.
+    Driven,
 }
 
 /// What the next press of the right knob does.
@@ -112,10 +118,22 @@ pub enum Offer {
     Nothing,
 }
 
+/// What stands against a number that the plate's speed gives and nobody has counted.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub enum Doubt {
+    /// The number in use is the right one if the spindle runs in this other step.
+    Step(Rpm),
+    /// The number in use is the right one if a cut slows the spindle, or anywhere in the range of a variable drive.
+    InUse,
+    /// More than one step fits, each with a number of its own.
+    Several,
+}
+
 /// What is known about the pulses in a revolution.
 #[derive(Clone, Debug, Default, PartialEq)]
 pub struct SensorSetup {
     hand: Hand,
+    pace: Pace,
     /// Passages so far, as of the last look.
     passages: u32,
     plate: Option<Rpm>,
@@ -128,11 +146,14 @@ impl SensorSetup {
     /// Takes edges; they are counted while somebody turns the spindle by hand.
     pub fn edges(&mut self, edges: &[Edge]) {
         if let Hand::Counting(passages) = &mut self.hand {
-            edges.iter().for_each(|&edge| passages.push(edge));
+            for &edge in edges {
+                passages.push(edge);
+                self.pace.push(edge);
+            }
         }
     }
 
-    /// Edges were lost.
+    /// Edges were lost, or held back.
     pub fn edges_lost(&mut self) {
         if matches!(self.hand, Hand::Counting(_)) {
             self.hand = Hand::Lost;
@@ -147,6 +168,9 @@ impl SensorSetup {
             self.passages = passages.count(now);
         }
         self.rate.see(now, pulse);
+        if matches!(self.hand, Hand::Counting(_)) && self.is_driven() {
+            self.hand = Hand::Driven;
+        }
         if let (Some(plate), Some((rate, share))) = (self.plate, self.rate.steady()) {
             self.fit = Some(fit(rate, share, plate));
         }
@@ -176,19 +200,14 @@ impl SensorSetup {
     pub fn fit(&self) -> Option<Fit> {
         self.fit
     }
-    /// The number that ten turns gave.
-    pub fn by_hand(&self) -> Option<Pulses> {
+    fn by_hand(&self) -> Option<Pulses> {
         match self.hand {
             Hand::Counted(_, found) => found.ok(),
             _ => None,
         }
     }
-    /// The number that timing gave.
-    pub fn by_plate(&self) -> Option<Pulses> {
-        match self.fit {
-            Some(Fit::One(pulses)) => Some(pulses),
-            _ => None,
-        }
+    fn is_driven(&self) -> bool {
+        self.pace.is_a_motors() || self.rate.is_a_motors()
     }
     /// What hand and plate say where they contradict each other: then neither is taken over.
     pub fn contradiction(&self) -> Option<(Pulses, Fit)> {
@@ -204,14 +223,51 @@ impl SensorSetup {
             Hand::Counted(_, Ok(found)) if *found != used && self.contradiction().is_none() => {
                 Offer::Use(*found)
             }
-            Hand::Counted(..) | Hand::Lost => Offer::Again,
+            Hand::Counted(..) | Hand::Lost | Hand::Driven => Offer::Again,
         }
     }
 
-    /// The same on the page of the plate's speed.
-    pub fn plate_offer(&self, used: Pulses) -> Offer {
-        match self.by_plate() {
-            Some(found) if found != used && self.contradiction().is_none() => Offer::Use(found),
+    /// The number that the spindle, as it runs now, gives with the chosen plate, and that is neither in use nor contradicted;
+    /// with the rate and the share within which that is known.
+    fn timed(&self, used: Pulses) -> Option<(Pulses, f32, f32)> {
+        let (rate, share) = self.rate.steady()?;
+        match self.fit {
+            Some(Fit::One(found)) if found != used && self.contradiction().is_none() => {
+                Some((found, rate, share))
+            }
+            _ => None,
+        }
+    }
+
+    /// Why the number that timing gives now is not offered. There is no doubt where ten turns gave the same, or where the
+    /// number in use is surely wrong, as nothing explains it, and one step alone explains the rate.
+    #[inline(never)]
+    pub fn doubt(&self, used: Pulses, machine: &Machine) -> Option<Doubt> {
+        let (found, rate, share) = self.timed(used)?;
+        if self.by_hand() == Some(found) {
+            return None;
+        }
+        let in_use = Rpm::saturating(60.0 * rate / f32::from(used.get().get()));
+        if machine.explains(in_use) {
+            let step = machine.step_at(in_use).map(|step| step.rpm);
+            let other = step.filter(|&step| self.plate != Some(step));
+            return Some(other.map_or(Doubt::InUse, Doubt::Step));
+        }
+        let fitting = match machine.drive() {
+            Drive::Stepped(steps) => steps
+                .iter()
+                .map(|step| fit(rate, share, step.rpm).clear())
+                .sum(),
+            // Any number can be some speed's.
+            Drive::Variable(_) => u32::MAX,
+        };
+        (fitting != 1).then_some(Doubt::Several)
+    }
+
+    /// What a press does on the page of the plate's speed.
+    pub fn plate_offer(&self, used: Pulses, machine: &Machine) -> Offer {
+        match self.timed(used) {
+            Some((found, ..)) if self.doubt(used, machine).is_none() => Offer::Use(found),
             _ => Offer::Nothing,
         }
     }
@@ -222,25 +278,41 @@ impl SensorSetup {
             Hand::Counting(passages) => {
                 let (count, found) = counted(passages, now);
                 self.passages = count;
-                Hand::Counted(count, found)
+                let too_fast = found.is_ok() && now.since(passages.begun()) < pace::FASTEST;
+                if too_fast || self.is_driven() {
+                    Hand::Driven
+                } else {
+                    Hand::Counted(count, found)
+                }
             }
             _ => {
                 self.passages = 0;
+                self.pace = Pace::default();
+                self.time_anew();
                 Hand::Counting(Passages::new(now))
             }
         };
     }
 
-    /// Gives up a count that has begun.
-    pub(crate) fn give_up(&mut self) {
-        if let Hand::Counting(_) = self.hand {
-            self.hand = Hand::Waiting;
-        }
+    /// The operator leaves: what was found and not taken over is no more.
+    pub(crate) fn leave(&mut self) {
+        self.hand = Hand::Waiting;
+        self.fit = None;
+        self.time_anew();
     }
 
     /// Times anew: what came before was another page, or another number of pulses.
     pub(crate) fn time_anew(&mut self) {
         self.rate = Rate::default();
+    }
+
+    /// The page of the plate's speed is entered: what was timed before is old. A contradiction stands until one of both is
+    /// found anew.
+    pub(crate) fn enter_plate(&mut self) {
+        self.time_anew();
+        if self.contradiction().is_none() {
+            self.fit = None;
+        }
     }
 
     /// Moves the plate's speed through the machine's steps, or by `turned` where it is set freely. Nobody guesses: the first

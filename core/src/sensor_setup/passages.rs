@@ -45,6 +45,7 @@ impl Stretch {
 /// Passages counted since a moment, from the edges of the sensor's line.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Passages {
+    begun: Instant,
     /// Passages that are over for good.
     over: u32,
     /// Pieces of chatter so far.
@@ -60,6 +61,7 @@ impl Passages {
     /// Counts from `now` on.
     pub fn new(now: Instant) -> Self {
         Passages {
+            begun: now,
             over: 0,
             joined: 0,
             recent: Vec::new(),
@@ -96,6 +98,11 @@ impl Passages {
             .over
             .saturating_add(known.lows())
             .saturating_sub(u32::from(low))
+    }
+
+    /// When the count began.
+    pub fn begun(&self) -> Instant {
+        self.begun
     }
 
     /// Pieces of chatter that were told from passages so far.

@@ -10,7 +10,7 @@ use crate::time::{Duration, Instant};
 use crate::units::Rpm;
 
 /// Up to this number of pulses the band of 8 % leaves a gap to the next number that a spindle which is not quite steady yet, or
-/// pulled down by a cut, does not cross: 2 % at least.
+/// pulled down by a cut, does not cross: 1.3 % at least, where the rate is known within 1 to 1.5 %, as after [`PULSES_SEEN`].
 pub const CLEAR: u32 = 9;
 
 /// A rate counts as steady from so many pulses on,
@@ -51,6 +51,15 @@ impl Fit {
             Fit::Nothing(_) => false,
         }
     }
+
+    /// How many of the numbers are up to [`CLEAR`].
+    pub(super) fn clear(self) -> u32 {
+        match self {
+            Fit::One(_) => 1,
+            Fit::Several(from, to) => (to.min(CLEAR) + 1).saturating_sub(from),
+            Fit::Nothing(_) => 0,
+        }
+    }
 }
 
 /// Which numbers of pulses in a revolution `rate` pulses a second can mean, known within a `share` of it, where the plate says
@@ -66,7 +75,7 @@ pub fn fit(rate: f32, share: f32, plate: Rpm) -> Fit {
     }
     match u16::try_from(fewest).map(Pulses::new) {
         Ok(Ok(pulses)) if fewest == most && most <= CLEAR => Fit::One(pulses),
-        _ => Fit::Several(fewest, most),
+        _ => Fit::Several(fewest, most.min(u32::from(MAX_PULSES))),
     }
 }
 
@@ -79,6 +88,8 @@ pub(super) struct Rate {
     from: Option<Mark>,
     /// The rate in the first piece since then, to which all that follow are compared: a slow run-up is not steady.
     first: Option<(f32, f32)>,
+    /// Pieces that agree with the first one, which is among them.
+    agree: u8,
     piece: Option<Mark>,
     last: Option<Mark>,
 }
@@ -90,6 +101,7 @@ impl Rate {
             *self = Rate {
                 from: pulse,
                 first: None,
+                agree: 0,
                 piece: pulse,
                 last: pulse,
             };
@@ -112,7 +124,9 @@ impl Rate {
         if !as_first {
             self.from = Some(piece);
             self.first = Some((now, share));
+            self.agree = 0;
         }
+        self.agree = self.agree.saturating_add(1);
         self.piece = Some(pulse);
     }
 
@@ -120,8 +134,14 @@ impl Rate {
     pub(super) fn steady(&self) -> Option<(f32, f32)> {
         let (from, last) = (self.from?, self.last?);
         let enough = self.seen() >= PULSES_SEEN && last.1.since(from.1) >= SEEN_FOR;
+        let enough = enough && self.agree >= 2;
         let (rate, share) = enough.then(|| rate(from, last)).flatten()?;
         Some((rate, share + STEADY))
+    }
+
+    /// Whether a motor turns the spindle: no hand keeps to one rate for so long.
+    pub(super) fn is_a_motors(&self) -> bool {
+        self.agree >= 3 && self.steady().is_some()
     }
 
     /// Pulses in a steady row.

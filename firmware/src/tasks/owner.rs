@@ -175,6 +175,9 @@ impl Owner {
             defmt::error!("capture: window lost");
             instrument.handle(Instant::ZERO, Event::CaptureLost);
         }
+        if taken.withheld {
+            instrument.edges_withheld();
+        }
         if taken.edges > 0 {
             self.last_edge = time;
             let ask = if instrument.is_urgent() {
@@ -210,7 +213,11 @@ impl Owner {
                 }
                 self.instrument.handle(now(), Event::Press(knob));
             }
-            Message::Release(knob) => self.instrument.handle(now(), Event::Release(knob)),
+            Message::Release(knob) => {
+                self.instrument.handle(now(), Event::Release(knob));
+                // It may have taken another number over.
+                self.sense.expect(self.instrument.pulses());
+            }
             Message::Stuck(knob, stuck) => {
                 defmt::warn!("knob {} stuck {=bool}", knob, stuck);
                 self.stuck = stuck;

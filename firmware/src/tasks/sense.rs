@@ -77,6 +77,8 @@ pub(crate) struct Taken {
     pub(crate) edges: u32,
     /// A window was lost before them.
     pub(crate) lost: bool,
+    /// Some were not handed on, or turned over: see [`Wiring`].
+    pub(crate) withheld: bool,
     /// There is more already.
     pub(crate) more: bool,
     /// Every edge up to this time has been handed on. The instrument must not be told a later one: silence that is none
@@ -97,6 +99,11 @@ impl Sense {
             lost: 0,
             capture,
         }
+    }
+
+    /// From here on there are so many pulses in a revolution.
+    pub(crate) fn expect(&mut self, pulses: u16) {
+        self.wiring.expect(pulses);
     }
 
     /// Edges so far, windows lost so far, and whether the sensor is wired the other way round.
@@ -123,6 +130,7 @@ impl Sense {
         let enough = Now::now() + STEP;
         let mut left = fresh.count;
         let mut reached = Instant::ZERO;
+        let mut withheld = false;
         let mut batch: Vec<Edge, BATCH> = Vec::new();
         while left > 0 {
             batch.clear();
@@ -133,7 +141,10 @@ impl Sense {
                 let kind = match self.wiring.straighten(at, fall) {
                     Some(true) => EdgeKind::Fall,
                     Some(false) => EdgeKind::Rise,
-                    None => continue,
+                    None => {
+                        withheld = true;
+                        continue;
+                    }
                 };
                 // There is room for so many.
                 let _ = batch.push(Edge { at, kind });
@@ -149,6 +160,7 @@ impl Sense {
         Taken {
             edges,
             lost: fresh.lost,
+            withheld,
             more: left > 0,
             until: if left > 0 {
                 reached
@@ -172,7 +184,8 @@ impl Sense {
 /// Notices a sensor that is wired the other way round: low all the time but at the magnet.
 ///
 /// Lows that fill more than three quarters of their circle are no magnet's. What is handed on of them is little, so that the
-/// instrument is not left with one endless passage when the notion changes.
+/// instrument is not left with one endless passage when the notion changes. Whoever counts passages is told: a toothed wheel
+/// on a machine that is said to have few magnets may look like that.
 struct Wiring {
     /// Teeth are as wide as their gaps: nothing can be told.
     ambiguous: bool,
@@ -203,6 +216,12 @@ impl Wiring {
             last_rise: None,
             last_period: None,
             regular: 0,
+        }
+    }
+
+    fn expect(&mut self, pulses: u16) {
+        if self.ambiguous != (pulses >= Self::MANY_PULSES) {
+            *self = Self::new(pulses);
         }
     }
 
