@@ -293,6 +293,39 @@ fn shaking_that_begins_as_the_spindle_stops_ends_in_still() {
     }
 }
 
+/// The box still waits for the next pulse of a slow spindle when the parked magnet begins to shake at random.
+#[test]
+fn shaking_that_begins_soon_after_a_stop_shows_no_speed() {
+    let mut wrong = Vec::new();
+    for pulses in [1, 2, 3] {
+        for wait in [1.0, 2.0, 3.0, 5.0] {
+            // What silence allows by then, with one pulse missing.
+            let most = f64::max(60.0, 2.2 * 60.0 / wait / f64::from(pulses));
+            for seed in 0..40 {
+                let mut capture = Capture::new(pulses).seeded(seed, 0.11 * seed as f64);
+                capture.sensor.width = 0.12 * 360.0 / f64::from(pulses);
+                let capture = capture
+                    .then(Piece::steady(300.0, 5.0))
+                    .then(Piece::ramp(300.0, 0.0, 1000.0))
+                    .then(Piece::steady(0.0, wait))
+                    .with(Piece::steady(0.0, 20.0), &[(Fault::ShakeRandom, true)]);
+                let begins = 5.3 + wait;
+                let fastest = capture
+                    .rows()
+                    .into_iter()
+                    .filter(|(at, ..)| *at > begins)
+                    .map(|(_, reading, _)| reading.quick.map_or(0.0, |n| f64::from(n.get())))
+                    .fold(0.0, f64::max);
+                if fastest > most {
+                    wrong.push((pulses, wait, seed, fastest));
+                }
+            }
+        }
+    }
+    // Chance may shake as a spindle turns: seldom.
+    assert!(wrong.len() <= 480 / 50, "{} of 480: {wrong:?}", wrong.len());
+}
+
 #[test]
 fn chatter_noise_and_missed_pulses_do_not_move_the_reading() {
     type Prepare = fn(&mut SensorSpec);

@@ -70,7 +70,7 @@ impl Passages {
         }
     }
 
-    /// Takes an edge. O(1): at most [`RECENT`] stretches are looked at.
+    /// Takes an edge. O(1): at most `RECENT` stretches are looked at.
     pub fn push(&mut self, edge: Edge) {
         let falls = edge.kind == EdgeKind::Fall;
         // The edge between two of a kind was lost: the line goes on.

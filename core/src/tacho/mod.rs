@@ -335,6 +335,10 @@ impl Tacho {
         if self.track.push(pulse, plausible, &mut self.gate.rejected) {
             self.learn();
         }
+        if self.track.leapt {
+            self.track.leapt = false;
+            return self.stand_still();
+        }
         self.quiet_from = self.track.last().unwrap_or(pulse.at);
     }
 

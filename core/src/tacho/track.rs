@@ -85,6 +85,8 @@ pub(super) struct Track {
     since_odd: u32,
     /// A pulse that came too early to be believed yet.
     suspect: Option<Pulse>,
+    /// The last pulse came too soon for what crawled or stood: it must start anew.
+    pub(super) leapt: bool,
     /// Before each of so many newest pulses others are taken as missing, though braking might explain the gap.
     late: usize,
     /// Others had been missing not long before those.
@@ -127,6 +129,7 @@ impl Track {
             learned_at: Instant::ZERO,
             since_odd: 0,
             suspect: None,
+            leapt: false,
             late: 0,
             restless: false,
             before: None,
@@ -151,6 +154,7 @@ impl Track {
         self.unbroken = 0;
         self.since_missing = RESTLESS;
         self.suspect = None;
+        self.leapt = false;
         self.late = 0;
         self.before = None;
         self.extra_in_a_row = 0;

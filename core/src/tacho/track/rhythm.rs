@@ -2,9 +2,10 @@
 
 use heapless::Vec;
 
-use super::{LONGEST, RESTLESS, Track};
+use super::{LONGEST, RESTLESS, Track, rev};
 use crate::tacho::gate::{Pulse, Rejected};
 use crate::tacho::placement::REV;
+use crate::tacho::signal;
 use crate::time::{Duration, Instant};
 
 /// A pulse earlier than this share of the expected spacing is suspected to be an extra one.
@@ -17,6 +18,12 @@ const ALIKE: f32 = 1.3;
 /// Noise is shorter than this, ns (common practice, no source); with few magnets passages are longer.
 const NOISE: u32 = 200_000;
 const MANY: u32 = 8;
+/// So many spacings without a pulse, and longer than a signal needs to be lost, were a stop.
+const PAUSE: f32 = 4.5;
+/// A spindle whose pulses are expected so far apart, s, may stand, with a magnet that shakes;
+const CRAWLS: f32 = 0.3;
+/// no clutch makes it faster by more than so many times the hardest braking (common practice, no source).
+const HARDEST: f32 = 4.0;
 /// A pulse later than this share may mean that pulses are missing.
 const LATE: f32 = 1.5;
 /// A whole number of spacings must be met this closely, in spacings, to say that pulses are missing.
@@ -98,6 +105,7 @@ impl Track {
         }
         let Some(suspect) = self.suspect.take() else {
             return match steps < EARLY {
+                true if plausible && self.leaps(at, newest, expected) => self.leapt = true,
                 true if plausible => self.suspect(pulse),
                 true => self.extra(pulse, newest, rejected),
                 false => self.accept_late(pulse, steps, expected, rejected),
@@ -108,6 +116,10 @@ impl Track {
             at.since(suspect.at).secs_f32(),
         );
         let halves_alike = alike(first, second);
+        if plausible && expected > CRAWLS && second < FASTER * first {
+            self.leapt = true;
+            return;
+        }
         // A pulse of noise does not move the one after it.
         let out_of_time = (steps - libm::roundf(steps).max(1.0)).abs() > IN_TIME;
         let no_noise = suspect.width >= NOISE && self.pulses < MANY;
@@ -126,6 +138,17 @@ impl Track {
             self.extra_in_a_row = u8::from(halves_alike);
             self.accept_late(pulse, steps, expected, rejected);
         }
+    }
+
+    /// Whether a spindle that crawls, or stands, cannot bring the next magnet so soon.
+    fn leaps(&self, at: Instant, newest: Instant, expected: f32) -> bool {
+        if expected <= CRAWLS {
+            return false;
+        }
+        let gap = rev(self.placement.gap(self.next_magnet()));
+        let time = at.since(newest).secs_f32();
+        let most = gap / expected * time + HARDEST * self.brake * time * time / 2.0;
+        most < gap
     }
 
     fn suspect(&mut self, pulse: Pulse) {
@@ -151,6 +174,11 @@ impl Track {
     /// speed; where braking might explain the gap as well, the next pulse tells.
     fn accept_late(&mut self, pulse: Pulse, steps: f32, expected: f32, rejected: &mut Rejected) {
         let whole = libm::roundf(steps);
+        if steps > PAUSE && steps * expected > signal::LOST_AFTER.secs_f32() {
+            // Had it turned on, the signal would have been lost where that can be known: it has stopped.
+            self.leapt = true;
+            return;
+        }
         if steps < LATE || (steps - whole).abs() > MISSING_WITHIN {
             return self.accept(pulse, 1, rejected);
         }
